@@ -1,0 +1,17 @@
+# Everything comes from Debian 12; docs/dependencies.md says what each is for.
+find_package(PkgConfig REQUIRED)
+find_package(Threads REQUIRED)
+find_package(Eigen3 3.4 REQUIRED NO_MODULE)
+find_package(Ceres 2.1 REQUIRED)
+find_package(fmt 9 REQUIRED)
+find_package(nlohmann_json 3.11 REQUIRED)
+find_package(tomlplusplus 3.3 REQUIRED)
+find_package(tl-expected REQUIRED)
+find_package(CLI11 2.1 REQUIRED)
+find_package(OpenSSL 3 REQUIRED COMPONENTS Crypto)
+find_package(utf8cpp REQUIRED)
+find_package(Boost 1.74 REQUIRED)  # headers only: Boost.Math distributions
+pkg_check_modules(FFTW REQUIRED IMPORTED_TARGET fftw3)
+if(COILASSAY_TESTS)
+  find_package(GTest 1.12 REQUIRED)
+endif()
