@@ -1,0 +1,28 @@
+// Where to begin: the strongest line of a record and how long it lasts. Internal to this room.
+#pragma once
+
+#include <cstddef>
+#include <span>
+
+namespace coilassay {
+
+/// The stretch from the first sample in which one spectral line stands out most.
+///
+/// |sum (y - mean) e^{-i omega n}|^2 / length is what a rectangle matched to the decay would give: noise alone gives
+/// sigma^2 times an exponential number at every length, a decay e^{-an} the most when the length is 1.26/a. The largest
+/// over lengths 64, 256, ... therefore finds the frequency and the decay of a ringing that fills the record as well as of
+/// one that ends in its first hundredth.
+struct StrongestLine {
+  double omega = 0;         // rad per sample
+  double omega_error = 0;   // scale of its error: a fraction of a bin
+  std::size_t length = 0;   // samples in that stretch
+  double cycles = 0;        // omega length / 2 pi: below about 6 the line is not to be trusted
+  double strength = 0;      // the statistic above
+  double floor = 0;         // its median over frequencies in the same stretch
+};
+
+/// Slow lines are looked for on averages of 4, 16, ... samples, which costs one read of the record in all; when nothing
+/// stands out, on up to 2^20 samples at full rate. Missing samples count as the mean.
+StrongestLine strongest_line(std::span<const double> y);
+
+}  // namespace coilassay
