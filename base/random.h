@@ -10,6 +10,7 @@ namespace coilassay {
 class Random {
  public:
   explicit Random(std::uint64_t seed, std::uint64_t stream = 0);
+  explicit Random(const std::array<std::uint64_t, 4>& state);  // not all zero
   std::uint64_t bits();
   double uniform();                          // [0, 1), 53 bits
   double uniform(double low, double high);   // [low, high)
