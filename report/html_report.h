@@ -10,12 +10,13 @@
 namespace coilassay {
 
 struct ReportContext {
-  std::string program;                 // "coilassay 0.1.0"
+  std::string program;  // "coilassay 0.1.0"
   UtcTime when;
-  std::string operator_name;           // may be empty; outside text
+  std::string operator_name;  // may be empty; outside text
 };
 
-/// The page for one measurement. Figures are drawn by gnuplot; without it the page says how to install it and keeps the numbers.
+/// The page for one measurement. Figures are drawn by gnuplot; without it the page says how to install it and keeps the
+/// numbers.
 std::string html_report(const Measurement& measurement, const ReportContext& context);
 
 /// Prints a page to PDF with headless Chromium; missing_helper when it is not there.

@@ -12,7 +12,7 @@ namespace coilassay {
 struct TextStyle {
   Script script = Script::utf8;
   bool color = false;
-  bool verbose = false;   // whole budget, all notes, digests
+  bool verbose = false;  // whole budget, all notes, digests
   std::size_t width = 80;
 };
 
