@@ -82,7 +82,7 @@ FigurePanel line_panel(const Table& table) {
   std::vector<double> all;
   for (const FigureSeries& each : panel.series) all.insert(all.end(), each.y.begin(), each.y.end());
   const SquaredTime scale = squared_time_for(all);
-  panel.y_label = "1/(2πf_0)² (" + std::string(scale.unit) + ")";
+  panel.y_label = "1/(2πf₀)² (" + std::string(scale.unit) + ")";
   for (FigureSeries& each : panel.series) {
     if (each.mark == Mark::error_bars) {
       each.y2 = u != nullptr ? *u : std::vector<double>(each.y.size(), std::nan(""));

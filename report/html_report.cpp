@@ -69,7 +69,9 @@ void write_figure(HtmlBuilder& page, const Measurement& m) {
   if (figure.panels.empty()) return;
   page.open("section").element("h2", "What was seen");
   if (const auto svg = draw_svg(figure)) {
-    page.open("figure").own_markup(std::string_view(*svg).substr(svg->find("<svg"))).close();
+    page.open("figure", {{"class", figure.panels.size() > 2 ? "tall" : "short"}})
+        .own_markup(std::string_view(*svg).substr(svg->find("<svg")))
+        .close();
   } else {
     page.element("p", "There is no figure here: " + svg.error().finding + ". To have one: " + svg.error().remedy +
                           ". The numbers do not depend on it.");
@@ -88,9 +90,9 @@ void write_budget(HtmlBuilder& page, const Measurement& m) {
     std::vector<std::vector<std::string>> rows;
     for (const BudgetLine& line : by_share(m.budget.at(of))) {
       rows.push_back({line.source, std::string(1, line.kind), to_text(line.u, unit, kScript, 2),
-                      share_in_words(line.share), line.common ? "the bench" : "this unit", line.basis});
+                      share_in_words(line.share), line.common ? "bench" : "unit", line.basis});
     }
-    page.table({"Source", "Type", "Contribution u", "Share of variance", "Error of", "Basis"}, rows, "budget");
+    page.table({"Source", "Type", "u", "Share", "Error of", "Basis"}, rows, "budget");
   }
   if (!m.correlations.empty()) {
     page.open("p").text("Correlations: ");
@@ -105,7 +107,11 @@ void write_budget(HtmlBuilder& page, const Measurement& m) {
     }
     page.close();
   }
-  page.element("p", "Type A comes from the scatter of these data, type B from a stated tolerance or a named default.",
+  page.element("p",
+               "u is what a source contributes to the standard uncertainty, its share is of the variance. Type A comes "
+               "from the scatter of these data, "
+               "type B from a stated tolerance or a named default. An error of the bench is the same for every unit "
+               "measured on it.",
                {{"class", "small"}});
   page.close();
 }
@@ -143,14 +149,18 @@ void write_method(HtmlBuilder& page, const Measurement& m) {
     page.element("h3", "Equipment").table({"Item", "Certificate", "Calibrated", "Due"}, rows, "equipment");
   }
   page.element("h3", "Sources");
+  bool with_identity = false;
+  for (const SourceRecord& each : m.sources) with_identity = with_identity || !each.source.identity.empty();
   std::vector<std::vector<std::string>> rows;
   for (const SourceRecord& each : m.sources) {
-    rows.push_back(
-        {each.source.name, std::to_string(each.samples),
-         std::isfinite(each.sample_interval_s) ? to_text(each.sample_interval_s, Unit::second, kScript) : "not even",
-         each.source.sha256, each.source.identity});
+    const bool even = std::isfinite(each.sample_interval_s);
+    rows.push_back({each.source.name, each.source.sha256, std::to_string(each.samples),
+                    even ? setting_in_words(each.sample_interval_s, Unit::second, kScript) : "not even or not known"});
+    if (with_identity) rows.back().push_back(each.source.identity);
   }
-  page.table({"File", "Samples", "Step", "SHA-256", "Instrument"}, rows, "sources");
+  std::vector<std::string> head = {"File", "SHA-256", "Samples", "Step"};
+  if (with_identity) head.emplace_back("Instrument");
+  page.table(head, rows, "sources");
   page.close();
 }
 

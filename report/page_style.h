@@ -19,8 +19,8 @@ thead th { border-bottom: 1.5px solid #4a535c; font-size: .85rem; color: #3a424a
 tbody th { font-weight: 400; }
 .values td.number { font-weight: 700; white-space: nowrap; }
 .budget, .equipment, .sources { font-size: .9rem; }
-.sources td:nth-child(4) { font-family: "DejaVu Sans Mono", monospace; font-size: .75rem; }
-.sources td:nth-child(4), .sources th:nth-child(4) { width: 42%; }
+.sources td:nth-child(2) { font-family: "DejaVu Sans Mono", monospace; font-size: .75rem; word-break: break-all; }
+.sources td:nth-child(2), .sources th:nth-child(2) { width: 56%; }
 .small { font-size: .85rem; color: #4a535c; }
 .verdict { border: 2px solid #1b1f24; padding: .6rem .9rem; }
 .remarks { list-style: none; padding: 0; }
@@ -31,7 +31,7 @@ tbody th { font-weight: 400; }
 var { font-style: italic; }
 sub { font-size: .75em; line-height: 0; }
 figure { margin: .5rem 0; }
-figure svg { display: block; max-width: 100%; height: auto; }
+figure svg { display: block; width: 100%; height: auto; }
 dl { display: grid; grid-template-columns: max-content 1fr; gap: .25rem 1.25rem; }
 dt { color: #4a535c; }
 dd { margin: 0; overflow-wrap: anywhere; }
@@ -41,6 +41,9 @@ footer { margin-top: 2rem; border-top: 1px solid #d9dee3; color: #4a535c; font-s
   html { font-size: 10pt; }
   body { max-width: none; padding: 0; }
   h2, h3 { break-after: avoid; }
+  figure svg { width: auto; margin: 0 auto; }
+  figure.short svg { max-height: 100mm; }
+  figure.tall svg { max-height: 175mm; }
   figure, tr, .remarks li, .verdict { break-inside: avoid; }
   thead { display: table-header-group; }
 }

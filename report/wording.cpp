@@ -28,18 +28,6 @@ bool symmetric(const Estimate& e) {
   return std::fabs(up - down) <= 0.1 * std::fmax(up, down);
 }
 
-/// "20 ns" rather than "20.00 ns": a setting, known exactly.
-std::string setting_in_words(double value, Unit unit, Script script) {
-  std::string text = to_text(value, unit, script, 6);
-  const std::size_t point = text.find('.');
-  const std::size_t end = std::min(text.find(' '), text.size());
-  if (point >= end) return text;
-  std::size_t last = end;
-  while (text[last - 1] == '0') --last;
-  if (text[last - 1] == '.') --last;
-  return text.erase(last, end - last);
-}
-
 std::string where_in_words(const Estimate& e, Script script) {
   std::string text;
   const auto add = [&](std::string_view before, const std::optional<double>& value, Unit unit) {
@@ -148,6 +136,17 @@ std::vector<std::string> conditions_in_words(const Conditions& c, Script script)
   add("peak current", c.peak_current_a, Unit::ampere);
   add("temperature", c.temperature_degc, Unit::degree_celsius);
   return list;
+}
+
+std::string setting_in_words(double value, Unit unit, Script script) {
+  std::string text = to_text(value, unit, script, 6);
+  const std::size_t point = text.find('.');
+  const std::size_t end = std::min(text.find(' '), text.size());
+  if (point >= end) return text;
+  std::size_t last = end;
+  while (text[last - 1] == '0') --last;
+  if (text[last - 1] == '.') --last;
+  return text.erase(last, end - last);
 }
 
 std::string source_in_words(const SourceRecord& record, Script script) {

@@ -32,6 +32,9 @@ std::vector<ValueText> values_of(const Measurement& measurement, Script script);
 /// "frequency 232.0 kHz", "peak current 72.9 mA"; only what is known.
 std::vector<std::string> conditions_in_words(const Conditions& conditions, Script script);
 
+/// "20 ns" rather than "20.00 ns": a setting, known exactly.
+std::string setting_in_words(double value, Unit unit, Script script);
+
 /// "ring.csv: 20000 samples every 20 ns".
 std::string source_in_words(const SourceRecord& record, Script script);
 

@@ -61,7 +61,7 @@ TEST(Figure, SvgNamesAxesWithReadableUnits) {
   const auto svg = draw_svg(figure_of(test::made_up_line()));
   ASSERT_TRUE(svg) << svg.error().finding;
   for (const char* part :
-       {"time (µs)", "voltage (V)", "capture - fit (mV)", "capacitance added (nF)", "1/(2πf_0)² (µs²)", "envelope",
+       {"time (µs)", "voltage (V)", "capture - fit (mV)", "capacitance added (nF)", "1/(2πf₀)² (µs²)", "envelope",
         "window of the fit", "<title id=\"f_title\">Ring-down: 2 files</title>"}) {
     EXPECT_TRUE(has(*svg, part)) << part;
   }
