@@ -8,6 +8,7 @@
 #include <limits>
 
 #include "base/outside_text.h"
+#include "report/wording.h"
 
 namespace coilassay {
 
@@ -85,22 +86,37 @@ Range y_range(const FigurePanel& panel) {
   return range;
 }
 
-/// An axis in the unit it is labelled with.
+/// An axis in the unit it is labelled with: drawn values are (value - shift) * prefix.
 struct Axis {
-  Range range;  // scaled, with a margin
+  Range range;  // as drawn, with a margin
+  double shift = 0;
   Prefix prefix{1, ""};
   std::string label;
   bool log = false;
+
+  double drawn(double value) const { return (value - shift) * prefix.per_si; }
 };
+
+/// A short stretch far from zero would have the same tick labels everywhere: it is counted from a round value.
+double shift_for(const Range& range) {
+  const double span = range.high - range.low;
+  if (!(span > 0) || range.largest() < 2000 * span) return 0;
+  const double step = std::pow(10, std::ceil(std::log10(span)));
+  return std::floor(range.low / step) * step;
+}
 
 Axis axis_of(Range range, const std::string& words, Unit unit, bool log, double margin) {
   Axis axis;
   axis.log = log;
-  axis.prefix = unit == Unit::one || log ? Prefix{1, ""} : prefix_for(range.largest());
   axis.label = words;
-  if (unit != Unit::one) axis.label += fmt::format(" ({}{})", axis.prefix.text, display_symbol(unit));
   if (range.empty()) range = log ? Range{1, 10} : Range{-1, 1};
-  double low = range.low * axis.prefix.per_si, high = range.high * axis.prefix.per_si;
+  if (!log && unit != Unit::one) {
+    axis.shift = shift_for(range);
+    if (axis.shift != 0) axis.label += " from " + setting_in_words(axis.shift, unit, Script::utf8, 12);
+    axis.prefix = prefix_for(Range{range.low - axis.shift, range.high - axis.shift}.largest());
+  }
+  if (unit != Unit::one) axis.label += fmt::format(" ({}{})", axis.prefix.text, display_symbol(unit));
+  const double low = axis.drawn(range.low), high = axis.drawn(range.high);
   if (log && low > 0) {
     axis.range = {low / std::pow(high / low, margin), high * std::pow(high / low, margin)};
     return axis;
@@ -128,8 +144,9 @@ void add_data(std::string& out, const FigureSeries& whole, std::string_view name
   const FigureSeries series = thinned(whole);
   out += fmt::format("${} << EOD\n", name);
   for (std::size_t i = 0; i < series.x.size() && i < series.y.size(); ++i) {
-    const double y2 = i < series.y2.size() ? series.y2[i] * y.prefix.per_si : std::nan("");
-    add_row(out, series.x[i] * x.prefix.per_si, series.y[i] * y.prefix.per_si, series.y2.empty() ? nullptr : &y2);
+    const double second = i < series.y2.size() ? series.y2[i] : std::nan("");
+    const double y2 = series.mark == Mark::error_bars ? second * y.prefix.per_si : y.drawn(second);
+    add_row(out, x.drawn(series.x[i]), y.drawn(series.y[i]), series.y2.empty() ? nullptr : &y2);
   }
   out += "EOD\n";
 }
@@ -185,7 +202,7 @@ void add_panel(std::string& out, const FigurePanel& panel, const Axis& x, const 
     out += fmt::format(
         "set arrow from first {0:.10g}, graph 0 to first {0:.10g}, graph 1 nohead front lc rgb '#2b2b2b' lw 1.2 dt "
         "(2,4)\n",
-        rule * x.prefix.per_si);
+        x.drawn(rule));
   }
   out += "plot ";
   for (std::size_t s = 0; s < panel.series.size(); ++s) {

@@ -40,6 +40,16 @@ void write_values(HtmlBuilder& page, const Measurement& m) {
   page.close();
 }
 
+void write_points(HtmlBuilder& page, const Measurement& m) {
+  auto table = points_of(m, kScript);
+  if (table.empty()) return;
+  const std::vector<std::string> head = table.front();
+  table.erase(table.begin());
+  page.open("section").element("h2", "Point by point").table(head, table, "points");
+  page.element("p", "The digits in brackets are the standard uncertainty of the last digits.", {{"class", "small"}})
+      .close();
+}
+
 void write_remarks(HtmlBuilder& page, const Measurement& m) {
   page.open("section").element("h2", "What to watch out for");
   if (m.findings.empty() && m.cautions.empty())
@@ -190,9 +200,11 @@ std::string html_report(const Measurement& m, const ReportContext& context) {
         .close();
     write_remarks(page, m);
     write_values(page, m);
+    write_points(page, m);
     write_figure(page, m);
   } else {
     write_values(page, m);
+    write_points(page, m);
     write_remarks(page, m);
     write_figure(page, m);
   }

@@ -18,7 +18,7 @@ th, td { text-align: left; padding: .3rem .8rem .3rem 0; vertical-align: top; bo
 thead th { border-bottom: 1.5px solid #4a535c; font-size: .85rem; color: #3a424a; overflow-wrap: normal; }
 tbody th { font-weight: 400; }
 .values td.number { font-weight: 700; white-space: nowrap; }
-.budget, .equipment, .sources { font-size: .9rem; }
+.budget, .points, .equipment, .sources { font-size: .9rem; }
 .sources td:nth-child(2) { font-family: "DejaVu Sans Mono", monospace; font-size: .75rem; word-break: break-all; }
 .sources td:nth-child(2), .sources th:nth-child(2) { width: 56%; }
 .small { font-size: .85rem; color: #4a535c; }

@@ -237,7 +237,8 @@ std::string to_json(const Measurement& m, std::string_view program) {
   if (m.model) document["model"] = model(*m.model);
   if (!m.points.empty()) document["points"] = points(m.points);
   for (const Table& table : m.tables) {
-    if (table.name.starts_with("trace")) continue;  // for figures: the samples are in the file that was read
+    // Tables for figures: the samples are in the file that was read, what a line goes through stands in the points.
+    if (table.name.starts_with("trace") || table.name == "line") continue;
     assert(!document.contains(table.name) || table.name == "points");
     if (table.name != "points") {
       document[table.name] = columns(table);

@@ -93,6 +93,17 @@ void write_values(Page& page, const Measurement& m) {
   if (!conditions.empty()) page.paragraph(fmt::format("{}", fmt::join(conditions, ", ")), "  Conditions: ");
 }
 
+void write_points(Page& page, const Measurement& m) {
+  constexpr std::size_t kRows = 12;
+  auto table = points_of(m, page.style().script);
+  if (table.empty()) return;
+  page.heading("Point by point (standard uncertainty of the last digits in brackets)");
+  const std::size_t left = table.size() > kRows + 1 && !page.style().verbose ? table.size() - kRows - 1 : 0;
+  table.resize(table.size() - left);
+  page.table(table);
+  if (left > 0) page.paragraph(fmt::format("and {} more with --verbose", left));
+}
+
 void write_composition(Page& page, const Measurement& m) {
   const auto symbols = main_symbols(m);
   if (symbols.empty()) return;
@@ -214,6 +225,7 @@ std::string to_text(const Measurement& m, const TextStyle& style) {
     write_advice(page, m);
   }
   write_values(page, m);
+  write_points(page, m);
   write_composition(page, m);
   write_warnings(page, m);
   if (was_measured(m)) write_advice(page, m);

@@ -60,6 +60,13 @@ std::vector<std::string_view> reading_order(std::string_view test) {
   return {};
 }
 
+/// What a table of points shows; the document for programs has the rest.
+std::vector<std::string_view> point_symbols(std::string_view test) {
+  if (test == "ringdown") return {"f_0", "Q"};
+  if (test == "coupling") return {"L_1", "L_2", "M", "k"};
+  return {"L_s", "R_s", "Q"};
+}
+
 }  // namespace
 
 std::string test_in_words(std::string_view test) {
@@ -124,6 +131,40 @@ std::vector<ValueText> values_of(const Measurement& m, Script script) {
   return values;
 }
 
+std::vector<std::vector<std::string>> points_of(const Measurement& m, Script script) {
+  if (m.points.empty()) return {};
+  std::vector<std::vector<std::string>> table(m.points.size() + 1);
+  const auto add_column = [&](std::string_view head, const auto& cell_of) {
+    std::vector<std::string> cells;
+    bool any = false;
+    for (const Point& each : m.points) {
+      cells.push_back(cell_of(each));
+      any = any || !cells.back().empty();
+    }
+    if (!any) return;
+    table[0].emplace_back(head);
+    for (std::size_t i = 0; i < cells.size(); ++i) table[i + 1].push_back(std::move(cells[i]));
+  };
+  const auto add_condition = [&](std::string_view head, std::optional<double> Point::*value, Unit unit) {
+    add_column(head,
+               [&](const Point& each) { return each.*value ? setting_in_words(*(each.*value), unit, script) : ""; });
+  };
+  add_column("from", [&](const Point& each) { return in_script(shown(each.from, 40), script); });
+  add_condition("capacitor", &Point::capacitance_f, Unit::farad);
+  if (m.test != "ringdown") add_condition("frequency", &Point::at_hz, Unit::hertz);  // there it is a result
+  add_condition("level", &Point::level_a, Unit::ampere);
+  add_condition("bias", &Point::bias_a, Unit::ampere);
+  for (const std::string_view symbol : point_symbols(m.test)) {
+    add_column(symbol, [&](const Point& each) -> std::string {
+      for (const Estimate& e : each.estimates) {
+        if (e.symbol == symbol && std::isfinite(e.quantity.value)) return to_text(e.quantity, script);
+      }
+      return {};
+    });
+  }
+  return table;
+}
+
 std::vector<std::string> conditions_in_words(const Conditions& c, Script script) {
   std::vector<std::string> list;
   const auto add = [&](std::string_view words, const std::optional<double>& value, Unit unit) {
@@ -138,8 +179,8 @@ std::vector<std::string> conditions_in_words(const Conditions& c, Script script)
   return list;
 }
 
-std::string setting_in_words(double value, Unit unit, Script script) {
-  std::string text = to_text(value, unit, script, 6);
+std::string setting_in_words(double value, Unit unit, Script script, int digits) {
+  std::string text = to_text(value, unit, script, digits);
   const std::size_t point = text.find('.');
   const std::size_t end = std::min(text.find(' '), text.size());
   if (point >= end) return text;

@@ -32,8 +32,12 @@ std::vector<ValueText> values_of(const Measurement& measurement, Script script);
 /// "frequency 232.0 kHz", "peak current 72.9 mA"; only what is known.
 std::vector<std::string> conditions_in_words(const Conditions& conditions, Script script);
 
+/// The points of a measurement as a table, a line of headings first: where each holds and its main quantities in GUM
+/// notation, "47.02(28) µH". Empty when there are no points.
+std::vector<std::vector<std::string>> points_of(const Measurement& measurement, Script script);
+
 /// "20 ns" rather than "20.00 ns": a setting, known exactly.
-std::string setting_in_words(double value, Unit unit, Script script);
+std::string setting_in_words(double value, Unit unit, Script script, int digits = 6);
 
 /// "ring.csv: 20000 samples every 20 ns".
 std::string source_in_words(const SourceRecord& record, Script script);

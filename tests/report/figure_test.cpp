@@ -148,6 +148,21 @@ TEST(Figure, DrawsOddData) {
   EXPECT_TRUE(has(*svg, "frequency (Hz)")) << "frequency (Hz)";
 }
 
+// Otherwise every tick would be labelled 3.6e+06.
+TEST(Figure, AShortStretchFarFromZeroIsCountedFromARoundTime) {
+  Figure figure;
+  FigurePanel panel{.x_label = "time", .y_label = "voltage", .x_unit = Unit::second, .y_unit = Unit::volt};
+  panel.series = {{FigureSeries::Mark::line, "", {3600.0001, 3600.0003, 3600.0005}, {-1, 0, 1}, {}}};
+  panel.x_rules = {3600.0002};
+  figure.panels = {panel};
+  const std::string script = gnuplot_script(figure, "f");
+  EXPECT_TRUE(has(script, "time from 3.6 ks (µs)")) << script;
+  EXPECT_TRUE(has(script, "from first 200,") || has(script, "from first 199.99")) << script;
+  const auto svg = draw_svg(figure);
+  ASSERT_TRUE(svg);
+  EXPECT_TRUE(has(*svg, "<text>250</text>") || has(*svg, "<text>200</text>"));
+}
+
 TEST(Thinning, KeepsTheExtremesOfEveryStretch) {
   FigureSeries series;
   for (int i = 0; i < 1'000'000; ++i) {

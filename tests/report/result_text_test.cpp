@@ -103,6 +103,18 @@ TEST(ResultText, KeepsToTheWidth) {
     EXPECT_LE(display_width(line), 80u) << line;
 }
 
+TEST(ResultText, PointsStandInATable) {
+  const std::string text = to_text(test::made_up_line(), TextStyle{});
+  EXPECT_THAT(text, HasSubstr("Point by point"));
+  EXPECT_THAT(line_with(text, "4.7 nF"), HasSubstr("ring.csv"));
+  EXPECT_THAT(line_with(text, "22 nF"), HasSubstr(" kHz"));
+  const std::string sine = to_text(test::made_up_sine(), TextStyle{});
+  EXPECT_THAT(line_with(sine, "100 kHz"), HasSubstr("47.00(20) µH"));
+  Measurement many = test::made_up_sine();
+  many.points.resize(30, many.points.front());
+  EXPECT_THAT(to_text(many, TextStyle{}), HasSubstr("and 18 more with --verbose"));
+}
+
 TEST(ResultText, AsciiHasNoByteAbove127) {
   TextStyle style;
   style.script = Script::ascii;
