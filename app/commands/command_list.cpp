@@ -1,0 +1,25 @@
+#include "app/commands/command_list.h"
+
+#include <vector>
+
+namespace coilassay {
+
+std::span<const Command> commands() {
+  static const std::vector<Command> all = {
+      ring_down_command(),
+      simulate_ring_down_command(),
+      help_command(),
+      man_command(),
+      completion_command(),
+  };
+  return all;
+}
+
+const Command* find_command(std::string_view name) {
+  for (const Command& command : commands()) {
+    if (command.name == name) return &command;
+  }
+  return nullptr;
+}
+
+}  // namespace coilassay

@@ -1,0 +1,23 @@
+// Every command of the program.
+#pragma once
+
+#include <span>
+
+#include "app/commands/option_table.h"
+
+namespace coilassay {
+
+/// In the order of the overview. A new command is its own file and one line in command_list.cpp.
+std::span<const Command> commands();
+
+/// nullptr when there is none of that name ("simulate ringdown").
+const Command* find_command(std::string_view name);
+
+// One declaration per command file.
+Command ring_down_command();
+Command simulate_ring_down_command();
+Command help_command();
+Command man_command();
+Command completion_command();
+
+}  // namespace coilassay

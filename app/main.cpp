@@ -1,0 +1,25 @@
+// coilassay: measures and judges inductors from captured waveforms and sweeps.
+#include <exception>
+#include <iostream>
+#include <new>
+#include <string>
+#include <vector>
+
+#include "app/commands/console.h"
+#include "app/commands/process.h"
+#include "app/commands/program.h"
+
+int main(int argc, char** argv) {
+  using namespace coilassay;
+  prepare_process();
+  try {
+    Console console(std::cout, std::cerr, surroundings_of_process(), system_clock_now);
+    return run_program(std::vector<std::string>(argv + (argc > 0 ? 1 : 0), argv + argc), console);
+  } catch (const std::bad_alloc&) {
+    std::cerr << "coilassay: there is not enough memory for this\n  try: a shorter record, or a machine with more memory\n";
+  } catch (const std::exception& error) {
+    std::cerr << "coilassay: this is a bug in the program, the input is not to blame (" << error.what()
+              << ")\n  try: report it with the command line and the input\n";
+  }
+  return static_cast<int>(ExitCode::unusable);
+}

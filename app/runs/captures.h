@@ -1,0 +1,30 @@
+// Captures from the files a command names.
+#pragma once
+
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "acquire/capture.h"
+#include "acquire/reader.h"
+#include "app/runs/context.h"
+#include "base/result.h"
+
+namespace coilassay {
+
+struct CaptureRequest {
+  std::vector<std::string> files;      // "-" is standard input, once
+  std::optional<std::string> segment;  // label, or position counted from 1; absent: the first
+  ReadOptions reading;
+  std::string test;                    // the command that asks, for the messages
+};
+
+struct CapturesRead {
+  std::vector<Capture> captures;   // one per file
+  std::vector<std::string> notes;  // what was chosen where a file left a choice
+};
+
+/// One capture per file. usage: standard input twice, a file that holds a sweep, a segment that is not there.
+Result<CapturesRead> read_captures(const CaptureRequest& request, const RunContext& context);
+
+}  // namespace coilassay

@@ -1,0 +1,51 @@
+#include "app/runs/outputs.h"
+
+#include "app/runs/version.h"
+#include "report/figure.h"
+#include "report/html_report.h"
+
+namespace coilassay {
+
+namespace {
+
+Result<bool> write_figure(const Measurement& measurement, const std::string& path, const RunContext& context) {
+  const Figure figure = figure_of(measurement);
+  if (figure.panels.empty()) return false;
+  const Result<std::string> svg = draw_svg(figure);
+  if (!svg) return failure(svg);
+  if (const Result<void> written = context.write(path, *svg); !written) return failure(written);
+  return true;
+}
+
+Result<void> write_report(const Measurement& measurement, const std::string& path, const RunContext& context) {
+  const std::string page = html_report(measurement, {.program = program_name(), .when = context.now, .operator_name = ""});
+  if (!path.ends_with(".pdf")) return context.write(path, page);
+  const Result<std::string> pdf = pdf_from_html(page);
+  if (!pdf) return failure(pdf);
+  return context.write(path, *pdf);
+}
+
+}  // namespace
+
+Result<void> check_outputs(const OutputRequest& request) {
+  if (request.figure && !request.figure->ends_with(".svg")) {
+    return failure(Problem::usage, "--figure", "a figure is written as SVG", "give a file name that ends in .svg");
+  }
+  if (request.report && !request.report->ends_with(".html") && !request.report->ends_with(".pdf")) {
+    return failure(Problem::usage, "--report", "a report is a page or a PDF",
+                   "give a file name that ends in .html or .pdf");
+  }
+  return {};
+}
+
+Result<bool> write_outputs(const Measurement& measurement, const OutputRequest& request, const RunContext& context) {
+  Result<bool> drawn = true;
+  if (request.figure) drawn = write_figure(measurement, *request.figure, context);
+  if (request.report) {
+    const Result<void> written = write_report(measurement, *request.report, context);
+    if (!written && drawn) return failure(written);
+  }
+  return drawn;
+}
+
+}  // namespace coilassay
