@@ -101,6 +101,13 @@ struct Table {
   std::vector<TableColumn> columns;
 };
 
+/// One row of a table over frequency, level, bias or capacitor: estimates that hold there.
+struct Point {
+  std::optional<double> at_hz, level_a, bias_a, capacitance_f;
+  std::vector<Estimate> estimates;
+  std::string from;          // "model", "data" or a file name
+};
+
 struct Measurement {
   std::string test;          // "ringdown"
   std::vector<SourceRecord> sources;
@@ -118,6 +125,7 @@ struct Measurement {
   std::vector<Finding> findings;
   std::vector<Caution> cautions;
   std::optional<ModelSummary> model;
+  std::vector<Point> points;
   std::vector<Table> tables;
   std::vector<std::string> advice;   // sentences for people: what to try next
 

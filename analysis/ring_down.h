@@ -16,7 +16,19 @@ struct RingDownRequest {
   BenchSetup bench;
   std::optional<double> from_s, to_s;   // window, in the time of the capture
   PropagationOptions propagation;
+  bool traces = false;                  // add what a figure needs: trace_capture, trace_fit, trace_residual, line
 };
+
+/// Default tolerances (docs/uncertainty.md): what enters when something was left unsaid.
+namespace ring_down_defaults {
+inline constexpr double kCapacitorRatio = 0.05;          // the usual grade of film capacitors
+inline constexpr double kProbeCapacitance_f = 20e-12;    // nothing, or a divider probe on its input
+inline constexpr double kProbeConductance_s = 1e-6;      // nothing, or the 1 Mohm of a bare input
+inline constexpr double kDissipation = 1e-3;             // nothing, or a fair film capacitor
+inline constexpr double kTimebaseRatio = 100e-6;         // a poor crystal
+inline constexpr double kStatedCapacitanceRatio = 0.2;   // of a probe or stray capacitance given without tolerance
+inline constexpr double kStatedResistanceRatio = 0.05;   // of a resistance given without tolerance
+}  // namespace ring_down_defaults
 
 /// f_0, f_d, alpha, Q of one free decay; with one capacitor in the set-up also L_s, R_s and Q_coil.
 ///

@@ -1,0 +1,52 @@
+// Pieces of a ring-down result that one capacitor and several have in common.
+#pragma once
+
+#include <span>
+#include <string>
+
+#include "analysis/measurement.h"
+#include "analysis/ring_down.h"
+#include "analysis/ring_down_circuit.h"
+#include "analysis/ring_down_decay.h"
+
+namespace coilassay {
+
+/// Rates of a decay in SI for one draw of the inputs; NaN where the draw admits none.
+struct DecayRates {
+  double omega0, alpha, damped;   // rad/s, 1/s, rad/s (0 when overdamped)
+};
+
+/// The errors of one decay: a and q from the fit, and what misfit and the choice of the start may have moved.
+class DecayErrors {
+ public:
+  /// Adds its inputs to the circuit; `label` tells several captures apart in the budget (" 2").
+  DecayErrors(RingDownCircuit& circuit, const CaptureDecay& decay, const std::string& label, std::size_t fitted_offset = 0);
+
+  FittedInputs fitted(const CaptureDecay& decay) const;
+  /// x: all inputs of the circuit, then the fitted values.
+  DecayRates rates(std::span<const double> x, const RingDownCircuit& circuit) const;
+
+ private:
+  double step_s_;
+  std::size_t misfit_a_, misfit_q_, start_a_, start_q_;
+  std::size_t fitted_offset_;     // of this decay's a among the fitted values
+};
+
+/// Test name, source, stated conditions and equipment.
+void describe_source(Measurement& result, const Capture& capture, const RingDownRequest& request);
+
+ModelSummary model_of(const CaptureDecay& decay);
+
+/// near_critical.
+void note_damping(Measurement& result);
+
+/// A resistance whose standard uncertainty exceeds it becomes an upper bound, with finding resistance_unresolved.
+void withhold_unresolved(Measurement& result);
+
+/// capacitor_dominates, probe_loading, capacitor_loss.
+void note_loads(Measurement& result, const RingDownCircuit& circuit, const RingDownRequest& request);
+
+/// Peak current and voltage at the start of the window, with cautions.
+void add_release_level(Measurement& result, const CaptureDecay& decay, const RingDownCircuit& circuit);
+
+}  // namespace coilassay
