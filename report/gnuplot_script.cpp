@@ -8,6 +8,7 @@
 #include <limits>
 
 #include "base/outside_text.h"
+#include "report/text_layout.h"
 #include "report/wording.h"
 
 namespace coilassay {
@@ -102,7 +103,7 @@ double shift_for(const Range& range) {
   const double span = range.high - range.low;
   if (!(span > 0) || range.largest() < 2000 * span) return 0;
   const double step = std::pow(10, std::ceil(std::log10(span)));
-  return std::floor(range.low / step) * step;
+  return std::round(range.low / step) * step;
 }
 
 Axis axis_of(Range range, const std::string& words, Unit unit, bool log, double margin) {
@@ -173,6 +174,14 @@ int height_above(const FigurePanel& panel) {
   return has_key(panel) ? kKeyHeight : kGapHeight;
 }
 
+/// gnuplot gives each name of a series more room the longer it is, and too much to the long ones: a correction in
+/// characters, found by looking.
+int key_widening(const FigurePanel& panel) {
+  std::size_t longest = display_width(panel.rules_label);
+  for (const FigureSeries& each : panel.series) longest = std::max(longest, display_width(each.label));
+  return longest >= 14 ? -4 : longest >= 8 ? -1 : 2;
+}
+
 struct Place {
   double top, bottom;  // of the plotting area, as fractions of the height from below
   bool own_x;          // has tick labels and an axis label
@@ -184,8 +193,8 @@ void add_panel(std::string& out, const FigurePanel& panel, const Axis& x, const 
   for (std::size_t s = 0; s < panel.series.size(); ++s)
     add_data(out, panel.series[s], fmt::format("p{}s{}", index, s), x, y);
   out += fmt::format("set tmargin at screen {:.5f}\nset bmargin at screen {:.5f}\n", place.top, place.bottom);
-  out += fmt::format("set key at screen {:.4f},{:.5f} right top horizontal Left reverse samplen 2 width -4\n", kRight,
-                     key_y);
+  out += fmt::format("set key at screen {:.4f},{:.5f} right top horizontal Left reverse samplen 2 width {}\n", kRight,
+                     key_y, key_widening(panel));
   out += fmt::format("set xrange [{:.10g}:{:.10g}]\nset yrange [{:.10g}:{:.10g}]\n", x.range.low, x.range.high,
                      y.range.low, y.range.high);
   out += fmt::format("{} logscale x\n{} logscale y\n", x.log ? "set" : "unset", y.log ? "set" : "unset");
