@@ -122,7 +122,7 @@ int collect(pid_t child) {
   return WIFEXITED(status) ? WEXITSTATUS(status) : 128 + WTERMSIG(status);
 }
 
-tl::unexpected<Error> helper_failure(const ChildRequest& request, std::string finding) {
+tl::unexpected<Error> child_failure(const ChildRequest& request, std::string finding) {
   return failure(Problem::missing_helper, std::filesystem::path(request.program).filename().string(),
                  std::move(finding), "the numbers do not need it; run the command again without a figure or page");
 }
@@ -170,7 +170,7 @@ std::optional<std::string> find_program(std::string_view name) {
 Result<ChildOutcome> run_child(const ChildRequest& request) {
   Channel input, output, messages;
   if (!input.make() || !output.make() || !messages.make()) {
-    return helper_failure(request, std::string("cannot be started: ") + std::strerror(errno));
+    return child_failure(request, std::string("cannot be started: ") + std::strerror(errno));
   }
 
   SpawnPlan plan;
@@ -195,7 +195,7 @@ Result<ChildOutcome> run_child(const ChildRequest& request) {
   pid_t child = 0;
   const int trouble = ::posix_spawn(&child, request.program.c_str(), &plan.actions, &plan.attributes,
                                     pointers(arguments).data(), pointers(environment).data());
-  if (trouble != 0) return helper_failure(request, std::string("cannot be started: ") + std::strerror(trouble));
+  if (trouble != 0) return child_failure(request, std::string("cannot be started: ") + std::strerror(trouble));
   input.theirs.close();
   output.theirs.close();
   messages.theirs.close();
@@ -213,16 +213,16 @@ Result<ChildOutcome> run_child(const ChildRequest& request) {
   bool ended = false;
   while (!(ended = has_ended(child)) && Clock::now() < deadline && !too_much) {
     exchange();
-    // Closed channels have number -1, which poll() passes over. Helpers of the child may hold its output open after its
-    // end, so the wait is short and the end is asked for, not inferred.
+    // Closed channels have number -1, which poll() passes over. What the child started may hold its output open after
+    // its end, so the wait is short and the end is asked for, not inferred.
     std::array<pollfd, 3> waits = {pollfd{input.ours.number(), POLLOUT, 0}, pollfd{output.ours.number(), POLLIN, 0},
                                    pollfd{messages.ours.number(), POLLIN, 0}};
     ::poll(waits.data(), waits.size(), output.ours.open() ? 20 : 2);
   }
   outcome.exit_code = collect(child);
-  if (too_much) return helper_failure(request, "wrote more than can be right and was stopped");
+  if (too_much) return child_failure(request, "wrote more than can be right and was stopped");
   if (!ended) {
-    return helper_failure(
+    return child_failure(
         request, "did not end within " + std::to_string(request.time_limit.count() / 1000) + " s and was stopped");
   }
   exchange();
