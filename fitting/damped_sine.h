@@ -42,6 +42,9 @@ struct DampedSineFit {
   double sigma_per_sample = std::nan("");  // scatter of single samples about the model
   double sigma_in_band = std::nan("");     // scatter seen by the compressed data, expressed per sample
   double sigma = std::nan("");             // the larger of what counts: the covariance uses it
+  double dof = 0;                          // degrees of freedom of sigma: the t quantile matters for short records
+  std::size_t samples = 0;                 // used, from the first: fewer than given where an undithered tail is left out
+  bool undithered = false;                 // noise below about 0.3 of the resolution: see fit_damped_sine
   double cycles = 0;                       // in the span
   std::size_t block = 1;                   // samples per block
   bool few_cycles = false;                 // block means in (a, q) instead of demodulated blocks

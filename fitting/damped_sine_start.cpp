@@ -103,4 +103,28 @@ StrongestLine strongest_line(std::span<const double> y) {
   return best;
 }
 
+std::vector<Shape> starting_shapes(const StrongestLine& line) {
+  const double length = static_cast<double>(line.length);
+  std::vector<Shape> shapes;
+  if (line.cycles >= kTrustedCycles) {
+    for (const double decay : {0.1, 0.5, 1.26, 3.0, 8.0, 20.0}) {
+      for (const double shift : {-0.5, 0.0, 0.5}) {
+        const double omega = line.omega + shift * line.omega_error;
+        shapes.push_back({decay / length, omega * omega});
+      }
+    }
+    return shapes;
+  }
+  for (const double decay : {0.15, 0.5, 1.2, 2.5, 5.0, 10.0, 25.0}) {
+    const double a = decay / length;
+    const double step = 0.7 * std::max(a, std::numbers::pi / (8 * length));
+    const double last = line.omega + 7 / length;
+    for (double omega = std::max(0.0, line.omega - 7 / length); omega < last; omega += step) {
+      shapes.push_back({a, omega * omega});
+    }
+    for (const double split : {0.5, 0.8, 0.95}) shapes.push_back({a, -a * a * split * split});
+  }
+  return shapes;
+}
+
 }  // namespace coilassay

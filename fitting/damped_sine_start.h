@@ -3,6 +3,9 @@
 
 #include <cstddef>
 #include <span>
+#include <vector>
+
+#include "fitting/damped_sine_equations.h"
 
 namespace coilassay {
 
@@ -24,5 +27,11 @@ struct StrongestLine {
 /// Slow lines are looked for on averages of 4, 16, ... samples, which costs one read of the record in all; when nothing
 /// stands out, on up to 2^20 samples at full rate. Missing samples count as the mean.
 StrongestLine strongest_line(std::span<const double> y);
+
+/// Below this many cycles in its stretch the line is not to be trusted and slow shapes are tried one by one.
+constexpr double kTrustedCycles = 6;
+
+/// Shapes worth trying around the strongest line.
+std::vector<Shape> starting_shapes(const StrongestLine& line);
 
 }  // namespace coilassay

@@ -64,7 +64,10 @@ WhiteBlocks white_blocks(std::span<const double> y, std::size_t length, std::siz
   blocks.values.resize(count * rank);
   blocks.present.resize(count);
   for (std::size_t k = 0; k < count; ++k) {
-    if (!std::isfinite(sums.sum[k])) continue;
+    if (!std::isfinite(sums.sum[k])) {
+      blocks.lost += present_sum(y.subspan(k * length, length), reference).count;
+      continue;
+    }
     blocks.present[k] = 1;
     ++blocks.present_blocks;
     blocks.square += sums.square[k];

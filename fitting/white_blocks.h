@@ -24,6 +24,7 @@ struct WhiteBlocks {
   std::vector<double> values;             // count x rank
   std::vector<unsigned char> present;     // 0: the block holds a missing sample and is left out
   std::size_t present_blocks = 0;
+  std::size_t lost = 0;                   // samples that are present but share a block with a missing one
   double energy = 0;                      // sum of values^2 over present blocks
   double square = 0;                      // sum of (sample - reference)^2 over present blocks
   // Samples after the blocks, where nothing but the offset is left.
