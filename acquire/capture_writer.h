@@ -10,12 +10,19 @@
 
 namespace coilassay {
 
-/// Writes a capture as a table: key,value rows for the settings, a names row with units "time [s],CH1 [V]", then samples as
-/// shortest round-trip numbers. Several channels share the time column.
+/// Writes a capture as a table: key,value rows for the settings (step and start of the time axis, full scale and
+/// resolution of the channels, then what the capture brought along), a row of names with units, "time [s],CH1 [V]",
+/// then samples as the shortest text that reads back to the same double; a missing one is "nan". Several channels share
+/// the time column; a capture whose time has no origin has no time column, one with no step neither column nor
+/// interval. docs/formats.md#table has the format. The caller looks at the stream's state.
 void write_capture_csv(std::ostream& out, const Capture& capture);
 
-/// Writes text beside the target and renames it into place; cannot_write on any failure, the target then untouched.
-/// "-" is standard output.
+/// Writes a file whole or not at all: a new file beside the target is written, brought to the disk and renamed into
+/// place; on any failure it is removed and the target is as it was. A link is kept, its target replaced; what is no
+/// regular file
+/// (/dev/null, a pipe) is written into; "-" is standard output. Mode 0644 less the umask, or that of the file replaced.
+/// @return cannot_write: no such folder, no permission, a read-only file, a full disk, a size limit, a pipe nobody
+/// reads.
 Result<void> write_file(const std::string& path, const std::string& contents);
 
 }  // namespace coilassay
