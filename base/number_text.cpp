@@ -109,12 +109,20 @@ class ValueReader {
   }
 
   std::string example() const {
-    const std::string_view unit = symbol(expected_);
-    if (expected_ == Unit::one) return "write a number such as 10, 0.5 % or 1 ± 2 %";
-    if (expected_ == Unit::degree_celsius) return "write a temperature such as 23 degC or 23 ± 2 degC";
-    if (expected_ == Unit::per_second) return "write a rate such as 2650 1/s or 2650 1/s ± 2 %";
-    if (expected_ == Unit::kelvin) return "write a difference such as 3 K or 3 ± 1 K";
-    return fmt::format("write a value such as 4.7 {0}, 10 m{0} or 10 m{0} ± 2 %", unit);
+    switch (expected_) {
+      case Unit::one: return "write a number such as 10, 0.5 % or 1 ± 2 %";
+      case Unit::ohm: return "write a value such as 0.1 ohm, 4k7 or 0.1 ohm ± 1 %";
+      case Unit::henry: return "write a value such as 47 uH, 2.2e-6 H or 47 uH ± 2 %";
+      case Unit::farad: return "write a value such as 10 nF, 4n7 or 10 nF ± 1 %";
+      case Unit::hertz: return "write a value such as 100 kHz, 1e5 Hz or 100 kHz ± 25 ppm";
+      case Unit::second: return "write a value such as 4 ns, 2e-6 s or 4 ns ± 1 ns";
+      case Unit::per_second: return "write a rate such as 2650 1/s or 2650 1/s ± 2 %";
+      case Unit::radian: return "write an angle such as 0.1 rad or 5 deg";
+      case Unit::degree_celsius: return "write a temperature such as 23 degC or 23 ± 2 degC";
+      case Unit::kelvin: return "write a difference such as 3 K or 3 ± 1 K";
+      case Unit::ampere_per_volt: return "write a factor such as 10 A/V or 10 A/V ± 2 %";
+      default: return fmt::format("write a value such as 4.7 {0}, 10 m{0} or 10 m{0} ± 2 %", symbol(expected_));
+    }
   }
 
   /// Takes "(k=2)" off the end.
@@ -133,79 +141,92 @@ class ValueReader {
   }
 
   Result<Term> take_term(std::string_view rest, std::string_view what) const {
+    if (rest.empty()) return bad(fmt::format("'{}' has no {}", text(), what), example());
     Term term;
     Decimal& number = term.number;
-    if (rest.empty()) return bad(fmt::format("'{}' has no {}", text(), what), example());
-    if (rest.front() == '+' || rest.front() == '-') {
-      number.digits += rest.front();
-      rest.remove_prefix(1);
+    const bool has_digits = take_digits(rest, number);
+    if (begins_letter_code(rest, number)) return take_letter_code(rest, std::move(term), has_digits);
+    if (!has_digits) {
+      return bad(fmt::format("'{}' is not a number", rest.empty() ? text() : shown(rest, 60)), example());
     }
-    std::size_t digit_count = 0;
-    bool point = false;
-    while (!rest.empty() && (is_digit(rest.front()) || (rest.front() == '.' && !point))) {
-      if (rest.front() == '.') {
-        point = true;
-      } else {
-        ++digit_count;
-        if (point) ++number.decimals;
-      }
-      number.digits += rest.front();
-      rest.remove_prefix(1);
-    }
-
-    // IEC 60062: the letter stands for the point, 4n7, 0R1, R47.
-    if (!point && rest.size() >= 2 && is_digit(rest[1]) && rest[0] != 'e' && rest[0] != 'E' &&
-        (rest[0] == 'R' || prefix_exponent(rest[0]))) {
-      const char letter = rest.front();
-      rest.remove_prefix(1);
-      if (digit_count == 0) number.digits += '0';
-      number.digits += '.';
-      while (!rest.empty() && is_digit(rest.front())) {
-        number.digits += rest.front();
-        ++number.decimals;
-        rest.remove_prefix(1);
-      }
-      const std::string behind = without_blanks(rest);
-      if (letter == 'R' && expected_ != Unit::ohm) return wrong_kind(Unit::ohm);
-      // The R is the unit as well; "4R7ohm" says it twice and that is fine.
-      term.unit = letter == 'R' ? (behind.empty() ? "R" : behind) : std::string(1, letter) + behind;
-      if (!behind.empty() && !is_letter(behind.front())) return no_unit(behind);
-      return term;
-    }
-    if (digit_count == 0) return bad(fmt::format("'{}' is not a number", shown(rest.empty() ? text() : rest)), example());
-
-    if (!rest.empty() && rest.front() == '(') {
-      const std::size_t close = rest.find(')');
-      const std::string inside(rest.substr(1, close == std::string_view::npos ? close : close - 1));
-      if (close == std::string_view::npos || inside.empty() || inside.find_first_not_of("0123456789.") != std::string::npos ||
-          std::count(inside.begin(), inside.end(), '.') > 1 || inside == ".") {
-        return bad(fmt::format("'{}' has parentheses that hold no digits", text()),
-                   "write the uncertainty of the last digits, 10.0120(25) nF, or 10 nF ± 5 pF (k=2)");
-      }
-      number.uncertainty = inside;
-      rest.remove_prefix(close + 1);
-    }
-    if (rest.size() >= 2 && (rest.front() == 'e' || rest.front() == 'E')) {
-      const std::size_t sign = rest[1] == '+' || rest[1] == '-' ? 1 : 0;
-      std::size_t end = 1 + sign;
-      while (end < rest.size() && is_digit(rest[end])) ++end;
-      if (end > 1 + sign) {
-        const std::string_view digits = rest.substr(1 + sign, end - 1 - sign);
-        int exponent = 0;
-        // More than six digits cannot be a double anyway; the range check below says so.
-        if (digits.size() > 6 || std::from_chars(digits.data(), digits.data() + digits.size(), exponent).ec != std::errc()) {
-          exponent = 999999;
-        }
-        number.exponent = rest[1] == '-' ? -exponent : exponent;
-        rest.remove_prefix(end);
-      }
-    }
+    if (auto taken = take_uncertainty(rest, number); !taken) return failure(taken);
+    take_exponent(rest, number);
     if (!rest.empty() && rest.front() == '.') return bad(fmt::format("'{}' has two decimal points", text()), example());
     term.unit = without_blanks(rest);
     if (!term.unit.empty() && is_digit(term.unit.front()) && !term.unit.starts_with("1/")) {
       return bad(fmt::format("'{}' has a blank inside a number", text()), "write the number without blanks");
     }
     return term;
+  }
+
+  /// Sign, digits and one point; false when there was no digit.
+  static bool take_digits(std::string_view& rest, Decimal& number) {
+    if (rest.front() == '+' || rest.front() == '-') {
+      number.digits += rest.front();
+      rest.remove_prefix(1);
+    }
+    bool any = false, point = false;
+    while (!rest.empty() && (is_digit(rest.front()) || (rest.front() == '.' && !point))) {
+      if (rest.front() == '.') {
+        point = true;
+      } else {
+        any = true;
+        if (point) ++number.decimals;
+      }
+      number.digits += rest.front();
+      rest.remove_prefix(1);
+    }
+    return any;
+  }
+
+  /// IEC 60062: a letter stands for the point, 4n7, 0R1, R47.
+  static bool begins_letter_code(std::string_view rest, const Decimal& number) {
+    return number.digits.find('.') == std::string::npos && rest.size() >= 2 && is_digit(rest[1]) &&
+           (rest[0] == 'R' || prefix_exponent(rest[0]));
+  }
+
+  Result<Term> take_letter_code(std::string_view rest, Term term, bool has_digits) const {
+    const char letter = rest.front();
+    if (letter == 'R' && expected_ != Unit::ohm) return wrong_kind(Unit::ohm);
+    rest.remove_prefix(1);
+    term.number.digits += has_digits ? "." : "0.";
+    for (; !rest.empty() && is_digit(rest.front()); rest.remove_prefix(1)) {
+      term.number.digits += rest.front();
+      ++term.number.decimals;
+    }
+    const std::string behind = without_blanks(rest);
+    if (!behind.empty() && !is_letter(behind.front())) return no_unit(behind);
+    // The R is the unit as well; "4R7ohm" says it twice and that is fine.
+    term.unit = letter == 'R' ? (behind.empty() ? "R" : behind) : std::string(1, letter) + behind;
+    return term;
+  }
+
+  Result<void> take_uncertainty(std::string_view& rest, Decimal& number) const {
+    if (rest.empty() || rest.front() != '(') return {};
+    const std::size_t close = rest.find(')');
+    const std::string inside(close == std::string_view::npos ? "" : rest.substr(1, close - 1));
+    const bool has_digits = inside.find_first_of("0123456789") != std::string::npos;
+    if (!has_digits || inside.find_first_not_of("0123456789.") != std::string::npos ||
+        std::count(inside.begin(), inside.end(), '.') > 1) {
+      return bad(fmt::format("'{}' has parentheses that hold no digits", text()),
+                 "write the uncertainty of the last digits, 10.0120(25) nF, or 10 nF ± 5 pF (k=2)");
+    }
+    number.uncertainty = inside;
+    rest.remove_prefix(close + 1);
+    return {};
+  }
+
+  /// "e-9"; an e without digits behind it is left to the unit.
+  static void take_exponent(std::string_view& rest, Decimal& number) {
+    if (rest.size() < 2 || (rest.front() != 'e' && rest.front() != 'E')) return;
+    const std::size_t begin = rest[1] == '+' || rest[1] == '-' ? 2 : 1;
+    const std::size_t end = std::min(rest.find_first_not_of("0123456789", begin), rest.size());
+    if (end == begin) return;
+    const std::string_view digits = rest.substr(begin, end - begin);
+    int exponent = 999999;  // more than six digits are beyond any double; the range check says so
+    if (digits.size() <= 6) std::from_chars(digits.data(), digits.data() + digits.size(), exponent);
+    number.exponent = rest[1] == '-' ? -exponent : exponent;
+    rest.remove_prefix(end);
   }
 
   tl::unexpected<Error> wrong_kind(Unit kind) const {

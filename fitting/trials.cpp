@@ -50,11 +50,11 @@ struct Tails {
 Tails tails_of(std::span<const double> values, std::size_t count) {
   constexpr std::size_t kBins = 4096;
   const auto [least, greatest] = std::minmax_element(values.begin(), values.end());
-  const double from = *least, width = *greatest - *least;
+  // Halved, so that a range wider than the largest double does not overflow.
+  const double from = *least / 2, half_width = *greatest / 2 - *least / 2;
   const auto bin_of = [&](double v) {
-    if (!(width > 0)) return std::size_t{0};
-    // Halved, so that a range wider than the largest double does not overflow.
-    const double place = (v / 2 - from / 2) / (*greatest / 2 - from / 2) * kBins;
+    if (!(half_width > 0)) return std::size_t{0};
+    const double place = (v / 2 - from) / half_width * kBins;
     return std::min(static_cast<std::size_t>(place), kBins - 1);
   };
   std::array<std::size_t, kBins> bins{};
