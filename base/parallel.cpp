@@ -33,10 +33,10 @@ void for_each_index(std::size_t count, unsigned threads, const std::function<voi
     }
   };
   {
-    std::vector<std::jthread> helpers;
-    helpers.reserve(workers - 1);
+    std::vector<std::jthread> others;
+    others.reserve(workers - 1);
     try {
-      while (helpers.size() < workers - 1) helpers.emplace_back(take_indices);
+      while (others.size() < workers - 1) others.emplace_back(take_indices);
     } catch (const std::system_error&) {
       // No more threads to be had: those that run, and this one, do all of the work.
     }
