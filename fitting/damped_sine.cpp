@@ -13,15 +13,18 @@
 #include "fitting/damped_sine_plan.h"
 #include "fitting/damped_sine_search.h"
 #include "fitting/damped_sine_start.h"
+#include "fitting/rounding.h"
 
 namespace coilassay {
 namespace {
 
 constexpr std::size_t kFewest = 16;
+// Of what a slow shape explains, what it may leave over in one piece.
+constexpr double kMostStructure = 0.004;
 
-tl::unexpected<Error> nothing(std::string finding) {
-  return failure(Problem::no_signal, "", std::move(finding),
-                 "check that the window holds the free decay and that the range is not far too coarse");
+Error nothing(std::string finding) {
+  return {Problem::no_signal, "", std::move(finding),
+          "check that the window holds the free decay and that the range is not far too coarse"};
 }
 
 // Solution on blocks that suit it.
@@ -104,8 +107,28 @@ std::optional<Error> refusal(const Settled& settled, const DampedSine& model, co
   // Noise alone gives a gain of 2 ln(N) + 2 x with a probability of a few e^-x, over all frequencies and decays.
   const double threshold = 2 * (std::log(static_cast<double>(samples)) + 14);
   const auto likelihood = [&](double more) { return noise.dof * std::log1p(more / (noise.dof * variance)); };
-  if (!(likelihood(gain) > threshold)) return nothing("no oscillation stands out of the noise").value();
-  (void)model;
+  if (!(likelihood(gain) > threshold)) return nothing("no oscillation stands out of the noise");
+  // With few cycles a wandering level is taken for an oscillation, but leaves more over than a second mode would.
+  const double cycles = model.damped_omega() * static_cast<double>(samples) / (2 * std::numbers::pi);
+  const bool slow = cycles < 1.5 || model.damped_omega() < 4 * std::abs(model.a);
+  if (noise.structure > (slow ? kMostStructure : 0.05) * gain && cycles < 6) {
+    return nothing("what is there has a shape that no decaying oscillation has (a step, a pulse or a drift)");
+  }
+  // Slow shapes look like many things. A drift that a cubic describes as well is no decay.
+  if (!slow) return std::nullopt;
+  if (settled.plan.omega == 0 && settled.blocks.tail_count == 0) {
+    const double left = cubic_chi_square(settled.blocks) - settled.solution.at.chi_square;
+    if (!(likelihood(left) > threshold)) return nothing("what is there is a slow drift, not a decaying oscillation");
+  }
+  // One exponential, half a swing: many decays and frequencies describe it equally well.
+  const Eigen::MatrixXd inverse = inverse_normal<1>(settled.solution.at);
+  const double product = model.a * model.a + model.q;
+  bool told = settled.solution.converged && inverse.size() > 0;
+  if (told) {
+    const double product_variance = (4 * model.a * model.a * inverse(0, 0) + 4 * model.a * inverse(0, 1) + inverse(1, 1)) * variance;
+    told = model.a > 2 * std::sqrt(inverse(0, 0) * variance) && product > 3 * std::sqrt(product_variance);
+  }
+  if (!told) return nothing("what is there may be one exponential or part of a swing: frequency and decay cannot be told");
   return std::nullopt;
 }
 
@@ -122,10 +145,10 @@ Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSin
   }
   const double reference = head.count > 0 ? head.sum / static_cast<double>(head.count) : 0;
   const StrongestLine line = strongest_line(y);
-  if (!(line.strength > 0)) return nothing("all samples are equal");
+  if (!(line.strength > 0)) return tl::make_unexpected(nothing("all samples are equal"));
   const ShapeLimits limits = shape_limits(y.size());
   Settled settled = settle(y, first_solution(y, line, reference, limits), reference, limits);
-  if (!settled.solution.at.solvable) return nothing("no oscillation stands out of the noise");
+  if (!settled.solution.at.solvable) return tl::make_unexpected(nothing("no oscillation stands out of the noise"));
 
   DampedSineFit result;
   result.model = model_of(settled);
@@ -167,12 +190,12 @@ Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSin
   Eigen::MatrixXd& covariance = result.fit.covariance;
   const Eigen::MatrixXd inverse = inverse_normal<1>(settled.solution.at);
   if (inverse.size() > 0) {
-    if (result.undithered) {
-      const double own = std::max(noise.per_sample * noise.per_sample - step * step / 12, 1e-4 * step * step);
-      double rounding = 0;
-      covariance = rounding_covariance(result.model, span, step, std::sqrt(own), inverse, rounding);
-      result.sigma = std::sqrt(std::max(noise.per_sample * noise.per_sample - rounding, own));
-      covariance += inverse * (result.sigma * result.sigma);
+    const double scatter = noise.per_sample * noise.per_sample;
+    const double own = std::sqrt(std::max(scatter - step * step / 12, 1e-4 * step * step));
+    if (rounding_matters(span, step, own)) {
+      const RoundingError rounding = rounding_error(result.model, span, step, own, inverse);
+      if (result.undithered) result.sigma = std::sqrt(std::max(scatter - rounding.mean_square, own * own));
+      covariance = rounding.covariance + inverse * (result.sigma * result.sigma);
     } else {
       covariance = inverse * (noise.sigma * noise.sigma);
     }

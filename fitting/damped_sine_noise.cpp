@@ -39,20 +39,27 @@ double squared_residuals(std::span<const double> y, const WhiteBlocks& blocks, c
   return sum;
 }
 
-// e^x below -40 is nothing here.
-double normal_tail(double z) { return 0.5 * std::erfc(z * 0.70710678118654752); }
-
-// E[round(m + e)] - m in steps, for noise of `noise` steps (below about 0.5: two neighbours on each side matter).
-double mean_rounding(double m, double noise) {
-  const double d = m - std::round(m);
-  if (noise <= 0) return -d;
-  const double reach = 5 * noise;
-  double up = 0;
-  if (0.5 - d < reach) up += normal_tail((0.5 - d) / noise);
-  if (0.5 + d < reach) up -= normal_tail((0.5 + d) / noise);
-  if (1.5 - d < reach) up += normal_tail((1.5 - d) / noise);
-  if (1.5 + d < reach) up -= normal_tail((1.5 + d) / noise);
-  return up - d;
+// What of the white residuals is not rough: von Neumann's mean square successive difference sees only the noise.
+double structured_part(const WhiteBlocks& blocks, const Solution<1>& solution) {
+  const std::vector<double> residuals = white_residuals<1>(blocks, solution.shapes, solution.at.linear);
+  const std::size_t rank = static_cast<std::size_t>(blocks.rank);
+  double squares = 0, differences = 0;
+  std::size_t pairs = 0, values = 0;
+  for (std::size_t k = 0; k < blocks.count; ++k) {
+    if (blocks.present[k] == 0) continue;
+    const bool pair = k > 0 && blocks.present[k - 1] != 0;
+    for (std::size_t i = k * rank; i < (k + 1) * rank; ++i) {
+      squares += residuals[i] * residuals[i];
+      if (pair) differences += (residuals[i] - residuals[i - rank]) * (residuals[i] - residuals[i - rank]);
+    }
+    values += rank;
+    if (pair) pairs += rank;
+  }
+  if (pairs < 8) return 0;
+  const double rough = differences / (2 * static_cast<double>(pairs));
+  const double structure = squares - rough * static_cast<double>(values);
+  // For white residuals the difference is chance with a relative standard deviation of about 1 / sqrt(pairs).
+  return structure > 4 * squares / std::sqrt(static_cast<double>(pairs)) ? structure : 0;
 }
 
 }  // namespace
@@ -81,6 +88,7 @@ NoiseJudgement judge_noise(std::span<const double> y, const WhiteBlocks& blocks,
   const bool coloured = noise.in_band * noise.in_band > excess * noise.per_sample * noise.per_sample;
   noise.sigma = coloured ? noise.in_band : noise.per_sample;
   noise.dof = coloured ? band_dof : sample_dof;
+  noise.structure = structured_part(blocks, solution);
   return noise;
 }
 
@@ -96,52 +104,6 @@ double cubic_chi_square(const WhiteBlocks& blocks) {
     right += powers * blocks.values[k];
   }
   return std::max(0.0, blocks.energy - right.dot(normal.ldlt().solve(right)));
-}
-
-Eigen::MatrixXd rounding_covariance(const DampedSine& model, std::size_t samples, double resolution, double noise,
-                                    const Eigen::MatrixXd& inverse, double& mean_square) {
-  // Offsets and amplitudes on a lattice that fills the square of one step by one step evenly.
-  constexpr std::size_t kDraws = 21;
-  const Shape shape{model.a, model.q};
-  const double amplitude =
-      model.q > 0 ? std::sqrt(model.p * model.p + model.s * model.s / model.q) : std::abs(model.p);
-  struct Draw {
-    double offset, scale;
-    Eigen::Matrix<double, 5, 1> push = Eigen::Matrix<double, 5, 1>::Zero();
-  };
-  std::array<Draw, kDraws> draws;
-  for (std::size_t i = 0; i < kDraws; ++i) {
-    const double first = (static_cast<double>(i) + 0.5) / kDraws;
-    const double second = (static_cast<double>(13 * i % kDraws) + 0.5) / kDraws;
-    draws[i].offset = model.c / resolution + first;
-    draws[i].scale = (1 + (second - 0.5) * 2 * resolution / std::max(amplitude, resolution)) / resolution;
-  }
-  const DampedPair step = damped_pair(shape, 1);
-  DampedPair now;
-  double squares = 0;
-  for (std::size_t i = 0; i < samples; ++i) {
-    const double n = static_cast<double>(i);
-    if (i % 64 == 0) {
-      now = damped_pair(shape, n);
-    } else {
-      now = {now.c * step.c - shape.q * now.s * step.s, now.c * step.s + now.s * step.c};
-    }
-    const double swing = model.p * now.c + model.s * now.s;
-    Eigen::Matrix<double, 5, 1> slope;
-    slope << -n * swing, -model.p * n * now.s / 2 + model.s * damped_sine_slope(shape, n, now), now.c, now.s, 1;
-    for (Draw& draw : draws) {
-      const double d = mean_rounding(draw.offset + draw.scale * swing, noise / resolution);
-      draw.push += slope * d;
-      squares += d * d;
-    }
-  }
-  mean_square = squares * resolution * resolution / static_cast<double>(samples * kDraws);
-  Eigen::MatrixXd covariance = Eigen::MatrixXd::Zero(5, 5);
-  for (const Draw& draw : draws) {
-    const Eigen::VectorXd push = inverse * draw.push * resolution;
-    covariance += push * push.transpose() / static_cast<double>(kDraws);
-  }
-  return covariance;
 }
 
 }  // namespace coilassay
