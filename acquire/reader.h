@@ -20,7 +20,7 @@ class ByteSource {
  public:
   virtual ~ByteSource() = default;
   virtual const std::string& name() const = 0;
-  /// Fills as much of `into` as it can; 0 at the end.
+  /// Fills all of `into` unless the stream ends before; 0 at the end.
   virtual Result<std::size_t> read(std::span<char> into) = 0;
   /// Size in bytes when known beforehand (progress), 0 otherwise.
   virtual std::size_t size_hint() const = 0;
@@ -30,6 +30,7 @@ class ByteSource {
 struct ReadOptions {
   std::optional<char> delimiter;
   std::optional<char> decimal;
+  std::optional<double> sample_interval_s;  // for a file without time; what stands in the file is then not asked
   unsigned threads = 2;           // the result does not depend on it
   Progress* progress = nullptr;   // not owned; may be null
 };
@@ -39,6 +40,7 @@ class Reader {
  public:
   virtual ~Reader() = default;
   virtual std::string_view format_name() const = 0;
+  /// `first_bytes` is a look at the head of the stream (4 KiB or all of it); read() gets the stream from its beginning.
   virtual bool recognises(std::string_view file_name, std::string_view first_bytes) const = 0;
   virtual Result<Recording> read(ByteSource& bytes, std::string_view first_bytes, const ReadOptions& options) const = 0;
 };

@@ -10,8 +10,8 @@ namespace coilassay {
 namespace {
 
 TEST(ByteSource, GivesTheBytesOfAFileInBlocks) {
-  const auto bytes = open_bytes("LICENSE");
-  if (!bytes) GTEST_SKIP() << "no LICENSE beside the tests";
+  const auto bytes = open_bytes("CMakeLists.txt");
+  ASSERT_TRUE(bytes);
   std::vector<char> block(100);
   const auto got = (*bytes)->read(block);
   ASSERT_TRUE(got);

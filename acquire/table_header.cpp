@@ -1,0 +1,135 @@
+#include "acquire/table_header.h"
+
+#include <algorithm>
+#include <cmath>
+
+#include "acquire/number_scan.h"
+#include "acquire/table_settings.h"
+
+namespace coilassay {
+namespace {
+
+using Cells = std::vector<std::string>;
+
+bool is_number(const std::string& cell, char decimal) { return read_cell(cell, decimal).kind == CellKind::number; }
+
+Cells cells_in_words(std::string_view line, char delimiter) {
+  while (!line.empty() && (line.front() == '#' || line.front() == '!' || line.front() == '%')) line.remove_prefix(1);
+  Cells cells;
+  for (const std::string_view cell : cells_of(line, delimiter)) cells.push_back(cell_text(cell));
+  while (!cells.empty() && cells.back().empty()) cells.pop_back();
+  return cells;
+}
+
+/// "(ms)", "[V]", "Volt", nothing at all, or a word for a row number.
+bool is_unit_cell(const std::string& cell) {
+  std::string_view text = cell;
+  if (text.size() > 2 && (text.front() == '(' || text.front() == '[')) text = text.substr(1, text.size() - 2);
+  return text.empty() || text == "-" || names_index(text) || understand_column_unit(text).has_value();
+}
+
+std::optional<ColumnUnit> unit_of_cell(const std::string& cell) {
+  std::string_view text = cell;
+  if (text.size() > 2 && (text.front() == '(' || text.front() == '[')) text = text.substr(1, text.size() - 2);
+  return understand_column_unit(text);
+}
+
+bool is_row_of_units(const Cells& cells, std::size_t width) {
+  const std::size_t looked_at = std::min(cells.size(), width);
+  std::size_t units = 0;
+  for (std::size_t c = 0; c < looked_at; ++c) {
+    if (!is_unit_cell(cells[c])) return false;
+    if (unit_of_cell(cells[c])) ++units;
+  }
+  return units > 0;
+}
+
+/// Names are words, about as many as there are columns.
+bool is_row_of_names(const Cells& cells, std::size_t width, char decimal) {
+  if (cells.empty() || cells.size() + 1 < width) return false;
+  std::size_t words = 0;
+  for (std::size_t c = 0; c < std::min(cells.size(), width); ++c) {
+    if (is_number(cells[c], decimal)) return false;
+    if (!cells[c].empty()) ++words;
+  }
+  return words > 0 && words + 1 >= width;
+}
+
+/// A blank-separated heading such as "CH1 [V]" falls apart into two cells: the bracket belongs to the name before it.
+Cells rejoined(Cells cells, std::size_t width) {
+  if (cells.size() <= width) return cells;
+  Cells joined;
+  for (std::string& cell : cells) {
+    if (!joined.empty() && !cell.empty() && (cell.front() == '(' || cell.front() == '[') && unit_of_cell(cell)) {
+      joined.back() += " " + cell;
+    } else {
+      joined.push_back(std::move(cell));
+    }
+  }
+  return joined;
+}
+
+/// Headings beyond the columns with a number below them ("Start,Increment" over "-3e-3,2e-6") are settings.
+void take_settings_beside(const Cells& names, const Cells& below, std::size_t width, char decimal,
+                          std::map<std::string, std::string>& settings) {
+  for (std::size_t c = 0; c < std::min(names.size(), below.size()); ++c) {
+    const bool beyond = c >= width || understand_column_unit(below[c]) == std::nullopt;
+    if (beyond && !names[c].empty() && is_number(below[c], decimal)) settings[names[c]] = below[c];
+  }
+}
+
+/// Columns of the data that have anything in them: "0,1.2,," has two.
+std::size_t filled_width(const std::vector<TableLine>& lines, const TableDialect& dialect) {
+  std::size_t filled = 0;
+  for (std::size_t i = dialect.first_row; i < std::min(lines.size(), dialect.first_row + 100); ++i) {
+    const auto cells = cells_of(lines[i].text, dialect.delimiter);
+    for (std::size_t c = filled; c < std::min(cells.size(), dialect.width); ++c) {
+      if (!bare_cell(cells[c]).empty()) filled = c + 1;
+    }
+  }
+  return filled;
+}
+
+}  // namespace
+
+TableHeader understand_header(const std::vector<TableLine>& lines, const TableDialect& dialect) {
+  TableHeader header;
+  header.columns.resize(dialect.width);
+  std::vector<std::string_view> above;
+  for (std::size_t i = 0; i < dialect.first_row; ++i) {
+    if (!bare_cell(lines[i].text).empty()) above.push_back(lines[i].text);
+  }
+  const std::size_t width = filled_width(lines, dialect);
+  const auto cells_from_below = [&](std::size_t n) {
+    return n < above.size() ? rejoined(cells_in_words(above[above.size() - 1 - n], dialect.delimiter), width) : Cells{};
+  };
+
+  Cells last = cells_from_below(0);
+  Cells names;
+  Cells units;
+  std::size_t used = 0;
+  if (is_row_of_units(last, width) && is_row_of_names(cells_from_below(1), width, dialect.decimal)) {
+    names = cells_from_below(1);
+    units = std::move(last);
+    used = 2;
+    take_settings_beside(names, units, width, dialect.decimal, header.settings);
+  } else if (is_row_of_names(last, width, dialect.decimal)) {
+    names = std::move(last);
+    used = 1;
+  }
+
+  for (std::size_t c = 0; c < std::min(names.size(), dialect.width); ++c) {
+    Heading heading = understand_heading(names[c]);
+    header.columns[c].name = heading.name;
+    header.columns[c].unit = heading.unit;
+    header.has_names |= !heading.name.empty();
+  }
+  for (std::size_t c = 0; c < std::min(units.size(), dialect.width); ++c) {
+    if (const auto unit = unit_of_cell(units[c])) header.columns[c].unit = unit;
+  }
+  for (std::size_t i = 0; i + used < above.size(); ++i) read_setting(above[i], dialect.delimiter, header.settings);
+  interpret_settings(header, dialect.decimal);
+  return header;
+}
+
+}  // namespace coilassay

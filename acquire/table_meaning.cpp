@@ -1,0 +1,183 @@
+#include "acquire/table_meaning.h"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <cmath>
+
+#include "acquire/number_scan.h"
+#include "base/outside_text.h"
+
+namespace coilassay {
+namespace {
+
+constexpr std::size_t kRowsLookedAt = 500;
+
+/// The first rows as numbers, column by column.
+std::vector<std::vector<double>> first_rows(const std::vector<TableLine>& lines, const TableDialect& dialect) {
+  std::vector<std::vector<double>> columns(dialect.width);
+  for (std::size_t i = dialect.first_row; i < lines.size() && columns.front().size() < kRowsLookedAt; ++i) {
+    const auto cells = cells_of(lines[i].text, dialect.delimiter);
+    if (cells.size() < dialect.width || !is_row_of_numbers(cells, dialect.decimal)) continue;
+    for (std::size_t c = 0; c < dialect.width; ++c) columns[c].push_back(read_cell(cells[c], dialect.decimal).value);
+  }
+  return columns;
+}
+
+bool all_missing(const std::vector<double>& column) {
+  return std::all_of(column.begin(), column.end(), [](double v) { return std::isnan(v); });
+}
+
+/// Mean step of a column that rises all along, repeated values allowed; 0 when it does not.
+double rising_step(const std::vector<double>& column) {
+  if (column.size() < 2) return 0;
+  for (std::size_t i = 1; i < column.size(); ++i) {
+    if (!(column[i] >= column[i - 1])) return 0;
+  }
+  return (column.back() - column.front()) / static_cast<double>(column.size() - 1);
+}
+
+bool rises_evenly(const std::vector<double>& column) {
+  const double step = rising_step(column);
+  if (!(step > 0) || column.size() < 3) return false;
+  for (std::size_t i = 0; i < column.size(); ++i) {
+    if (std::fabs(column[i] - column.front() - static_cast<double>(i) * step) > 0.6 * step) return false;
+  }
+  return true;
+}
+
+bool counts_rows(const std::vector<double>& column) {
+  for (std::size_t i = 0; i < column.size(); ++i) {
+    if (column[i] != std::floor(column[i]) || (i > 0 && column[i] - column[i - 1] != 1)) return false;
+  }
+  return column.size() >= 2;
+}
+
+class ColumnJudge {
+ public:
+  ColumnJudge(const std::vector<TableLine>& lines, const TableDialect& dialect, const TableHeader& header)
+      : header_(header), values_(first_rows(lines, dialect)) {}
+
+  const std::vector<double>& values(std::size_t c) const { return values_[c]; }
+  bool empty(std::size_t c) const { return all_missing(values_[c]); }
+
+  bool is_index(std::size_t c) const {
+    const std::string& name = header_.columns[c].name;
+    if (!counts_rows(values_[c])) return false;
+    if (names_index(name)) return true;
+    // "X" above 0, 1, 2 counts rows unless a unit says that it is time.
+    return c == 0 && !header_.columns[c].unit && (name.empty() || names_time(name)) && values_.size() > 1 &&
+           (name.empty() || lower_case(name).starts_with('x'));
+  }
+
+  std::optional<std::size_t> time_column() const {
+    const std::size_t width = values_.size();
+    for (std::size_t c = 0; c < width; ++c) {
+      const auto& unit = header_.columns[c].unit;
+      if (unit && unit->unit == Unit::second && !empty(c) && !is_index(c)) return c;
+    }
+    for (std::size_t c = 0; c < width; ++c) {
+      const auto& unit = header_.columns[c].unit;
+      if (!unit && names_time(header_.columns[c].name) && !empty(c) && !is_index(c) && rising_step(values_[c]) > 0) return c;
+    }
+    // Nothing says it: the first column that is no row number, if it rises evenly.
+    for (std::size_t c = 0; c < width; ++c) {
+      if (empty(c) || is_index(c)) continue;
+      if (width > 1 && !header_.columns[c].unit && rises_evenly(values_[c])) return c;
+      break;
+    }
+    return std::nullopt;
+  }
+
+ private:
+  const TableHeader& header_;
+  std::vector<std::vector<double>> values_;
+};
+
+Finding contradiction(std::string message, const std::string& about, double figure, Unit unit) {
+  return {"header_contradicts", Severity::note, std::move(message), about, figure, unit};
+}
+
+/// Time in a unit that the interval contradicts: the interval and the stamps agree for another power of a thousand.
+int time_shift(const std::string& name, const ColumnHeading& heading, const std::vector<double>& stamps,
+               const std::optional<double>& interval_s, std::vector<Finding>& findings) {
+  const int stated = heading.unit ? heading.unit->exponent : 0;
+  const double step = rising_step(stamps);
+  if (!interval_s || !(step > 0)) return stated;
+  for (const int shift : {0, -3, -6, -9, -12}) {
+    const double ratio = step * std::pow(10.0, shift) / *interval_s;
+    if (std::fabs(ratio - 1) > 0.02 || shift == stated) continue;
+    findings.push_back(contradiction(
+        fmt::format("the heading '{}' {} but the stated sample interval of {} s fits stamps in {}: these were taken",
+                    shown(name, 60), heading.unit ? "says otherwise" : "names no unit", *interval_s,
+                    shift == 0 ? "s" : shift == -3 ? "ms" : shift == -6 ? "us" : shift == -9 ? "ns" : "ps"),
+        name, *interval_s, Unit::second));
+    return shift;
+  }
+  return stated;
+}
+
+void check_angle(const ChannelMeaning& channel, const std::vector<double>& values, std::vector<Finding>& findings) {
+  if (channel.unit_stated || !names_angle(channel.name)) return;
+  double largest = 0;
+  for (const double v : values) {
+    if (!std::isnan(v)) largest = std::max(largest, std::fabs(v));
+  }
+  findings.push_back({"angle_unit", largest <= 3.2 ? Severity::caution : Severity::note,
+                      fmt::format("column '{}' looks like an angle but its heading names no unit; its first values reach {}{}",
+                                  shown(channel.name, 60), largest,
+                                  largest <= 3.2 ? ": radians or small degrees" : ": degrees"),
+                      channel.name, largest, Unit::one});
+}
+
+}  // namespace
+
+Result<TableMeaning> understand_columns(const std::string& name, const std::vector<TableLine>& lines,
+                                        const TableDialect& dialect, const TableHeader& header, const ReadOptions& options) {
+  const ColumnJudge judge(lines, dialect, header);
+  TableMeaning meaning;
+  meaning.layout.delimiter = dialect.delimiter;
+  meaning.layout.decimal = dialect.decimal;
+  meaning.interval_s = options.sample_interval_s ? options.sample_interval_s : header.interval_s;
+  meaning.start_s = header.start_s;
+  meaning.count = header.count;
+  meaning.segment = header.segment;
+
+  const auto time = judge.time_column();
+  for (std::size_t c = 0; c < dialect.width; ++c) {
+    const ColumnHeading& heading = header.columns[c];
+    ColumnPlan plan;
+    if (time == c) {
+      meaning.time = meaning.layout.stored();
+      plan.shift = time_shift(heading.name, heading, judge.values(c), meaning.interval_s, meaning.findings);
+    } else if (judge.is_index(c) || judge.empty(c)) {
+      plan.stored = false;
+    } else {
+      ChannelMeaning channel;
+      channel.name = heading.name.empty() ? fmt::format("column {}", c + 1) : heading.name;
+      channel.column = c + 1;
+      if (heading.unit && !heading.unit->degrees && !heading.unit->decibels) {
+        channel.unit = *heading.unit;
+        channel.unit_stated = true;
+        plan.shift = heading.unit->exponent;
+      }
+      for (const std::string& key : {std::string(), channel.name}) {
+        if (const auto found = header.full_scale.find(key); found != header.full_scale.end()) channel.full_scale = found->second;
+      }
+      if (const auto found = header.resolution.find(channel.name); found != header.resolution.end()) {
+        channel.resolution = found->second;
+      }
+      if (!heading.unit) check_angle(channel, judge.values(c), meaning.findings);
+      meaning.channels.push_back(channel);
+    }
+    meaning.layout.columns.push_back(plan);
+  }
+  if (meaning.channels.empty()) {
+    return failure(Problem::not_a_capture, name,
+                   time ? "it has a column of time but none of samples" : "it has row numbers but no column of samples",
+                   "export at least one channel");
+  }
+  return meaning;
+}
+
+}  // namespace coilassay

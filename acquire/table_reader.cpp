@@ -1,0 +1,143 @@
+#include "acquire/table_reader.h"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+
+#include "acquire/byte_source_lines.h"
+#include "acquire/table_block.h"
+#include "acquire/table_dialect.h"
+#include "acquire/table_header.h"
+#include "acquire/table_meaning.h"
+#include "acquire/table_store.h"
+#include "base/outside_text.h"
+
+namespace coilassay {
+namespace {
+
+/// Lines in which preamble and dialect are looked for.
+constexpr std::size_t kLinesLookedAt = 4000;
+
+constexpr std::string_view kByteOrderMark = "\xEF\xBB\xBF";
+
+std::string place(const std::string& name, std::size_t line) { return fmt::format("{}:{}", name, line); }
+
+/// A large-file store leaves a note in place of a file that was not fetched.
+bool is_placeholder(std::string_view text) {
+  return text.size() < 1024 && text.starts_with("version ") && text.find("\noid sha256:") != std::string_view::npos &&
+         text.find("\nsize ") != std::string_view::npos;
+}
+
+class TableRead {
+ public:
+  TableRead(ByteSource& source, const ReadOptions& options) : name_(source.name()), source_(source), blocks_(source), options_(options) {}
+
+  Result<Recording> run() {
+    if (const auto got = blocks_.next(block_); !got) return failure(got);
+    if (const auto understood = understand(); !understood) return failure(understood);
+    if (const auto done = read_rows(); !done) return failure(done);
+    return captures();
+  }
+
+ private:
+  Result<void> understand() {
+    std::string_view text = block_.text();
+    if (text.starts_with(kByteOrderMark)) text.remove_prefix(kByteOrderMark.size());
+    if (text.empty()) return failure(Problem::not_a_capture, name_, "the file is empty", "export the waveform again");
+    if (text.find('\0') != std::string_view::npos) {
+      return failure(Problem::not_a_capture, name_, "it is a binary file, not a table in text", "export the waveform as CSV");
+    }
+    if (is_placeholder(text)) {
+      return failure(Problem::not_a_capture, name_, "it is the placeholder of a large-file store, not the data themselves",
+                     "fetch the real file from the store it belongs to");
+    }
+    std::vector<TableLine> lines = lines_of(text, true);
+    if (lines.size() > kLinesLookedAt) lines.resize(kLinesLookedAt);
+    const auto dialect = find_dialect(name_, lines, options_);
+    if (!dialect) return failure(dialect);
+    dialect_ = *dialect;
+    header_ = understand_header(lines, dialect_);
+    auto meaning = understand_columns(name_, lines, dialect_, header_, options_);
+    if (!meaning) return failure(meaning);
+    meaning_ = std::move(*meaning);
+    const TableLine& first = lines[dialect_.first_row];
+    first_line_ = first.number;
+    first_byte_ = static_cast<std::size_t>(first.text.data() - block_.bytes.data());
+    return {};
+  }
+
+  /// From the length of the first rows; the last one of the block is a better guide than the first.
+  std::size_t expected_rows(const BlockColumns& first) const {
+    const std::size_t bytes = block_.size - first_byte_;
+    const std::size_t left = source_.size_hint() > block_.size ? source_.size_hint() - block_.size : 0;
+    const double row = static_cast<double>(bytes) / static_cast<double>(std::max<std::size_t>(first.rows, 1));
+    return first.rows + static_cast<std::size_t>(1.02 * static_cast<double>(left) / row) + (left > 0 ? 1024 : 0);
+  }
+
+  Result<void> read_rows() {
+    std::size_t from = first_byte_;
+    std::size_t line = first_line_;
+    BlockColumns columns;
+    while (block_.size > 0) {
+      read_block(block_, from, meaning_.layout, columns);
+      if (!store_) store_.emplace(meaning_, expected_rows(columns));
+      store_->append(columns);
+      if (columns.fault) {
+        return failure(Problem::damaged, place(name_, line + columns.fault->line), columns.fault->finding,
+                       "repair or remove that line, or export the waveform again");
+      }
+      line += columns.lines;
+      from = 0;
+      if (options_.progress != nullptr &&
+          !options_.progress->advance("reading " + shown(name_), blocks_.bytes_read(), source_.size_hint())) {
+        return failure(Problem::interrupted, name_, "stopped while it was being read", "");
+      }
+      if (const auto got = blocks_.next(block_); !got) return failure(got);
+    }
+    if (store_->rows() < 2) {
+      return failure(Problem::too_few_samples, place(name_, first_line_), "it has one row of numbers only",
+                     "export the whole waveform");
+    }
+    return {};
+  }
+
+  Recording captures() {
+    std::vector<Capture> captures = store_->finish();
+    for (Capture& capture : captures) {
+      capture.dialect.format = "table";
+      capture.dialect.encoding = "utf-8";
+      capture.dialect.delimiter = std::string(1, dialect_.delimiter);
+      capture.dialect.decimal = std::string(1, dialect_.decimal);
+      capture.dialect.first_data_line = first_line_;
+      capture.dialect.settings = header_.settings;
+    }
+    return captures;
+  }
+
+  std::string name_;
+  ByteSource& source_;
+  LineBlocks blocks_;
+  const ReadOptions& options_;
+  LineBlock block_;
+  TableDialect dialect_;
+  TableHeader header_;
+  TableMeaning meaning_;
+  std::optional<TableStore> store_;
+  std::size_t first_line_ = 0;
+  std::size_t first_byte_ = 0;
+};
+
+class TableReader final : public Reader {
+ public:
+  std::string_view format_name() const override { return "table"; }
+  bool recognises(std::string_view, std::string_view) const override { return true; }  // asked last
+  Result<Recording> read(ByteSource& bytes, std::string_view, const ReadOptions& options) const override {
+    return TableRead(bytes, options).run();
+  }
+};
+
+}  // namespace
+
+std::unique_ptr<Reader> table_reader() { return std::make_unique<TableReader>(); }
+
+}  // namespace coilassay

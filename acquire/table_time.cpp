@@ -1,0 +1,284 @@
+#include "acquire/table_time.h"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <cmath>
+#include <cstdlib>
+#include <string>
+
+namespace coilassay {
+namespace {
+
+/// Deviation from even steps that no measurement notices: 1e-4 of a step is 95 dB below a wave of twenty samples a period.
+constexpr double kNegligible = 1e-4;
+
+double median_step(std::span<const double> stamps) {
+  std::vector<double> steps;
+  for (std::size_t i = 1; i < std::min<std::size_t>(stamps.size(), 4096); ++i) {
+    if (stamps[i] > stamps[i - 1]) steps.push_back(stamps[i] - stamps[i - 1]);
+  }
+  if (steps.empty()) return 0;
+  const auto middle = steps.begin() + static_cast<std::ptrdiff_t>(steps.size() / 2);
+  std::nth_element(steps.begin(), middle, steps.end());
+  return *middle;
+}
+
+double rounded_to(double value, int digits) {
+  const std::string text = fmt::format("{:.{}e}", value, digits - 1);
+  return std::strtod(text.c_str(), nullptr);
+}
+
+}  // namespace
+
+void TimeFollower::Digits::look_at(double stamp) {
+  if (stamp == 0 || !std::isfinite(stamp)) return;
+  const std::string text = fmt::format("{}", std::fabs(stamp));
+  // Shortest text that reads back to the same double: the digits of the file, as far as a double can hold them.
+  int places = 0;
+  int written = 0;
+  int zeros = 0;
+  bool point = false;
+  std::size_t i = 0;
+  for (; i < text.size() && text[i] != 'e'; ++i) {
+    if (text[i] == '.') {
+      point = true;
+      continue;
+    }
+    if (text[i] != '0') {
+      written += (written > 0 ? zeros : 0) + 1;
+      zeros = 0;
+    } else {
+      ++zeros;
+    }
+    if (point) ++places;
+  }
+  const int exponent = i < text.size() ? std::atoi(text.c_str() + i + 1) : 0;
+  const int last = exponent - places + zeros;  // zeros at the end were not needed
+  last_place = std::min(last_place, last);
+  significant = std::max(significant, written);
+  const double single = static_cast<double>(static_cast<float>(stamp));
+  if (std::fabs(single - stamp) > 0.51 * std::pow(10.0, last)) single_precision = false;
+}
+
+double TimeFollower::Digits::rounding(double stamp) const {
+  const double size = std::fabs(stamp);
+  double step = last_place < 400 ? std::pow(10.0, last_place) : 0;
+  if (size > 0 && significant > 0) {
+    step = std::max(step, std::pow(10.0, std::floor(std::log10(size)) - significant + 1));
+  }
+  if (single_precision) step = std::max(step, size * 0x1p-23);
+  return std::max(step, size * 0x1p-52);
+}
+
+std::size_t TimeFollower::follow(std::span<const double> stamps) {
+  if (stamps.empty()) return 0;
+  if (typical_step_ == 0) typical_step_ = median_step(stamps);
+  std::size_t accepted = stamps.size();
+  double before = count_ > 0 ? last_ : stamps.front();
+  for (std::size_t i = 0; i < stamps.size(); ++i) {
+    if (stamps[i] < before && before - stamps[i] >= 0.99 * typical_step_ &&
+        before - stamps[i] > 1.01 * digits_.rounding(before)) {
+      accepted = i;
+      break;
+    }
+    before = stamps[i];
+  }
+  stamps = stamps.first(accepted);
+  if (stamps.empty()) return 0;
+  // Every stamp of a short record is looked at, one in 256 of a long one.
+  for (std::size_t i = 0; i < stamps.size(); i += (count_ + i < 4096 ? 1 : 256)) digits_.look_at(stamps[i]);
+  look_at_pairs(stamps);
+  if (summarising_) {
+    summarise(stamps);
+  } else {
+    kept_.insert(kept_.end(), stamps.begin(), stamps.end());
+    if (kept_.size() >= kKept && groups_.empty() && count_ < kKept) {
+      const Line line = fitted();
+      double largest = 0;
+      if (line.step > 0 && fits(line, &largest)) {
+        summarising_ = true;
+        line_ = line;
+        open_ = Group{kept_.size(), 0, 0, 0, 0, 0, 0};
+      }
+    }
+  }
+  count_ += accepted;
+  last_ = stamps.back();
+  return accepted;
+}
+
+void TimeFollower::look_at_pairs(std::span<const double> stamps) {
+  for (std::size_t i = 0; pairs_ && i < stamps.size(); ++i) {
+    const std::size_t index = count_ + i;
+    const double before = i > 0 ? stamps[i - 1] : last_;
+    if (index % 2 == 1) {
+      pairs_ = stamps[i] == before;
+    } else if (index > 0) {
+      pairs_ = stamps[i] > before;
+    }
+  }
+}
+
+void TimeFollower::close_group() {
+  if (open_.count == 0) return;
+  groups_.push_back(open_);
+  open_ = Group{open_.first + open_.count, 0, 0, 0, 0, 0, 0};
+}
+
+void TimeFollower::summarise(std::span<const double> stamps) {
+  for (std::size_t i = 0; i < stamps.size(); ++i) {
+    const std::size_t index = open_.first + open_.count;
+    const double stamp = stamps[i];
+    const double deviation = stamp - line_.at(static_cast<double>(index));
+    // The line was fitted to the first million: its slope may be off by what rounding did to them.
+    const double drift = (2 * tolerance(line_.start, line_.step) / static_cast<double>(kKept)) * static_cast<double>(index);
+    if (!(std::fabs(deviation) <= 2 * tolerance(stamp, line_.step) + drift)) return give_up_line(stamps.subspan(i));
+    if (open_.count == 0 || deviation < open_.low - line_.at(static_cast<double>(open_.low_index))) {
+      open_.low = stamp;
+      open_.low_index = index;
+    }
+    if (open_.count == 0 || deviation > open_.high - line_.at(static_cast<double>(open_.high_index))) {
+      open_.high = stamp;
+      open_.high_index = index;
+    }
+    open_.mean += (stamp - open_.mean) / static_cast<double>(open_.count + 1);
+    if (++open_.count == kGroup) close_group();
+  }
+}
+
+/// Steps that turn uneven late: the stamps so far are those of the line they kept to, from here on all are kept.
+void TimeFollower::give_up_line(std::span<const double> rest) {
+  close_group();
+  const Line line = fitted();
+  const std::size_t end = groups_.empty() ? kept_.size() : groups_.back().first + groups_.back().count;
+  for (std::size_t n = kept_.size(); n < end; ++n) kept_.push_back(line.at(static_cast<double>(n)));
+  groups_.clear();
+  summarising_ = false;
+  kept_.insert(kept_.end(), rest.begin(), rest.end());
+}
+
+/// Least squares, about the middle of the record.
+TimeFollower::Line TimeFollower::fitted() const {
+  const std::size_t summarised = groups_.empty() ? 0 : groups_.back().first + groups_.back().count - groups_.front().first;
+  const std::size_t total = kept_.size() + summarised + open_.count;
+  if (total < 2) return {kept_.empty() ? 0 : kept_.front(), 0};
+  const double middle = static_cast<double>(total - 1) / 2;
+  const double origin = kept_.front();
+  double sum = 0;
+  double moment = 0;
+  double square = 0;
+  const auto add = [&](double index, double stamp, double weight) {
+    sum += weight * (stamp - origin);
+    moment += weight * (index - middle) * (stamp - origin);
+    square += weight * (index - middle) * (index - middle);
+  };
+  for (std::size_t i = 0; i < kept_.size(); ++i) add(static_cast<double>(i), kept_[i], 1);
+  const auto add_group = [&](const Group& g) {
+    if (g.count == 0) return;
+    add(static_cast<double>(g.first) + static_cast<double>(g.count - 1) / 2, g.mean, static_cast<double>(g.count));
+  };
+  for (const Group& group : groups_) add_group(group);
+  add_group(open_);
+  const double step = moment / square;
+  return {origin + sum / static_cast<double>(total) - step * middle, step};
+}
+
+/// How far a stamp may lie from its line: three quarters of a step of its writing, as the line itself may be off by a part.
+double TimeFollower::tolerance(double stamp, double step) const {
+  return 0.75 * digits_.rounding(stamp) + kNegligible * step;
+}
+
+bool TimeFollower::fits(const Line& line, double* largest) const {
+  double worst = 0;  // in tolerances
+  double worst_deviation = 0;
+  const auto look = [&](std::size_t index, double stamp) {
+    const double deviation = std::fabs(stamp - line.at(static_cast<double>(index)));
+    worst_deviation = std::max(worst_deviation, deviation);
+    return deviation;
+  };
+  // The tolerance changes slowly along the record: it is taken once for each stretch.
+  for (std::size_t begin = 0; begin < kept_.size(); begin += 64) {
+    const std::size_t end = std::min(begin + 64, kept_.size());
+    double farthest = 0;
+    for (std::size_t i = begin; i < end; ++i) farthest = std::max(farthest, look(i, kept_[i]));
+    const double allowed = std::max(tolerance(kept_[begin], line.step), tolerance(kept_[end - 1], line.step));
+    worst = std::max(worst, farthest / allowed);
+  }
+  const auto look_at_group = [&](const Group& g) {
+    if (g.count == 0) return;
+    worst = std::max(worst, look(g.low_index, g.low) / tolerance(g.low, line.step));
+    worst = std::max(worst, look(g.high_index, g.high) / tolerance(g.high, line.step));
+  };
+  for (const Group& group : groups_) look_at_group(group);
+  look_at_group(open_);
+  if (largest != nullptr) *largest = worst_deviation;
+  return worst <= 1;
+}
+
+/// The line of a given step that fits best, through the first stamp if that fits.
+std::optional<TimeFollower::Line> TimeFollower::with_step(double step, const Line& fit) const {
+  if (!(step > 0)) return std::nullopt;
+  const Line through_first{kept_.front(), step};
+  if (fits(through_first, nullptr)) return through_first;
+  const double middle = static_cast<double>(count_ - 1) / 2;
+  const Line centred{fit.at(middle) - step * middle, step};
+  if (fits(centred, nullptr)) return centred;
+  return std::nullopt;
+}
+
+/// The step with the fewest digits that the stamps allow; they were made with such a one.
+TimeFollower::Line TimeFollower::written_shortly(const Line& fit, std::optional<double> stated_step_s) const {
+  if (stated_step_s) {
+    if (const auto line = with_step(*stated_step_s, fit)) return *line;
+  }
+  for (int digits = 1; digits <= 12; ++digits) {
+    const double step = rounded_to(fit.step, digits);
+    // Far from the fit over the whole record: not worth a look at every stamp.
+    if (std::fabs(step - fit.step) * static_cast<double>(count_) >
+        4 * (tolerance(last_, fit.step) + tolerance(kept_.front(), fit.step))) {
+      continue;
+    }
+    if (const auto line = with_step(step, fit)) return *line;
+  }
+  return fit;
+}
+
+TimeStory TimeFollower::finish(std::optional<double> stated_step_s) const {
+  TimeStory story;
+  if (count_ == 0) return story;
+  if (count_ >= 4 && pairs_) {
+    TimeFollower distinct;
+    std::vector<double> every_second;
+    const Line all = fitted();
+    for (std::size_t i = 0; i < count_; i += 2) {
+      every_second.push_back(i < kept_.size() ? kept_[i] : all.at(static_cast<double>(i) + 0.5));
+    }
+    distinct.follow(every_second);
+    const TimeStory each = distinct.finish(stated_step_s);
+    // Stamps that merely lost their digits repeat as well, but then differ by one in the last digit.
+    if (each.axis.uniform() && each.axis.step_s > 4 * digits_.rounding(last_)) {
+      story.every_stamp_twice = true;
+      story.distinct_step_s = each.axis.step_s;
+      for (std::size_t i = 0; i < count_; ++i) {
+        const double exact = each.axis.start_s + static_cast<double>(i / 2) * each.axis.step_s;
+        story.axis.times_s.push_back(i < kept_.size() ? kept_[i] : exact);
+      }
+      return story;
+    }
+  }
+  const Line line = fitted();
+  double largest = 0;
+  if (count_ >= 2 && line.step > 0 && fits(line, &largest)) {
+    const Line shortest = written_shortly(line, stated_step_s);
+    story.axis.start_s = shortest.start;
+    story.axis.step_s = shortest.step;
+    return story;
+  }
+  story.largest_deviation_steps = line.step > 0 ? largest / line.step : 0;
+  story.axis.times_s = kept_;
+  for (std::size_t n = kept_.size(); n < count_; ++n) story.axis.times_s.push_back(line.at(static_cast<double>(n)));
+  return story;
+}
+
+}  // namespace coilassay
