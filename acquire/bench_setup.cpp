@@ -47,6 +47,7 @@ BenchSetup overridden(BenchSetup base, const BenchSetup& over) {
   ReadOptions reading = over.reading;
   if (!reading.delimiter) reading.delimiter = base.reading.delimiter;
   if (!reading.decimal) reading.decimal = base.reading.decimal;
+  if (!reading.sample_interval_s) reading.sample_interval_s = base.reading.sample_interval_s;
   base.reading = reading;
   return base;
 }

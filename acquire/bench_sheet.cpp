@@ -257,6 +257,13 @@ std::optional<char> read_decimal(Section& section) {
 void read_file(Section& section, ReadOptions& reading) {
   reading.delimiter = read_delimiter(section);
   reading.decimal = read_decimal(section);
+  if (const auto interval = section.value("sample_interval", Unit::second, Sense::above_zero)) {
+    reading.sample_interval_s = interval->value;
+    if (interval->law == Law::rectangular || interval->law == Law::normal) {
+      section.refuse(Problem::bad_sheet, "sample_interval", "the error of the sampling clock is stated elsewhere",
+                     "write it as the tolerance of [timebase]");
+    }
+  }
   if (reading.delimiter && reading.delimiter == reading.decimal) {
     section.refuse(Problem::bad_sheet, "decimal", "the decimal sign and the delimiter are the same",
                    "files with a decimal comma have \";\" or \"tab\" between their columns");

@@ -86,6 +86,7 @@ set = "fixtures/tweezers.toml"
 [file]
 delimiter = ";"
 decimal = ","
+sample_interval = "20 ns"
 [[equipment]]
 id = "DMM-3"
 certificate = "SBW-114"
@@ -133,6 +134,7 @@ TEST_F(BenchSheet, EveryKeyArrivesInSI) {
   EXPECT_EQ(setup.fixture_set, (folder_ / "fixtures/tweezers.toml").string());
   EXPECT_EQ(setup.reading.delimiter, ';');
   EXPECT_EQ(setup.reading.decimal, ',');
+  EXPECT_EQ(setup.reading.sample_interval_s, 20e-9);
   ASSERT_EQ(setup.equipment.size(), 2U);
   EXPECT_EQ(setup.equipment[0].certificate, "SBW-114");
   EXPECT_EQ(setup.equipment[0].calibrated, "2026-05-01");
@@ -227,6 +229,8 @@ TEST_F(BenchSheet, TheReadingKeyTakesSingleCharactersAndTheirNames) {
   EXPECT_EQ(good("[file]\ndelimiter = \"\\t\"\n").reading.delimiter, '\t');
   EXPECT_EQ(good("[file]\ndelimiter = \"space\"\n").reading.delimiter, ' ');
   EXPECT_EQ(good("[file]\ndelimiter = \"|\"\n").reading.delimiter, '|');
+  refuses("[file]\nsample_interval = \"0 s\"\n", Problem::bad_number, 2, "zero");
+  refuses("[file]\nsample_interval = \"1 us ± 1 %\"\n", Problem::bad_sheet, 2, "clock");
   refuses("[file]\ndelimiter = \";;\"\n", Problem::bad_sheet, 2, "';;'");
   refuses("[file]\ndelimiter = \"5\"\n", Problem::bad_sheet, 2, "'5'");
   refuses("[file]\ndelimiter = \".\"\n", Problem::bad_sheet, 2, "'.'");
@@ -266,6 +270,7 @@ TEST_F(BenchSheet, TheCommandLineReplacesItemByItem) {
   EXPECT_EQ(setup.reading.threads, 7U);
   EXPECT_EQ(setup.reading.delimiter, ';');
   EXPECT_EQ(setup.reading.decimal, '.');
+  EXPECT_EQ(setup.reading.sample_interval_s, 20e-9);
 
   // Every item of a sheet laid over nothing arrives.
   const BenchSetup copy = overridden({}, base);

@@ -3,12 +3,16 @@
 #include <gmock/gmock.h>
 #include <gtest/gtest.h>
 
+#include <unistd.h>
+
 #include <cmath>
 #include <cstdlib>
 #include <cstring>
+#include <filesystem>
 #include <limits>
 #include <sstream>
 
+#include "acquire/reader.h"
 #include "acquire/synthetic/ring_down.h"
 
 namespace coilassay {
@@ -111,6 +115,72 @@ TEST(CaptureWriter, OutsideTextCannotBreakTheTable) {
   EXPECT_THAT(rows[5], HasSubstr("'=1+1"));
   EXPECT_THAT(rows[5], HasSubstr("channel 4 [V]"));
   EXPECT_EQ(rows[6], "0,7,8,9");
+}
+
+Capture read_back(const Capture& capture) {
+  const std::string path =
+      (std::filesystem::temp_directory_path() / ("capture_writer_test_" + std::to_string(::getpid()) + ".csv"))
+          .string();
+  EXPECT_TRUE(write_file(path, written(capture)));
+  auto recording = read_recording(path);
+  std::filesystem::remove(path);
+  EXPECT_TRUE(recording) << (recording ? "" : recording.error().place + ": " + recording.error().finding);
+  if (!recording) return {};
+  auto* captures = std::get_if<std::vector<Capture>>(&*recording);
+  EXPECT_TRUE(captures != nullptr && captures->size() == 1);
+  return captures != nullptr && !captures->empty() ? captures->front() : Capture{};
+}
+
+// Time included: an interval that is no short number, a start of many steps.
+TEST(CaptureWriter, TheReadersGiveTheSameCaptureBitForBit) {
+  for (const int bits : {0, 8, 12}) {
+    synthetic::RingDownBench bench;
+    bench.samples = 5000;
+    bench.noise_v = 0.01;
+    bench.bits = bits;
+    bench.drive_channel = true;
+    bench.drive_time_s = 5e-6;
+    const auto record = synthetic::simulate_ring_down(bench);
+    ASSERT_TRUE(record);
+    const Capture& made = record->capture;
+    const Capture back = read_back(made);
+    ASSERT_EQ(back.channels.size(), 2U);
+    EXPECT_TRUE(back.time.uniform());
+    EXPECT_TRUE(same_bits(back.time.step_s, made.time.step_s)) << back.time.step_s << " " << made.time.step_s;
+    EXPECT_TRUE(same_bits(back.time.start_s, made.time.start_s)) << back.time.start_s << " " << made.time.start_s;
+    for (std::size_t c = 0; c < 2; ++c) {
+      const Channel &a = made.channels[c], &b = back.channels[c];
+      EXPECT_EQ(b.name, a.name);
+      EXPECT_EQ(b.unit, Unit::volt);
+      EXPECT_TRUE(b.unit_stated);
+      EXPECT_EQ(b.column, a.column);
+      EXPECT_EQ(b.missing, 0U);
+      ASSERT_EQ(b.samples.size(), a.samples.size());
+      EXPECT_EQ(std::memcmp(a.samples.data(), b.samples.data(), a.samples.size() * sizeof(double)), 0) << bits;
+      if (bits > 0) {
+        EXPECT_EQ(b.full_scale, a.full_scale);
+        EXPECT_NEAR(b.resolution, a.resolution, 1e-9 * a.resolution);
+      } else {
+        EXPECT_TRUE(std::isnan(b.full_scale));
+      }
+    }
+    EXPECT_TRUE(back.findings.empty()) << back.findings.front().code;
+    // And what was read is written the same again.
+    EXPECT_EQ(written(read_back(back)), written(back)) << bits;
+  }
+}
+
+TEST(CaptureWriter, MissingSamplesComeBackAsMissing) {
+  Capture capture;
+  capture.time = {0, 1e-6, {}};
+  std::vector<double> samples(100);
+  for (std::size_t n = 0; n < samples.size(); ++n) samples[n] = std::sin(0.3 * static_cast<double>(n));
+  samples[7] = samples[8] = std::nan("");
+  capture.channels = {channel("CH1", samples)};
+  const Capture back = read_back(capture);
+  ASSERT_EQ(back.channels.size(), 1U);
+  EXPECT_EQ(back.channels[0].missing, 2U);
+  EXPECT_TRUE(std::isnan(back.channels[0].samples.at(7)));
 }
 
 }  // namespace
