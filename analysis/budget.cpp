@@ -4,7 +4,7 @@
 #include <algorithm>
 #include <cassert>
 #include <cmath>
-#include <limits>
+#include <utility>
 
 #include "analysis/symbols.h"
 #include "base/number_text.h"
@@ -48,6 +48,11 @@ class Carrier {
       if (!(u > 0)) continue;
       add_direction(i, [&](std::vector<double>& x, double sign) { x[i] += sign * u; });
     }
+    for (const Eigen::VectorXd& point : fitted.contour) {
+      std::vector<double> x = best_;
+      for (Eigen::Index i = 0; i < point.size(); ++i) x[inputs.size() + static_cast<std::size_t>(i)] = point[i];
+      contour_.push_back(evaluate(x));
+    }
     if (fitted.covariance.size() > 0) {
       const Eigen::MatrixXd columns = square_root(fitted.covariance);
       for (Eigen::Index c = 0; c < columns.cols(); ++c) {
@@ -77,6 +82,17 @@ class Carrier {
     double sum = 0;
     for (const Direction& d : directions_) sum += d.shift[a] * d.shift[b];
     return sum;
+  }
+
+  /// How far the output reaches below and above its best value over the fit's 95 % region; zero without a contour.
+  std::pair<double, double> reach(std::size_t o) const {
+    double below = 0, above = 0;
+    for (const std::vector<double>& y : contour_) {
+      if (!std::isfinite(y[o])) continue;
+      below = std::fmax(below, center_[o] - y[o]);
+      above = std::fmax(above, y[o] - center_[o]);
+    }
+    return {below, above};
   }
 
   double bend(std::size_t o) const {
@@ -120,6 +136,7 @@ class Carrier {
   const MeasurementFunction& f_;
   std::vector<double> best_, center_;
   std::vector<Direction> directions_;
+  std::vector<std::vector<double>> contour_;
 };
 
 struct Interval {
@@ -253,10 +270,19 @@ void add_estimates(Measurement& result, const std::vector<InputError>& inputs, c
     const double k = coverage_factor(laws);
     interval.low = value - k * interval.u;
     interval.high = value + k * interval.u;
+    const auto [below, above] = carrier.reach(o);
+    if (below > 0 && above > 0 && !options.by_trials) {
+      // The ellipse's share of the interval gives way to what the region really spans.
+      const double fit_u = carrier.contribution(inputs.size(), o);
+      const double others = k * std::sqrt(std::fmax(variance - fit_u * fit_u, 0));
+      interval.low = value - std::hypot(below, others);
+      interval.high = value + std::hypot(above, others);
+      interval.u = std::fmax(std::fmax(value - interval.low, interval.high - value) / 1.96, interval.u);
+    }
     const double dof = effective_dof(laws);
     if (std::isfinite(dof) && dof < 200) interval.dof = dof;
 
-    const bool bent = carrier.bend(o) > 0.1 * interval.u;
+    const bool bent = carrier.bend(o) > 0.1 * interval.u && fitted.contour.empty();
     bool disagrees = bent && !options.by_trials;
     if (options.by_trials) {
       disagrees = !agree_to_two_digits(interval, trials[o]);

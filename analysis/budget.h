@@ -39,6 +39,8 @@ struct FittedInputs {
   Eigen::VectorXd values;
   Eigen::MatrixXd covariance;
   double dof = 0;          // 0: many
+  /// Values on the edge of the 95 % region where that is no ellipse (fitting/decay_contour.h); empty: the covariance serves.
+  std::vector<Eigen::VectorXd> contour;
 };
 
 /// How an output's interval is formed. `reciprocal`: the function gives 1/y, whose errors are the nearly linear ones (a
@@ -68,6 +70,8 @@ using MeasurementFunction = std::function<void(std::span<const double> inputs, s
 /// convolved laws (fitting/propagation.h). The same differences show how far the function bends: more than a tenth of u,
 /// and finding propagation_disagrees says so. By trials (JCGM 101): u and the interval from the trials, compared with first
 /// order by the rule of JCGM 101, 8.1, at two digits.
+/// With a contour, the part of the fit in each interval is the range of the output over it, each side for itself, joined
+/// with the other errors by root sum of squares; u is then that of the wider side over 1.96.
 /// An output that is NaN at the best values is left out. A reciprocal output whose interval is open becomes a bound
 /// (`at_least`) when its standard uncertainty exceeds the value of 1/y, and otherwise keeps its value with an upper end at
 /// infinity replaced by the bound.

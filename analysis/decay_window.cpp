@@ -29,18 +29,51 @@ double largest_deviation(std::span<const double> y, double level) {
   return largest;
 }
 
-/// First sample that has left rest: quiet before, far away after. 0 when the record does not begin at rest.
-std::size_t first_departure(std::span<const double> y, double level, double largest, double resolution) {
-  std::size_t far = 0;
-  while (far < y.size() && !(std::fabs(y[far] - level) >= 0.25 * largest)) ++far;
-  if (far < 8) return 0;
-  const auto before = y.first(far - far / 8);
-  const double rest = median(before);
-  const double scatter = std::fmax(robust_deviation(before), std::isnan(resolution) ? 0 : 0.6 * resolution);
-  if (scatter > 0.1 * largest) return 0;
-  std::size_t last_quiet = far;
-  while (last_quiet > 0 && !(std::fabs(y[last_quiet - 1] - rest) <= 4 * scatter)) --last_quiet;
-  return last_quiet;
+/// Noise of a single sample by the median of its second differences: slow shapes and the few samples of an edge do not
+/// count.
+double sample_noise(std::span<const double> y) {
+  std::vector<double> second;
+  const std::size_t stride = y.size() / 4096 + 1;
+  for (std::size_t i = 1; i + 1 < y.size(); i += stride) {
+    const double d = y[i - 1] - 2 * y[i] + y[i + 1];
+    if (!std::isnan(d)) second.push_back(std::fabs(d));
+  }
+  return second.empty() ? 0 : median(second) / 0.6745 / std::sqrt(6.0);
+}
+
+/// Means of consecutive blocks; a NaN in a block makes it NaN.
+std::vector<double> means_of(std::span<const double> y, std::size_t block) {
+  std::vector<double> means;
+  for (std::size_t at = 0; at + block <= y.size(); at += block) {
+    double sum = 0;
+    for (std::size_t i = at; i < at + block; ++i) sum += y[i];
+    means.push_back(sum / static_cast<double>(block));
+  }
+  return means;
+}
+
+/// First sample that has left rest: quiet before, far away after. 0 when the record does not begin at rest. Noise that
+/// would hide the departure is averaged away in blocks; the block that holds the release is then left out.
+std::size_t first_departure(std::span<const double> y, double level, double resolution) {
+  const double code = std::isnan(resolution) ? 0 : resolution;
+  const double noise = sample_noise(y);
+  for (std::size_t block = 1; block <= std::max<std::size_t>(y.size() / 256, 1); block *= 4) {
+    const std::vector<double> m = means_of(y, block);
+    const double largest = largest_deviation(m, level);
+    const double scatter_expected = noise / std::sqrt(static_cast<double>(block));
+    if (0.25 * largest < 6 * scatter_expected && block * 4 <= y.size() / 256) continue;
+    std::size_t far = 0;
+    while (far < m.size() && !(std::fabs(m[far] - level) >= 0.25 * largest)) ++far;
+    if (far < 8) return 0;
+    const std::span<const double> before(m.data(), far - far / 8);
+    const double rest = median(before);
+    const double scatter = std::fmax(robust_deviation(before), 0.6 * code);
+    if (scatter > 0.1 * largest) return 0;
+    std::size_t last_quiet = far;
+    while (last_quiet > 0 && !(std::fabs(m[last_quiet - 1] - rest) <= 4 * scatter)) --last_quiet;
+    return block == 1 ? last_quiet : (last_quiet + 1) * block;
+  }
+  return 0;
 }
 
 /// Sample after the last edge of a channel that shows the drive; nullopt when it does not switch off for good.
@@ -163,8 +196,7 @@ class Search {
 
     const auto record = y_.first(end);
     const double level = end_level(record);
-    const double largest = largest_deviation(record, level);
-    std::size_t release = first_departure(record, level, largest, search_.resolution);
+    std::size_t release = first_departure(record, level, search_.resolution);
     if (const auto edge = drive_release(search_.drive); edge && *edge < end) release = *edge;
 
     Result<Decay> direct = fit_from(release, end);

@@ -14,6 +14,7 @@ namespace coilassay {
 namespace {
 
 constexpr double kFewCycles = 3;
+constexpr double kCurvedRegion = 2;      // Q below: the region of (a, q) is far from an ellipse at moderate noise
 constexpr double kHardlySampled = 2.2;   // samples a period: the fold could be on either side
 constexpr double kThinlySampled = 5;
 
@@ -230,6 +231,24 @@ Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequ
   for (const Finding& finding : result.structure.findings) result.findings.push_back(finding);
   for (Finding& finding : check_range(channel, result.decay->first, result.decay->end)) {
     result.findings.push_back(std::move(finding));
+  }
+  if (!result.structure.modes && result.decay->fit.model.quality() < kCurvedRegion) {
+    DecayContour contour = decay_contour(window, result.decay->fit);
+    if (contour.open) {
+      double least = INFINITY;
+      for (const DecayPoint& point : contour.points) {
+        least = std::fmin(least, std::sqrt(std::fmax(point.a * point.a + point.q, 0)) / (2 * std::numbers::pi * result.step_s));
+      }
+      result.decay.reset();
+      result.findings.push_back({"near_critical", Severity::refusal,
+                                 "the record shows one falling exponential: the circuit is damped beyond swinging and its "
+                                 "natural frequency is only known to be above " +
+                                     to_text(least, Unit::hertz, Script::utf8, 2) +
+                                     "; use a larger capacitor, less damping across the coil or a quieter capture",
+                                 "f_0", least, Unit::hertz});
+      return result;
+    }
+    result.contour = std::move(contour.points);
   }
   note_sampling(result, channel.name);
   note_drive(result, channel.name, search.from.has_value());

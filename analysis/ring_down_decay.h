@@ -9,6 +9,7 @@
 #include "analysis/measurement.h"
 #include "analysis/ring_down.h"
 #include "base/result.h"
+#include "fitting/decay_contour.h"
 
 namespace coilassay {
 
@@ -21,6 +22,7 @@ struct CaptureDecay {
   std::span<const double> samples;     // of the whole record
   std::optional<Decay> decay;          // absent: no ringing; findings say why
   DecayStructure structure;
+  std::vector<DecayPoint> contour;     // edge of the 95 % region of (a, q) near critical damping; empty elsewhere
   std::vector<Finding> findings;
 
   /// a, q and their covariance, of the first mode.

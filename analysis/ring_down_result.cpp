@@ -56,6 +56,7 @@ FittedInputs DecayErrors::fitted(const CaptureDecay& decay) const {
   FittedInputs inputs;
   inputs.values = Eigen::Vector2d(decay.a(), decay.q());
   inputs.covariance = decay.covariance();
+  for (const DecayPoint& point : decay.contour) inputs.contour.emplace_back(Eigen::Vector2d(point.a, point.q));
   return inputs;
 }
 
