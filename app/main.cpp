@@ -1,11 +1,15 @@
 // coilassay: measures and judges inductors from captured waveforms and sweeps.
+#include <unistd.h>
+
 #include <exception>
 #include <iostream>
 #include <new>
+#include <ostream>
 #include <string>
 #include <vector>
 
 #include "app/commands/console.h"
+#include "app/commands/descriptor_buffer.h"
 #include "app/commands/process.h"
 #include "app/commands/program.h"
 
@@ -13,7 +17,9 @@ int main(int argc, char** argv) {
   using namespace coilassay;
   prepare_process();
   try {
-    Console console(std::cout, std::cerr, surroundings_of_process(), system_clock_now);
+    DescriptorBuffer standard_output(STDOUT_FILENO);
+    std::ostream out(&standard_output);
+    Console console(out, std::cerr, surroundings_of_process(), system_clock_now);
     return run_program(std::vector<std::string>(argv + (argc > 0 ? 1 : 0), argv + argc), console);
   } catch (const std::bad_alloc&) {
     std::cerr << "coilassay: there is not enough memory for this\n  try: a shorter record, or a machine with more memory\n";

@@ -3,6 +3,7 @@
 #include <algorithm>
 #include <cassert>
 #include <charconv>
+#include <cmath>
 
 #include "app/commands/command_line.h"
 #include "base/number_text.h"
@@ -14,19 +15,38 @@ namespace {
 
 std::string place_of(const Option& option) { return std::string(option.name); }
 
+/// What is wrong with a value or its tolerance, to stand after the value; empty when nothing is.
+std::string out_of_range(const StatedValue& stated, const Option& option) {
+  const double value = stated.value;
+  if (!(value < option.below)) return " is not below " + to_text(option.below, option.unit, Script::utf8, 3);
+  const double half = stated.law == Law::rectangular ? stated.half_width
+                      : stated.law == Law::normal    ? stated.standard_uncertainty
+                                                     : 0;
+  switch (option.range) {
+    case Range::any: return "";
+    case Range::not_zero:
+      if (value == 0) return " is zero";
+      return half >= std::fabs(value) ? " has a tolerance as large as the value" : "";
+    case Range::not_negative:
+      if (value < 0) return " is below zero";
+      return half > value ? " has a tolerance that reaches below zero" : "";
+    case Range::positive:
+      if (!(value > 0)) return " is not above zero";
+      return half >= value ? " has a tolerance that reaches down to zero" : "";
+    case Range::above_absolute_zero: return value < -273.15 ? " is below absolute zero" : "";
+  }
+  return "";
+}
+
 Result<StatedValue> read_stated(const Option& option, const std::string& text) {
   Result<StatedValue> value = parse_value(text, option.unit, option.name);
-  if (!value) return value;
-  const bool fits = option.range == Range::any || value->value > 0 ||
-                    (option.range == Range::not_negative && value->value == 0);
-  if (!fits) {
-    return failure(Problem::bad_number, place_of(option),
-                   in_quotes(text) + (option.range == Range::positive ? " is not above zero" : " is below zero"),
-                   how_to_write(option));
+  if (!value) {
+    Error error = value.error();
+    if (error.problem == Problem::wrong_unit) error.remedy = how_to_write(option);  // nearer than one for any unit
+    return tl::make_unexpected(std::move(error));
   }
-  if (option.range == Range::positive && value->law == Law::rectangular && value->half_width >= value->value) {
-    return failure(Problem::bad_number, place_of(option), "the tolerance of " + in_quotes(text) + " reaches down to zero",
-                   how_to_write(option));
+  if (const std::string finding = out_of_range(*value, option); !finding.empty()) {
+    return failure(Problem::bad_number, place_of(option), in_quotes(text) + finding, how_to_write(option));
   }
   if (option.kind == ValueKind::plain && value->law != Law::unstated) {
     return failure(Problem::bad_number, place_of(option), in_quotes(text) + " has a tolerance, which means nothing here",
@@ -102,10 +122,10 @@ Result<void> Arguments::add(const Option& option, const std::string& text) {
 const std::vector<Arguments::Value>& Arguments::values(std::string_view option,
                                                        std::initializer_list<ValueKind> kinds) const {
   static const std::vector<Value> none;
-  [[maybe_unused]] const Option* declared = command_->find(option);
+  const Option* declared = command_->find(option);
   assert(declared != nullptr && "a command asks only for options it declares");
   assert(std::find(kinds.begin(), kinds.end(), declared->kind) != kinds.end());
-  asked_.insert(option);
+  asked_.insert(declared->name);  // not the caller's text, which may be gone before this
   const auto found = values_.find(option);
   return found == values_.end() ? none : found->second;
 }

@@ -3,6 +3,7 @@
 
 #include <CLI/CLI.hpp>
 #include <algorithm>
+#include <span>
 
 #include "base/outside_text.h"
 
@@ -24,7 +25,7 @@ tl::unexpected<Error> no_such_option(const Command& command, const std::string& 
   // A beginning of a name is nearer than any misspelling.
   std::string_view hint;
   for (const std::string_view name : names) {
-    if (typed.size() > 3 && name.starts_with(typed)) hint = name;
+    if (hint.empty() && typed.size() > 3 && name.starts_with(typed)) hint = name;
   }
   if (hint.empty()) hint = nearest(typed, names);
   const std::string help = "coilassay help " + std::string(command.name) + " lists its options";
@@ -36,34 +37,33 @@ tl::unexpected<Error> no_value(const Option& option) {
   return failure(Problem::usage, std::string(option.name), "the option has no value", how_to_write(option));
 }
 
-/// What CLI11 would take in its own way is settled first: a value that is left out or empty, a flag with a value.
-Result<std::vector<std::string>> checked(const Command& command, const std::vector<std::string>& words) {
+/// The words up to "--", ready for CLI11: every value stands behind its option, and whatever CLI11 would take or refuse
+/// in its own words is settled.
+Result<std::vector<std::string>> checked(const Command& command, std::span<const std::string> words) {
   std::vector<std::string> result;
   const Option* waiting = nullptr;  // takes the next word, whatever it looks like
-  bool options_ended = false;
   for (const std::string& word : words) {
-    const Option* waited = std::exchange(waiting, nullptr);
-    if (waited != nullptr) {
-      if (word == "--" || command.find(word) != nullptr) {
-        return no_value(*waited);
-      }
+    if (waiting != nullptr) {
+      if (command.find(word) != nullptr) return no_value(*waiting);
+      waiting = nullptr;
       result.push_back(word);
       continue;
     }
-    options_ended = options_ended || word == "--";
+    const bool is_word = word.size() < 2 || word.front() != '-';
+    const bool is_short = !is_word && word[1] != '-';
     const std::size_t equals = word.find('=');
-    const Option* option = options_ended ? nullptr : command.find(word.substr(0, equals));
-    if (option == nullptr) {
-      result.push_back(word);
-    } else if (equals == std::string::npos) {
-      if (option->kind != ValueKind::flag) waiting = option;
+    const std::size_t name_ends = is_short ? 2 : std::min(equals, word.size());
+    const Option* option = is_word ? nullptr : command.find(word.substr(0, name_ends));
+    if (!is_word && option == nullptr) return no_such_option(command, word);
+    if (option == nullptr || name_ends == word.size()) {
+      if (option != nullptr && option->kind != ValueKind::flag) waiting = option;
       result.push_back(word);
     } else if (option->kind == ValueKind::flag) {
       return failure(Problem::usage, std::string(option->name), "the option takes no value",
                      "write " + std::string(option->name) + " alone");
     } else {
       result.emplace_back(option->name);
-      result.push_back(word.substr(equals + 1));
+      result.push_back(word.substr(equals == name_ends ? name_ends + 1 : name_ends));
     }
   }
   if (waiting != nullptr) return no_value(*waiting);
@@ -73,12 +73,12 @@ Result<std::vector<std::string>> checked(const Command& command, const std::vect
 }  // namespace
 
 Result<SplitLine> split_command_line(const Command& command, const std::vector<std::string>& words) {
-  Result<std::vector<std::string>> given = checked(command, words);
+  const auto end = std::find(words.begin(), words.end(), "--");
+  Result<std::vector<std::string>> given = checked(command, std::span(words.begin(), end));
   if (!given) return failure(given);
 
   CLI::App app;
   app.set_help_flag();  // ours is in the table
-  app.allow_extras();
   std::vector<std::pair<const Option*, CLI::Option*>> declared;
   for (const OptionGroup& group : command.groups) {
     for (const Option& option : group.options) {
@@ -87,18 +87,14 @@ Result<SplitLine> split_command_line(const Command& command, const std::vector<s
     }
   }
   SplitLine line;
-  app.add_option("words", line.words);
+  app.allow_extras();  // the words; declared as an option, a name in square brackets would be taken for a list
   try {
     std::reverse(given->begin(), given->end());  // CLI11 takes them from the end
     app.parse(std::move(*given));
   } catch (const CLI::Error& error) {
     return failure(Problem::usage, "coilassay " + std::string(command.name), error.what(), usage_of(command));
   }
-  for (const std::string& extra : app.remaining()) {
-    if (extra.size() > 1 && extra.front() == '-') return no_such_option(command, extra);
-    return failure(Problem::usage, "coilassay " + std::string(command.name), "there is no use for " + in_quotes(extra),
-                   usage_of(command));
-  }
+  line.words = app.remaining();
   for (const auto& [option, seen] : declared) {
     if (option->kind == ValueKind::flag) {
       if (seen->count() > 0) line.options.emplace_back(option, "");
@@ -106,6 +102,7 @@ Result<SplitLine> split_command_line(const Command& command, const std::vector<s
       for (const std::string& text : seen->results()) line.options.emplace_back(option, text);
     }
   }
+  if (end != words.end()) line.words.insert(line.words.end(), end + 1, words.end());
   return line;
 }
 

@@ -75,10 +75,10 @@ Command man_command() {
 
 Command completion_command() {
   return {.name = "completion",
-          .summary = "commands for a shell that complete commands, options and files",
+          .summary = "completion of commands, options and files for bash",
           .positional = {.name = "bash", .help = "the shell", .least = 1, .most = 1, .files = false},
           .groups = {everywhere_options()},
-          .examples = {{"completion bash", "source <(coilassay completion bash) in ~/.bashrc switches it on"}},
+          .examples = {{"completion bash", "a line source <(coilassay completion bash) in ~/.bashrc switches it on"}},
           .run = run_completion};
 }
 

@@ -8,7 +8,7 @@ namespace coilassay {
 
 namespace {
 
-constexpr std::size_t kWidestLeft = 28;  // a longer left side gets a line of its own
+constexpr std::size_t kWidestLeft = 30;  // a longer left side gets a line of its own
 
 std::string painted(std::string_view text, const TextStyle& style) {
   return style.color ? "\x1b[1m" + std::string(text) + "\x1b[0m" : std::string(text);

@@ -15,22 +15,40 @@ double steady_seconds() {
   return std::chrono::duration<double>(std::chrono::steady_clock::now().time_since_epoch()).count();
 }
 
-std::optional<char> delimiter_of(const std::optional<std::string>& word) {
-  if (!word) return std::nullopt;
-  if (*word == "semicolon") return ';';
-  if (*word == "tab") return '\t';
-  return *word == "space" ? ' ' : ',';
+struct Sign {
+  std::string_view typed;
+  char sign;
+};
+
+Result<std::optional<char>> sign_of(const Arguments& arguments, std::string_view option, std::initializer_list<Sign> signs,
+                                    const std::string& remedy) {
+  const std::optional<std::string> typed = arguments.text(option);
+  if (!typed) return std::nullopt;
+  for (const Sign& each : signs) {
+    if (each.typed == *typed) return each.sign;
+  }
+  return failure(Problem::usage, std::string(option), in_quotes(*typed) + " cannot be that sign", remedy);
 }
 
 }  // namespace
 
-BenchSetup stated_bench(const Arguments& arguments) {
+Result<BenchSetup> stated_bench(const Arguments& arguments) {
+  const auto delimiter = sign_of(arguments, "--delimiter",
+                                 {{",", ','}, {";", ';'}, {"\t", '\t'}, {"tab", '\t'}, {" ", ' '}, {"space", ' '}},
+                                 "give ',' or ';' in quotes, tab or space");
+  if (!delimiter) return failure(delimiter);
+  const auto decimal = sign_of(arguments, "--decimal", {{".", '.'}, {",", ','}}, "give '.' or ','");
+  if (!decimal) return failure(decimal);
+  if (*delimiter && *delimiter == *decimal) {
+    return failure(Problem::usage, "--decimal", "the decimal sign and the delimiter are the same",
+                   "files with a decimal comma have a semicolon or a tab between their columns");
+  }
   BenchSetup bench;
+  bench.reading.delimiter = *delimiter;
+  bench.reading.decimal = *decimal;
   bench.voltage.column = arguments.text("--voltage");
   bench.voltage.gain = arguments.stated("--voltage-gain");
-  bench.reading.delimiter = delimiter_of(arguments.text("--delimiter"));
-  if (const auto decimal = arguments.text("--decimal")) bench.reading.decimal = *decimal == "comma" ? ',' : '.';
-  bench.timebase = arguments.stated("--timebase");
+  if (const auto ratio = arguments.plain("--timebase")) bench.timebase = StatedValue::unstated(*ratio, Unit::one);
   bench.temperature = arguments.stated("--temperature");
   bench.level = arguments.stated("--level");
   return bench;

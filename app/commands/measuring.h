@@ -13,8 +13,9 @@
 
 namespace coilassay {
 
-/// Reading options and conditions as a set-up that replaces what a bench sheet says.
-BenchSetup stated_bench(const Arguments& arguments);
+/// Reading options and conditions as a set-up that replaces what a bench sheet says. usage for a sign that cannot separate
+/// columns or mark decimals.
+Result<BenchSetup> stated_bench(const Arguments& arguments);
 
 /// usage: --trials or --seed without trials.
 Result<PropagationOptions> propagation_of(const Arguments& arguments);

@@ -1,6 +1,7 @@
 // Options and commands as data. Parsing, help, the man page, shell completion and docs/commands.md are made from these.
 #pragma once
 
+#include <cmath>
 #include <cstdint>
 #include <span>
 #include <string>
@@ -34,8 +35,14 @@ enum class ValueKind {
   file,
 };
 
-/// Which values make sense; what lies outside is refused with the option as the place.
-enum class Range { any, not_negative, positive };
+/// Which values make sense, the same as in a bench sheet; what lies outside is refused with the option as the place.
+enum class Range {
+  any,
+  not_zero,             // a factor: an inverted probe is one
+  not_negative,         // strays and losses
+  positive,
+  above_absolute_zero,  // of a temperature in degrees Celsius
+};
 
 struct Option {
   std::string_view name = {};        // "--capacitor", "-o"
@@ -45,6 +52,7 @@ struct Option {
   std::string_view example = {};     // a value as typed; checked by a test to be accepted
   Unit unit = Unit::one;             // of a stated or plain value
   Range range = Range::any;
+  double below = HUGE_VAL;           // a stated or plain value must be less than this
   std::uint64_t least = 0;           // of a count
   std::uint64_t most = UINT64_MAX;
   std::vector<std::string_view> choices = {};

@@ -81,10 +81,11 @@ bool wants_json(const std::vector<std::string>& words) {
 
 /// Whether standard output took everything. A reader that went away has what it wanted.
 Result<void> flushed(Console& console) {
+  const bool fine = static_cast<bool>(console.out());
   errno = 0;
-  console.out().flush();
-  if (console.out() || errno == EPIPE) return {};
-  const std::string why = errno == 0 ? "it is closed" : std::generic_category().message(errno);
+  const bool stored = console.out().rdbuf()->pubsync() == 0;
+  if ((fine && stored) || errno == EPIPE) return {};
+  const std::string why = errno == 0 ? "the stream failed" : std::generic_category().message(errno);
   return failure(Problem::cannot_write, "standard output", "not all of the result could be written: " + why,
                  "give it a place with room, or a file");
 }

@@ -14,7 +14,9 @@ Result<RingDownJob> job_of(const Arguments& arguments) {
   job.files = arguments.words();
   job.segment = arguments.text("--segment");
   job.bench_sheet = arguments.text("--bench");
-  job.stated = stated_bench(arguments);
+  Result<BenchSetup> stated = stated_bench(arguments);
+  if (!stated) return failure(stated);
+  job.stated = std::move(*stated);
   for (const StatedValue& value : arguments.all_stated("--capacitor")) {
     job.stated.capacitors.push_back({.value = value, .dissipation_factor = std::nullopt});
   }
@@ -48,7 +50,7 @@ Result<ExitCode> run(const Arguments& arguments, Console& console) {
 Command ring_down_command() {
   return {
       .name = "ringdown",
-      .summary = "inductance, resistance and Q from the free decay of a coil across a capacitor",
+      .summary = "L, R and Q of a coil from its free decay across a capacitor",
       .description =
           "Connect a known capacitor across the coil, feed it a little current, let go, and capture the voltage as it "
           "rings. The release and the end of the usable decay are found from the record.\n"
@@ -59,8 +61,8 @@ Command ring_down_command() {
                  output_options(), measuring_options()},
       .examples = {{"ringdown ring.csv --capacitor 10nF±1% --probe-capacitance 13pF±2pF",
                     "L_s, R_s and Q of a coil with 10 nF across it, seen through a divider probe"},
-                   {"ringdown a.csv b.csv c.csv --capacitor 1nF±1% --capacitor 4n7±1% --capacitor 22nF±1%",
-                    "L and self-capacitance, and whether the three captures agree"},
+                   {"ringdown a.csv b.csv --capacitor 1nF±1% --capacitor 22nF±1%",
+                    "L and the capacitance of the winding itself"},
                    {"ringdown ring.csv --bench bench.toml --json --report ring.html",
                     "the set-up from a bench sheet, the result for a program and as a page"}},
       .run = run};

@@ -31,7 +31,7 @@ Option voltage_gain() {
           .value_name = "VALUE",
           .help = "factor the file has not applied yet, such as that of a divider probe",
           .example = "10±1%",
-          .range = Range::positive};
+          .range = Range::not_zero};
 }
 
 Option bench_file() {
@@ -52,11 +52,12 @@ Option segment() {
 
 Option timebase() {
   return {.name = "--timebase",
-          .kind = ValueKind::stated,
+          .kind = ValueKind::plain,
           .value_name = "RATIO",
           .help = "how far the instrument's clock may be off",
           .example = "25ppm",
-          .range = Range::not_negative};
+          .range = Range::not_negative,
+          .below = 1};
 }
 
 OptionGroup reading_options() {
@@ -65,17 +66,15 @@ OptionGroup reading_options() {
                       voltage_gain(),
                       segment(),
                       {.name = "--delimiter",
-                       .kind = ValueKind::choice,
+                       .kind = ValueKind::text,
                        .value_name = "SIGN",
-                       .help = "what separates columns, when the file itself leaves it open",
-                       .example = "semicolon",
-                       .choices = {"comma", "semicolon", "tab", "space"}},
+                       .help = "what separates columns, when the file itself leaves it open: a comma, a semicolon, tab or space",
+                       .example = ";"},
                       {.name = "--decimal",
-                       .kind = ValueKind::choice,
+                       .kind = ValueKind::text,
                        .value_name = "SIGN",
-                       .help = "the decimal sign, when the file itself leaves it open",
-                       .example = "comma",
-                       .choices = {"point", "comma"}}}};
+                       .help = "the decimal sign, when the file itself leaves it open: a point or a comma",
+                       .example = ","}}};
 }
 
 OptionGroup ring_down_options() {
@@ -94,6 +93,7 @@ OptionGroup ring_down_options() {
                        .help = "its dissipation factor; once for all capacitors, or once for each",
                        .example = "0.0005±50%",
                        .range = Range::not_negative,
+                       .below = 1,
                        .repeatable = true},
                       {.name = "--probe-capacitance",
                        .kind = ValueKind::stated,
@@ -150,13 +150,15 @@ OptionGroup conditions_options() {
                        .value_name = "VALUE",
                        .help = "of the coil, kept with the result",
                        .example = "23±2degC",
-                       .unit = Unit::degree_celsius},
+                       .unit = Unit::degree_celsius,
+                       .range = Range::above_absolute_zero},
                       {.name = "--level",
                        .kind = ValueKind::stated,
                        .value_name = "VALUE",
                        .help = "voltage of the stimulus, kept with the result",
                        .example = "1V",
-                       .unit = Unit::volt}}};
+                       .unit = Unit::volt,
+                       .range = Range::not_negative}}};
 }
 
 OptionGroup uncertainty_options() {

@@ -119,7 +119,7 @@ OptionGroup files() {
           {{.name = "-o", .kind = ValueKind::file, .value_name = "FILE", .help = "the capture, as CSV; '-' is standard output",
             .example = "ring.csv"},
            {.name = "--truth", .kind = ValueKind::file, .value_name = "FILE",
-            .help = "every parameter and the exact quantities of the circuit, as JSON", .example = "ring.truth.json"},
+            .help = "every parameter and the exact quantities of the circuit, as JSON", .example = "ring.json"},
            {.name = "--seed", .kind = ValueKind::count, .value_name = "N",
             .help = "of the noise, 1 unless given; the same seed gives the same file", .example = "7"}}};
 }
@@ -132,7 +132,7 @@ Command simulate_ring_down_command() {
           .description = "Solves the circuit exactly and looks at it through a simulated scope. What a real bench would not "
                          "tell, the truth, goes to a file of its own.",
           .groups = {files(), coil(), across(), release(), second_mode(), scope(), everywhere_options()},
-          .examples = {{"simulate ringdown -o ring.csv --truth ring.truth.json --inductance 22uH --noise 2mV --bits 8",
+          .examples = {{"simulate ringdown -o ring.csv --truth ring.json --noise 2mV --bits 8",
                         "a capture to try ringdown on, and what it ought to find"}},
           .run = run};
 }
