@@ -34,14 +34,23 @@ struct Settled {
   Plan plan;
 };
 
-Solution<1> first_solution(std::span<const double> y, const StrongestLine& line, double reference,
-                           const ShapeLimits& limits) {
+// A first fit around the strongest line: of a few dozen shapes the best, then its least squares. Shape per sample of y.
+std::optional<Shape> first_shape(std::span<const double> y, const Beginning& beginning) {
+  const double d = static_cast<double>(beginning.decimation);
+  const std::span<const double> values = beginning.averages.empty() ? y : std::span<const double>(beginning.averages);
+  StrongestLine line = beginning.line;  // in units of the averages
+  line.omega *= d;
+  line.omega_error *= d;
+  line.length /= beginning.decimation;
   const double length = static_cast<double>(line.length);
   const bool trusted = line.cycles >= kTrustedCycles;
-  const double reach = trusted ? 40 * length : 8 * length;
-  const std::size_t span = static_cast<std::size_t>(std::min(reach, static_cast<double>(y.size())));
+  const double reach = (trusted ? 40 : 8) * length;
+  const std::size_t span = static_cast<std::size_t>(std::min(reach, static_cast<double>(values.size())));
   Plan plan = plan_with_length(span, span, length / 16, trusted ? line.omega : 0);
-  const WhiteBlocks blocks = compress(y.first(span), plan, reference);
+  const PresentSum head = present_sum(values.first(std::min<std::size_t>(span, 4096)), 0);
+  const double reference = head.count > 0 ? head.sum / static_cast<double>(head.count) : 0;
+  const WhiteBlocks blocks = compress(values.first(span), plan, reference);
+  const ShapeLimits limits = shape_limits(span);
   std::vector<std::pair<double, Shape>> scored;
   for (const Shape& shape : starting_shapes(line)) {
     if (!limits.allow(shape)) continue;
@@ -55,24 +64,27 @@ Solution<1> first_solution(std::span<const double> y, const StrongestLine& line,
     Solution<1> solution = refine<1>(blocks, {scored[i].second}, limits);
     if (solution.gain() > best.gain()) best = solution;
   }
-  return best;
+  if (!best.at.solvable) return std::nullopt;
+  return Shape{best.shapes[0].a / d, best.shapes[0].q / (d * d)};
 }
 
 // Fits again until the blocks suit the solution they lead to.
-Settled settle(std::span<const double> y, Solution<1> solution, double reference, const ShapeLimits& limits) {
+Settled settle(std::span<const double> y, const Shape& start, double reference) {
   Settled settled;
-  settled.solution = std::move(solution);
-  for (int round = 0; round < 6 && settled.solution.at.solvable; ++round) {
-    const Shape shape = settled.solution.shapes[0];
-    const Eigen::MatrixXd inverse = inverse_normal<1>(settled.solution.at);
+  const ShapeLimits limits = shape_limits(y.size());
+  Shape shape = start;
+  for (int round = 0; round < 6; ++round) {
     double omega_uncertainty = 0;
-    if (inverse.size() > 0 && shape.q > 0) {
-      omega_uncertainty = std::sqrt(inverse(1, 1) * settled.solution.variance) / (2 * shape.omega());
+    if (settled.solution.at.solvable && shape.q > 0) {
+      const Eigen::MatrixXd inverse = inverse_normal<1>(settled.solution.at);
+      if (inverse.size() > 0) omega_uncertainty = std::sqrt(inverse(1, 1) * settled.solution.variance) / (2 * shape.omega());
     }
     settled.plan = plan_for(shape, omega_uncertainty, y.size());
     settled.blocks = compress(y, settled.plan, reference);
     settled.solution = refine<1>(settled.blocks, {shape}, limits);
-    if (plan_fits(settled.plan, settled.solution.shapes[0], y.size())) break;
+    if (!settled.solution.at.solvable) break;
+    shape = settled.solution.shapes[0];
+    if (plan_fits(settled.plan, shape, y.size())) break;
   }
   return settled;
 }
@@ -144,10 +156,11 @@ Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSin
                    "widen the window or sample faster");
   }
   const double reference = head.count > 0 ? head.sum / static_cast<double>(head.count) : 0;
-  const StrongestLine line = strongest_line(y);
-  if (!(line.strength > 0)) return tl::make_unexpected(nothing("all samples are equal"));
-  const ShapeLimits limits = shape_limits(y.size());
-  Settled settled = settle(y, first_solution(y, line, reference, limits), reference, limits);
+  const Beginning beginning = find_beginning(y);
+  if (!(beginning.line.strength > 0)) return tl::make_unexpected(nothing("all samples are equal"));
+  const std::optional<Shape> start = first_shape(y, beginning);
+  if (!start) return tl::make_unexpected(nothing("no oscillation stands out of the noise"));
+  Settled settled = settle(y, *start, reference);
   if (!settled.solution.at.solvable) return tl::make_unexpected(nothing("no oscillation stands out of the noise"));
 
   DampedSineFit result;
@@ -166,7 +179,7 @@ Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSin
   if (result.undithered) {
     span = samples_above_a_step(result.model, step, y.size());
     if (span < y.size() - y.size() / 20) {
-      Settled shorter = settle(y.first(span), settled.solution, reference, shape_limits(span));
+      Settled shorter = settle(y.first(span), settled.solution.shapes[0], reference);
       if (shorter.solution.converged) {
         settled = std::move(shorter);
         result.model = model_of(settled);

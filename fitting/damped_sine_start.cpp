@@ -11,10 +11,11 @@
 namespace coilassay {
 namespace {
 
-constexpr std::size_t kStretch = 1U << 14;   // values per transform
-constexpr std::size_t kDeepest = 1U << 20;   // when nothing is seen otherwise
-constexpr double kEnoughCycles = 24;         // a line above this bin is not the skirt of an offset
-constexpr double kClear = 200;               // strength over floor that noise never reaches
+constexpr std::size_t kStretch = 1U << 12;  // values per transform
+constexpr std::size_t kDeepest = 1U << 20;  // when nothing is seen otherwise
+constexpr double kEnoughCycles = 24;        // a line above this bin is not the skirt of an offset
+constexpr double kClear = 200;              // strength over floor that noise never reaches
+constexpr double kNearlyAsGood = 0.6;       // of the greatest strength
 
 // The line of values that are averages of `decimation` samples.
 StrongestLine line_of(std::span<const double> values, std::size_t decimation) {
@@ -34,7 +35,7 @@ StrongestLine line_of(std::span<const double> values, std::size_t decimation) {
   // Padded to a power of two: the plan is kept, and the line is sampled more finely.
   std::size_t padded = 1;
   while (padded < n) padded *= 2;
-  if (padded < kStretch) padded *= 2;
+  if (padded <= kStretch) padded *= 2;
   std::vector<double> centred(padded);
   for (std::size_t i = 0; i < n; ++i) centred[i] = std::isfinite(values[i]) ? values[i] - mean : 0;
   const auto bins = fourier(centred);
@@ -59,11 +60,15 @@ StrongestLine line_of(std::span<const double> values, std::size_t decimation) {
   return line;
 }
 
-// Averages of four; a NaN makes its average NaN.
-std::vector<double> averages(std::span<const double> y, std::size_t decimation, std::size_t from, std::size_t count) {
-  const BlockSums sums = block_sums(y.subspan(from * decimation), decimation, count, 0, 0);
+// Averages of four of `values`, then of the samples that follow them; a NaN makes its average NaN.
+std::vector<double> averages(std::span<const double> y, std::size_t decimation, std::span<const double> values) {
+  const std::size_t count = std::min(kStretch, y.size() / decimation), known = std::min(count, values.size() / 4);
   std::vector<double> result(count);
-  for (std::size_t i = 0; i < count; ++i) result[i] = sums.sum[i] / static_cast<double>(decimation);
+  for (std::size_t i = 0; i < known; ++i) {
+    result[i] = (values[4 * i] + values[4 * i + 1] + values[4 * i + 2] + values[4 * i + 3]) / 4;
+  }
+  const BlockSums sums = block_sums(y.subspan(known * decimation), decimation, count - known, 0, 0);
+  for (std::size_t i = known; i < count; ++i) result[i] = sums.sum[i - known] / static_cast<double>(decimation);
   return result;
 }
 
@@ -71,36 +76,52 @@ bool clear(const StrongestLine& line) { return line.strength > kClear * line.flo
 
 }  // namespace
 
-StrongestLine strongest_line(std::span<const double> y) {
-  StrongestLine best;
-  const auto consider = [&best](const StrongestLine& line) {
-    if (line.strength > best.strength) best = line;
+Beginning find_beginning(std::span<const double> y) {
+  struct Look {
+    StrongestLine line;
+    std::size_t level = 0;
   };
+  std::vector<Look> looks;
+  std::vector<std::vector<double>> levels;  // averages of 4^(level + 1) samples
   const std::size_t n = y.size();
-  for (std::size_t length = 64; length < std::min(n, kStretch); length *= 4) consider(line_of(y.first(length), 1));
-  StrongestLine last = line_of(y.first(std::min(n, kStretch)), 1);
-  consider(last);
-  std::vector<double> values(y.begin(), y.begin() + static_cast<std::ptrdiff_t>(std::min(n, kStretch)));
+  const auto strongest = [&looks] {
+    Look best;
+    for (const Look& look : looks) {
+      if (look.line.strength > best.line.strength) best = look;
+    }
+    for (const Look& look : looks) {
+      if (look.line.length > best.line.length && look.line.strength > kNearlyAsGood * best.line.strength) best = look;
+    }
+    return best;
+  };
+  for (std::size_t length = 64; length < std::min(n, kStretch); length *= 4) {
+    looks.push_back({line_of(y.first(length), 1), 0});
+  }
+  looks.push_back({line_of(y.first(std::min(n, kStretch)), 1), 0});
   // Longer stretches while what is seen is slow, or nothing is seen.
-  for (std::size_t decimation = 4; n > kStretch * (decimation / 4) && !(clear(best) && best.cycles > kEnoughCycles);
-       decimation *= 4) {
-    const std::size_t count = std::min(kStretch, n / decimation);
-    std::vector<double> next(count);
-    const std::size_t known = std::min(count, values.size() / 4);
-    for (std::size_t i = 0; i < known; ++i) {
-      next[i] = (values[4 * i] + values[4 * i + 1] + values[4 * i + 2] + values[4 * i + 3]) / 4;
-    }
-    const std::vector<double> rest = averages(y, decimation, known, count - known);
-    std::copy(rest.begin(), rest.end(), next.begin() + static_cast<std::ptrdiff_t>(known));
-    values = std::move(next);
-    consider(line_of(values, decimation));
+  std::span<const double> values = y.first(std::min(n, kStretch));
+  Look best = strongest();
+  for (std::size_t decimation = 4; n > kStretch * (decimation / 4); decimation *= 4) {
+    if (clear(best.line) && best.line.cycles > kEnoughCycles) break;
+    levels.push_back(averages(y, decimation, values));
+    values = levels.back();
+    looks.push_back({line_of(values, decimation), levels.size()});
+    best = strongest();
   }
-  if (!clear(best) && n > kStretch) {
+  if (!clear(best.line) && n > kStretch) {
     for (std::size_t length = 4 * kStretch; length / 4 < std::min(n, kDeepest); length *= 4) {
-      consider(line_of(y.first(std::min(length, n)), 1));
+      looks.push_back({line_of(y.first(std::min(length, n)), 1), 0});
     }
+    best = strongest();
   }
-  return best;
+  Beginning beginning{.line = best.line, .decimation = 1, .averages = {}};
+  // One level further than the line was seen: four times as long, so that the offset is seen as well.
+  const std::size_t level = best.level == 0 ? 0 : std::min(best.level + 1, levels.size());
+  if (level > 0) {
+    beginning.decimation = std::size_t{1} << (2 * level);
+    beginning.averages = std::move(levels[level - 1]);
+  }
+  return beginning;
 }
 
 std::vector<Shape> starting_shapes(const StrongestLine& line) {

@@ -112,7 +112,7 @@ std::vector<Shapes<2>> starts(std::span<const double> y, const DampedSineFit& on
   std::vector<double> rest(y.size());
   evaluate(one.model, 0, rest);
   for (std::size_t i = 0; i < y.size(); ++i) rest[i] = y[i] - rest[i];
-  const StrongestLine line = strongest_line(rest);
+  const StrongestLine line = find_beginning(rest).line;
   if (line.strength > 0 && line.omega > 0) {
     for (const double decay : {0.3, 1.26, 5.0}) {
       result.push_back({Shape{one.model.a, one.model.q},
