@@ -1,10 +1,14 @@
 // Files, pipes and standard input as a stream of bytes. Read, never mapped: a mapped file that someone cuts short kills
 // the process that looks at it.
 #include <fcntl.h>
+#include <poll.h>
+#include <sys/eventfd.h>
 #include <sys/stat.h>
 #include <unistd.h>
 
+#include <array>
 #include <cerrno>
+#include <cstdint>
 #include <cstring>
 
 #include "acquire/reader.h"
@@ -14,10 +18,13 @@ namespace {
 
 class DescriptorBytes final : public ByteSource {
  public:
-  DescriptorBytes(std::string name, int descriptor, bool owned, std::size_t size)
-      : name_(std::move(name)), descriptor_(descriptor), owned_(owned), size_(size) {}
+  DescriptorBytes(std::string name, int descriptor, bool owned, bool waits, std::size_t size)
+      : name_(std::move(name)), descriptor_(descriptor), owned_(owned), size_(size) {
+    if (waits) wake_ = ::eventfd(0, EFD_CLOEXEC);
+  }
   ~DescriptorBytes() override {
     if (owned_) ::close(descriptor_);
+    if (wake_ >= 0) ::close(wake_);
   }
   DescriptorBytes(const DescriptorBytes&) = delete;
   DescriptorBytes& operator=(const DescriptorBytes&) = delete;
@@ -28,6 +35,7 @@ class DescriptorBytes final : public ByteSource {
   Result<std::size_t> read(std::span<char> into) override {
     std::size_t filled = 0;
     while (filled < into.size()) {
+      if (!wait_for_bytes()) break;
       const ssize_t got = ::read(descriptor_, into.data() + filled, into.size() - filled);
       if (got > 0) {
         filled += static_cast<std::size_t>(got);
@@ -41,17 +49,37 @@ class DescriptorBytes final : public ByteSource {
     return filled;
   }
 
+  void stop() override {
+    if (wake_ < 0) return;
+    const std::uint64_t one = 1;
+    [[maybe_unused]] const ssize_t written = ::write(wake_, &one, sizeof one);
+  }
+
  private:
+  /// Of a pipe: until it has bytes or its writer is gone; false when it was told to stop.
+  bool wait_for_bytes() const {
+    if (wake_ < 0) return true;
+    std::array<pollfd, 2> both = {pollfd{descriptor_, POLLIN, 0}, pollfd{wake_, POLLIN, 0}};
+    while (::poll(both.data(), both.size(), -1) < 0 && errno == EINTR) {
+    }
+    return both[1].revents == 0;
+  }
+
   std::string name_;
   int descriptor_;
   bool owned_;
+  int wake_ = -1;  // written to by stop(); only where a read can wait
   std::size_t size_;
 };
 
 }  // namespace
 
 Result<std::unique_ptr<ByteSource>> open_bytes(const std::string& path) {
-  if (path == "-") return std::make_unique<DescriptorBytes>("-", STDIN_FILENO, false, 0);
+  struct stat about {};
+  if (path == "-") {
+    const bool file = ::fstat(STDIN_FILENO, &about) == 0 && S_ISREG(about.st_mode);
+    return std::make_unique<DescriptorBytes>("-", STDIN_FILENO, false, !file, file ? static_cast<std::size_t>(about.st_size) : 0);
+  }
   if (path.empty()) return failure(Problem::unreadable, "(no name)", "the name of the file is empty", "name a file");
   // Without O_NONBLOCK the opening of a named pipe waits for its writer, as people expect of `cat`.
   const int descriptor = ::open(path.c_str(), O_RDONLY | O_CLOEXEC);
@@ -67,7 +95,6 @@ Result<std::unique_ptr<ByteSource>> open_bytes(const std::string& path) {
     return failure(Problem::unreadable, path, std::string("cannot be opened: ") + std::strerror(why),
                    "check the name and the folder");
   }
-  struct stat about {};
   if (::fstat(descriptor, &about) != 0) {
     const int why = errno;
     ::close(descriptor);
@@ -79,7 +106,7 @@ Result<std::unique_ptr<ByteSource>> open_bytes(const std::string& path) {
     return failure(Problem::unreadable, path, "is a directory, not a capture", "name the files in it");
   }
   const bool regular = S_ISREG(about.st_mode);
-  return std::make_unique<DescriptorBytes>(path, descriptor, true,
+  return std::make_unique<DescriptorBytes>(path, descriptor, true, !regular,
                                            regular ? static_cast<std::size_t>(about.st_size) : 0);
 }
 

@@ -2,30 +2,87 @@
 
 #include <algorithm>
 #include <cstring>
-#include <vector>
 
 namespace coilassay {
+namespace {
+
+constexpr std::size_t kBlock = std::size_t{1} << 20U;
+
+}  // namespace
+
+DigestedBytes::DigestedBytes(ByteSource& inner) : inner_(inner), reader_([this] { read_ahead(); }) {}
+
+DigestedBytes::~DigestedBytes() {
+  if (!reader_.joinable()) return;
+  {
+    const std::lock_guard guard(lock_);
+    stop_ = true;
+  }
+  changed_.notify_all();
+  inner_.stop();  // a pipe whose writer says nothing would keep the thread for ever
+  reader_.join();
+}
+
+void DigestedBytes::read_ahead() {
+  for (std::size_t n = 0;; ++n) {
+    {
+      std::unique_lock hold(lock_);
+      changed_.wait(hold, [&] { return stop_ || n < passed_ + kRing; });
+      if (stop_) return;
+    }
+    std::vector<char>& block = ring_[n % kRing];
+    block.resize(kBlock);
+    const auto got = inner_.read(block);
+    block.resize(got ? *got : 0);
+    const bool more = got && *got > 0;
+    {
+      const std::lock_guard guard(lock_);
+      if (!got) error_ = got.error();
+      if (more) ++filled_;
+      ended_ = !more;
+    }
+    changed_.notify_all();
+    if (!more) return;
+    sha256_.add(block);  // beside the reading of the same bytes
+  }
+}
+
+Result<bool> DigestedBytes::block_is_there() {
+  std::unique_lock hold(lock_);
+  changed_.wait(hold, [this] { return passed_ < filled_ || ended_; });
+  if (passed_ < filled_) return true;
+  if (error_) return tl::make_unexpected(*error_);
+  return false;
+}
 
 Result<std::string_view> DigestedBytes::look_ahead(std::size_t count) {
-  head_.resize(count);
-  const auto got = inner_.read(head_);
-  if (!got) return failure(got);
-  head_.resize(*got);
-  sha256_.add(head_);
-  bytes_ += head_.size();
-  return head_;
+  const auto there = block_is_there();
+  if (!there) return failure(there);
+  if (!*there) return std::string_view();
+  const std::vector<char>& block = ring_[0];
+  return std::string_view(block.data(), std::min(count, block.size()));
 }
 
 Result<std::size_t> DigestedBytes::read(std::span<char> into) {
-  const std::size_t again = std::min(into.size(), head_.size() - given_);
-  std::memcpy(into.data(), head_.data() + given_, again);
-  given_ += again;
-  if (again == into.size()) return again;
-  const auto got = inner_.read(into.subspan(again));
-  if (!got) return failure(got);
-  sha256_.add(into.subspan(again, *got));
-  bytes_ += *got;
-  return again + *got;
+  std::size_t done = 0;
+  while (done < into.size()) {
+    const auto there = block_is_there();
+    if (!there) return failure(there);
+    if (!*there) break;
+    const std::vector<char>& block = ring_[passed_ % kRing];
+    const std::size_t count = std::min(into.size() - done, block.size() - given_);
+    std::memcpy(into.data() + done, block.data() + given_, count);
+    done += count;
+    given_ += count;
+    if (given_ == block.size()) {
+      given_ = 0;
+      const std::lock_guard guard(lock_);
+      ++passed_;
+      changed_.notify_all();
+    }
+  }
+  passed_on_ += done;
+  return done;
 }
 
 Result<void> DigestedBytes::drain() {
@@ -35,6 +92,11 @@ Result<void> DigestedBytes::drain() {
     if (!got) return failure(got);
     if (*got == 0) return {};
   }
+}
+
+std::string DigestedBytes::digest() {
+  reader_.join();
+  return sha256_.finish();
 }
 
 }  // namespace coilassay

@@ -24,6 +24,8 @@ class ByteSource {
   virtual Result<std::size_t> read(std::span<char> into) = 0;
   /// Size in bytes when known beforehand (progress), 0 otherwise.
   virtual std::size_t size_hint() const = 0;
+  /// From another thread: ends a read that waits for bytes, and all later ones. Files never wait.
+  virtual void stop() {}
 };
 
 /// What the caller knows about the file; everything left out is found from the bytes.

@@ -25,31 +25,26 @@ class BlockReader {
     while (p_ < end_) {
       if (into_.rows == capacity_) grow();
       const char* const line = p_;
-      if (!read_row()) {
-        p_ = line;
-        const char* const line_end = static_cast<const char*>(std::memchr(line, '\n', left()));
-        if (!may_pass_over(std::string_view(line, static_cast<std::size_t>(line_end - line)))) {
-          into_.fault = RowFault{into_.lines, finding(std::string_view(line, static_cast<std::size_t>(line_end - line)))};
-          return;
-        }
-        p_ = line_end + 1;
-      } else {
+      if (read_row()) {
         ++into_.rows;
+      } else {
+        const auto* const line_end = static_cast<const char*>(std::memchr(line, '\n', static_cast<std::size_t>(end_ - line)));
+        note_break(std::string_view(line, static_cast<std::size_t>(line_end - line)));
+        p_ = line_end + 1;
+        if (into_.breaks.size() == BlockColumns::kMostBreaks) return;
       }
       ++into_.lines;
     }
   }
 
  private:
-  std::size_t left() const { return static_cast<std::size_t>(end_ - p_); }
-
   void prepare() {
     const std::size_t stored = layout_.stored();
     into_.values.resize(stored);
-    into_.missing.assign(stored, 0);
-    into_.over_range.assign(stored, 0);
+    into_.over_range.resize(stored);
+    for (auto& rows : into_.over_range) rows.clear();
     into_.rows = into_.lines = 0;
-    into_.fault.reset();
+    into_.breaks.clear();
     out_.resize(stored);
     capacity_ = into_.values.empty() ? 0 : into_.values.front().size();
     if (capacity_ == 0) grow();
@@ -117,7 +112,7 @@ class BlockReader {
   bool read_odd_cell(const ColumnPlan& plan, std::size_t out) {
     const CellValue cell = read_cell(take_cell(), decimal, plan.shift);
     if (cell.kind == CellKind::text) return false;
-    odd_.push_back({out, cell.kind});
+    if (cell.kind == CellKind::over_range) over_range_.push_back(out);
     out_[out][into_.rows] = cell.value;
     return true;
   }
@@ -129,36 +124,45 @@ class BlockReader {
     return true;
   }
 
-  /// The end of a row, perhaps behind one more delimiter; only then do its absent numbers count.
+  /// The end of a row, perhaps behind one more delimiter.
   bool pass_line_end() {
     if constexpr (!blanks) {
       if (*p_ == layout_.delimiter) ++p_;
     }
     while (*p_ == ' ' || *p_ == '\t' || *p_ == '\r') ++p_;
-    if (*p_ != '\n') return forget_odd_cells();
+    if (*p_ != '\n') return false;
     ++p_;
-    for (const auto& [out, kind] : odd_) {
-      if (kind == CellKind::number) continue;
-      ++into_.missing[out];
-      into_.over_range[out] += kind == CellKind::over_range ? 1 : 0;
-    }
-    odd_.clear();
+    if (!over_range_.empty()) keep_over_range();
     return true;
   }
 
-  bool forget_odd_cells() {
-    odd_.clear();
-    return false;
+  void keep_over_range() {
+    for (const std::size_t out : over_range_) into_.over_range[out].push_back(static_cast<std::uint32_t>(into_.rows));
+    over_range_.clear();
   }
 
-  bool may_pass_over(std::string_view line) {
-    odd_.clear();
-    line = bare_cell(line);
-    return line.empty() || line.front() == '#' || line.front() == '!' || line.front() == '%';
+  void note_break(std::string_view line) {
+    constexpr std::size_t kShown = 200;
+    over_range_.clear();
+    if (line.ends_with('\r')) line.remove_suffix(1);
+    const std::string_view bare = bare_cell(line);
+    if (bare.empty()) return;
+    const std::string_view start = bare.substr(0, kShown);
+    if (bare.front() == '#' || bare.front() == '!' || bare.front() == '%') {
+      into_.breaks.push_back({into_.rows, into_.lines, true, true, cell_text(bare_cell(start.substr(1))), {}});
+      return;
+    }
+    into_.breaks.push_back({into_.rows, into_.lines, false, in_words(line), cell_text(start), finding(line)});
+  }
+
+  /// No cell with a number: not a row that was damaged.
+  bool in_words(std::string_view line) const {
+    const auto cells = cells_of(line, layout_.delimiter);
+    return std::none_of(cells.begin(), cells.end(),
+                        [](std::string_view cell) { return read_cell(cell, decimal).kind == CellKind::number; });
   }
 
   std::string finding(std::string_view line) const {
-    if (line.ends_with('\r')) line.remove_suffix(1);
     const auto cells = cells_of(line, layout_.delimiter);
     const std::size_t width = layout_.columns.size();
     for (std::size_t c = 0; c < std::min(cells.size(), width); ++c) {
@@ -169,17 +173,12 @@ class BlockReader {
     return fmt::format("this row has {} cell{} where those before have {}", cells.size(), cells.size() == 1 ? "" : "s", width);
   }
 
-  struct OddCell {
-    std::size_t out;
-    CellKind kind;
-  };
-
   const TableLayout& layout_;
   BlockColumns& into_;
   const char* p_;
   const char* const end_;
   std::vector<double*> out_;
-  std::vector<OddCell> odd_;
+  std::vector<std::size_t> over_range_;  // of the row being read
   std::size_t capacity_ = 0;
 };
 

@@ -18,7 +18,6 @@ constexpr std::size_t kMostColumns = 1024;
 struct Candidate {
   TableDialect dialect;
   std::size_t rows = 0;    // lines judged that are rows of numbers of that width
-  std::size_t unread = 0;  // lines judged that are not
 };
 
 /// The later half of what is seen: preambles come first.
@@ -35,14 +34,12 @@ std::vector<TableLine> lines_to_judge(const std::vector<TableLine>& lines) {
 
 Candidate judge(const std::vector<TableLine>& lines, char delimiter, char decimal) {
   std::map<std::size_t, std::size_t> widths;
-  std::size_t numbers = 0;
   for (const TableLine& line : lines) {
     const auto cells = cells_of(line.text, delimiter);
     if (!is_row_of_numbers(cells, decimal)) continue;
     ++widths[cells.size()];
-    ++numbers;
   }
-  Candidate found{{delimiter, decimal, 0, 0}, 0, lines.size() - numbers};
+  Candidate found{{delimiter, decimal, 0, 0}, 0};
   for (const auto& [width, count] : widths) {
     if (count >= found.rows) {
       found.rows = count;
@@ -56,6 +53,21 @@ Candidate judge(const std::vector<TableLine>& lines, char delimiter, char decima
 bool better(const Candidate& a, const Candidate& b) {
   if (a.rows != b.rows) return a.rows > b.rows;
   return a.dialect.width > b.dialect.width;
+}
+
+/// Whether each decimal sign reads rows that the other cannot.
+bool both_decimals(const std::vector<TableLine>& lines, const TableDialect& dialect) {
+  bool only_point = false;
+  bool only_comma = false;
+  for (const TableLine& line : lines) {
+    const auto cells = cells_of(line.text, dialect.delimiter);
+    if (cells.size() != dialect.width) continue;
+    const bool point = is_row_of_numbers(cells, '.');
+    const bool comma = is_row_of_numbers(cells, ',');
+    only_point |= point && !comma;
+    only_comma |= comma && !point;
+  }
+  return only_point && only_comma;
 }
 
 bool only_digits(std::string_view cell) {
@@ -174,14 +186,9 @@ Result<TableDialect> find_dialect(const std::string& name, const std::vector<Tab
                    fmt::format("its rows have {} cells; a capture has at most {}", best.dialect.width, kMostColumns),
                    "export time and channels as columns, one sample in a row");
   }
-  // The other decimal sign reads what this one leaves unread: both stand in the file.
-  for (const Candidate& other : candidates) {
-    if (other.dialect.delimiter == best.dialect.delimiter && other.dialect.decimal != best.dialect.decimal &&
-        other.dialect.width == best.dialect.width && other.rows > 0 && other.unread > 0 && best.unread > 0 &&
-        other.unread + best.unread <= judged.size()) {
-      return failure(Problem::ambiguous, name, "some numbers have a decimal point, others a decimal comma",
-                     "export it again, or say which is meant in the bench sheet: [file] decimal = \",\"");
-    }
+  if (!options.decimal && best.dialect.delimiter != ',' && both_decimals(judged, best.dialect)) {
+    return failure(Problem::ambiguous, name, "some numbers have a decimal point, others a decimal comma",
+                   "export it again, or say which is meant in the bench sheet: [file] decimal = \",\"");
   }
   best.dialect.first_row = first_row(lines, best.dialect);
   if (best.dialect.delimiter == ',' && !options.delimiter) {

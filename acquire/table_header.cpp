@@ -4,6 +4,7 @@
 #include <cmath>
 
 #include "acquire/number_scan.h"
+#include "acquire/table_join.h"
 #include "acquire/table_settings.h"
 
 namespace coilassay {
@@ -46,7 +47,7 @@ bool is_row_of_units(const Cells& cells, std::size_t width) {
 
 /// Names are words, about as many as there are columns.
 bool is_row_of_names(const Cells& cells, std::size_t width, char decimal) {
-  if (cells.empty() || cells.size() + 1 < width) return false;
+  if (cells.empty() || cells.size() < width) return false;
   std::size_t words = 0;
   for (std::size_t c = 0; c < std::min(cells.size(), width); ++c) {
     if (is_number(cells[c], decimal)) return false;
@@ -78,6 +79,11 @@ void take_settings_beside(const Cells& names, const Cells& below, std::size_t wi
   }
 }
 
+/// "Record,Waveform" names columns, "Record 5" announces a record.
+bool names_columns(std::string_view line, const TableDialect& dialect) {
+  return cells_in_words(line, dialect.delimiter).size() > 1;
+}
+
 /// Columns of the data that have anything in them: "0,1.2,," has two.
 std::size_t filled_width(const std::vector<TableLine>& lines, const TableDialect& dialect) {
   std::size_t filled = 0;
@@ -100,6 +106,12 @@ TableHeader understand_header(const std::vector<TableLine>& lines, const TableDi
     if (!bare_cell(lines[i].text).empty()) above.push_back(lines[i].text);
   }
   const std::size_t width = filled_width(lines, dialect);
+  // "Step Information: ..." or "BEGIN" right above the numbers announces the first record.
+  while (!above.empty() && introduces_record(above.back()) && !names_columns(above.back(), dialect)) {
+    const std::string text = cell_text(above.back());
+    if (!lower_case(text).starts_with("begin") && !lower_case(text).starts_with("data")) header.first_label = text;
+    above.pop_back();
+  }
   const auto cells_from_below = [&](std::size_t n) {
     return n < above.size() ? rejoined(cells_in_words(above[above.size() - 1 - n], dialect.delimiter), width) : Cells{};
   };
@@ -110,11 +122,13 @@ TableHeader understand_header(const std::vector<TableLine>& lines, const TableDi
   std::size_t used = 0;
   if (is_row_of_units(last, width) && is_row_of_names(cells_from_below(1), width, dialect.decimal)) {
     names = cells_from_below(1);
+    header.names_line = cell_text(above[above.size() - 2]);
     units = std::move(last);
     used = 2;
     take_settings_beside(names, units, width, dialect.decimal, header.settings);
   } else if (is_row_of_names(last, width, dialect.decimal)) {
     names = std::move(last);
+    header.names_line = cell_text(above.back());
     used = 1;
   }
 

@@ -28,6 +28,8 @@ struct TableHeader {
   std::map<std::string, double> full_scale;     // by channel name, "" for all; largest magnitude in SI
   std::map<std::string, double> resolution;     // by channel name; step between codes in SI
   std::string segment;
+  std::string names_line;   // as it stands
+  std::string first_label;  // of the first record, when a line between names and numbers announces it
 };
 
 /// Reads the lines before dialect.first_row: rows of key and value (or "key: value", "key = value", comment signs in

@@ -28,19 +28,30 @@ bool all_missing(const std::vector<double>& column) {
   return std::all_of(column.begin(), column.end(), [](double v) { return std::isnan(v); });
 }
 
-/// Mean step of a column that rises all along, repeated values allowed; 0 when it does not.
-double rising_step(const std::vector<double>& column) {
-  if (column.size() < 2) return 0;
+/// The rows before a column first starts again near its first value; all of them when it never falls; none when it falls
+/// to somewhere else.
+std::size_t first_run(const std::vector<double>& column) {
   for (std::size_t i = 1; i < column.size(); ++i) {
-    if (!(column[i] >= column[i - 1])) return 0;
+    if (column[i] >= column[i - 1]) continue;
+    const double step = (column[i - 1] - column.front()) / static_cast<double>(std::max<std::size_t>(i - 1, 1));
+    // Stamps rounded to few digits fall back by less than a step here and there.
+    if (column[i - 1] - column[i] < step && column[i] > column.front()) continue;
+    return column[i] <= column.front() + 2 * step ? i : 0;
   }
-  return (column.back() - column.front()) / static_cast<double>(column.size() - 1);
+  return std::any_of(column.begin(), column.end(), [](double v) { return std::isnan(v); }) ? 0 : column.size();
+}
+
+/// Mean step of a column that rises; 0 when it does not.
+double rising_step(const std::vector<double>& column) {
+  const std::size_t run = first_run(column);
+  return run < 2 ? 0 : (column[run - 1] - column.front()) / static_cast<double>(run - 1);
 }
 
 bool rises_evenly(const std::vector<double>& column) {
   const double step = rising_step(column);
-  if (!(step > 0) || column.size() < 3) return false;
-  for (std::size_t i = 0; i < column.size(); ++i) {
+  const std::size_t run = first_run(column);
+  if (!(step > 0) || run < 3) return false;
+  for (std::size_t i = 0; i < run; ++i) {
     if (std::fabs(column[i] - column.front() - static_cast<double>(i) * step) > 0.6 * step) return false;
   }
   return true;
@@ -48,7 +59,8 @@ bool rises_evenly(const std::vector<double>& column) {
 
 bool counts_rows(const std::vector<double>& column) {
   for (std::size_t i = 0; i < column.size(); ++i) {
-    if (column[i] != std::floor(column[i]) || (i > 0 && column[i] - column[i - 1] != 1)) return false;
+    if (column[i] != std::floor(column[i])) return false;
+    if (i > 0 && column[i] - column[i - 1] != 1 && column[i] != column.front()) return false;  // segments count anew
   }
   return column.size() >= 2;
 }

@@ -5,10 +5,11 @@
 #include <algorithm>
 
 #include "acquire/byte_source_lines.h"
-#include "acquire/table_block.h"
 #include "acquire/table_dialect.h"
 #include "acquire/table_header.h"
+#include "acquire/table_join.h"
 #include "acquire/table_meaning.h"
+#include "acquire/table_pipeline.h"
 #include "acquire/table_store.h"
 #include "base/outside_text.h"
 
@@ -75,30 +76,31 @@ class TableRead {
   }
 
   Result<void> read_rows() {
-    std::size_t from = first_byte_;
-    std::size_t line = first_line_;
+    // The first block is read on its own: its rows tell how many to expect.
     BlockColumns columns;
-    while (block_.size > 0) {
-      read_block(block_, from, meaning_.layout, columns);
-      if (!store_) store_.emplace(meaning_, expected_rows(columns));
-      store_->append(columns);
-      if (columns.fault) {
-        return failure(Problem::damaged, place(name_, line + columns.fault->line), columns.fault->finding,
-                       "repair or remove that line, or export the waveform again");
-      }
-      line += columns.lines;
-      from = 0;
-      if (options_.progress != nullptr &&
-          !options_.progress->advance("reading " + shown(name_), blocks_.bytes_read(), source_.size_hint())) {
-        return failure(Problem::interrupted, name_, "stopped while it was being read", "");
-      }
-      if (const auto got = blocks_.next(block_); !got) return failure(got);
-    }
+    read_block(block_, first_byte_, meaning_.layout, columns);
+    store_.emplace(meaning_, expected_rows(columns));
+    TableJoin join(name_, header_.names_line, first_line_, meaning_.time.has_value(), *store_);
+    store_->begin_labelled(header_.first_label);
+    if (const auto joined = join.join(columns); !joined) return joined;
+    if (const auto got = blocks_.next(block_); !got) return failure(got);
+    const auto done = read_blocks(std::move(block_), 0, blocks_, meaning_.layout, options_.threads,
+                                  [&](const BlockColumns& read) -> Result<void> {
+                                    if (stopped()) return failure(Problem::interrupted, name_, "stopped while it was being read", "");
+                                    return join.join(read);
+                                  });
+    if (!done) return done;
+    if (const auto ended = join.finish(blocks_.last_line_open()); !ended) return ended;
     if (store_->rows() < 2) {
       return failure(Problem::too_few_samples, place(name_, first_line_), "it has one row of numbers only",
                      "export the whole waveform");
     }
     return {};
+  }
+
+  bool stopped() const {
+    return options_.progress != nullptr &&
+           !options_.progress->advance("reading " + shown(name_), blocks_.bytes_read(), source_.size_hint());
   }
 
   Recording captures() {

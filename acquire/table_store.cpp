@@ -65,21 +65,29 @@ void TableStore::begin_record(std::size_t expected_rows) {
   records_.push_back(std::move(record));
 }
 
-void TableStore::append(const BlockColumns& block) {
-  std::size_t from = 0;
-  while (from < block.rows) {
-    std::size_t count = block.rows - from;
+void TableStore::append(const BlockColumns& block, std::size_t from, std::size_t count) {
+  while (count > 0) {
+    std::size_t now = count;
     if (meaning_.time) {
-      const std::span<const double> stamps(block.values[*meaning_.time].data() + from, count);
-      count = records_.back().time.follow(stamps);
-      if (count == 0) {
+      now = records_.back().time.follow({block.values[*meaning_.time].data() + from, count});
+      if (now == 0) {
         begin_record(records_.back().rows);
         continue;
       }
     }
-    append_rows(block, from, count);
-    from += count;
+    append_rows(block, from, now);
+    from += now;
+    count -= now;
   }
+}
+
+bool TableStore::begins_record(const BlockColumns& block, std::size_t row) const {
+  return meaning_.time && records_.back().time.restarts_at(block.values[*meaning_.time][row]);
+}
+
+void TableStore::begin_labelled(const std::string& label) {
+  if (records_.back().rows > 0) begin_record(records_.back().rows);
+  records_.back().label = label;
 }
 
 void TableStore::append_rows(const BlockColumns& block, std::size_t from, std::size_t count) {
@@ -88,8 +96,9 @@ void TableStore::append_rows(const BlockColumns& block, std::size_t from, std::s
   for (std::size_t c = 0; c < block.values.size(); ++c) {
     if (meaning_.time == c) continue;
     record.columns[channel].append({block.values[c].data() + from, count});
-    // Counted with the record the block begins in; blocks that span two are rare and the sum stays right.
-    if (from == 0) record.over_range[channel] += block.over_range[c];
+    const auto& over = block.over_range[c];
+    const auto first = std::lower_bound(over.begin(), over.end(), from);
+    record.over_range[channel] += static_cast<std::size_t>(std::lower_bound(first, over.end(), from + count) - first);
     ++channel;
   }
   record.rows += count;
@@ -102,8 +111,10 @@ std::vector<Capture> TableStore::finish() {
     if (record.rows > 0) captures.push_back(finish_record(record));
   }
   if (captures.size() > 1) {
-    for (std::size_t i = 0; i < captures.size(); ++i) captures[i].segment = std::to_string(i + 1);
-  } else if (captures.size() == 1) {
+    for (std::size_t i = 0; i < captures.size(); ++i) {
+      if (captures[i].segment.empty()) captures[i].segment = std::to_string(i + 1);
+    }
+  } else if (captures.size() == 1 && captures.front().segment.empty()) {
     captures.front().segment = meaning_.segment;
   }
   return captures;
@@ -112,6 +123,7 @@ std::vector<Capture> TableStore::finish() {
 Capture TableStore::finish_record(Record& record) const {
   Capture capture;
   capture.findings = meaning_.findings;
+  capture.segment = record.label;
   for (std::size_t c = 0; c < meaning_.channels.size(); ++c) {
     const ChannelMeaning& from = meaning_.channels[c];
     Channel channel;

@@ -30,8 +30,14 @@ class TableStore {
  public:
   TableStore(const TableMeaning& meaning, std::size_t expected_rows);
 
-  void append(const BlockColumns& block);
+  /// Joins rows [from, from + count) of a block. Where time jumps back another record begins.
+  void append(const BlockColumns& block, std::size_t from, std::size_t count);
+  /// Whether the row would begin another record by its time.
+  bool begins_record(const BlockColumns& block, std::size_t row) const;
+  /// The next row begins another record, with this label; before the first row it labels the first.
+  void begin_labelled(const std::string& label);
   std::size_t rows() const { return rows_; }
+  std::size_t records() const { return records_.size(); }
 
   /// One capture for each record: samples, time, resolution and the findings about them. Source and dialect are the
   /// caller's.
@@ -42,7 +48,8 @@ class TableStore {
     std::vector<GrowingColumn> columns;
     TimeFollower time;
     std::size_t rows = 0;
-    std::vector<std::size_t> over_range;
+    std::vector<std::size_t> over_range;  // how many, by channel
+    std::string label;
   };
   void begin_record(std::size_t expected_rows);
   void append_rows(const BlockColumns& block, std::size_t from, std::size_t count);

@@ -5,6 +5,7 @@
 #include <algorithm>
 #include <cmath>
 #include <cstdlib>
+#include <limits>
 #include <string>
 
 namespace coilassay {
@@ -71,19 +72,30 @@ double TimeFollower::Digits::rounding(double stamp) const {
   return std::max(step, size * 0x1p-52);
 }
 
+bool TimeFollower::jumps_back(double before, double stamp) const {
+  const double back = before - stamp;
+  return back > 0 && back >= 0.99 * typical_step_ && back > 1.01 * digits_.rounding(before);
+}
+
+bool TimeFollower::restarts_at(double stamp) const { return count_ > 0 && jumps_back(last_, stamp); }
+
+/// How many stamps come before time jumps back by at least a step; less is the rounding of the text.
+std::size_t TimeFollower::until_restart(std::span<const double> stamps) const {
+  double before = count_ > 0 ? last_ : stamps.front();
+  bool falls = stamps.front() < before;
+  for (std::size_t i = 1; i < stamps.size(); ++i) falls |= stamps[i] < stamps[i - 1];
+  if (!falls) return stamps.size();
+  for (std::size_t i = 0; i < stamps.size(); ++i) {
+    if (jumps_back(before, stamps[i])) return i;
+    before = stamps[i];
+  }
+  return stamps.size();
+}
+
 std::size_t TimeFollower::follow(std::span<const double> stamps) {
   if (stamps.empty()) return 0;
   if (typical_step_ == 0) typical_step_ = median_step(stamps);
-  std::size_t accepted = stamps.size();
-  double before = count_ > 0 ? last_ : stamps.front();
-  for (std::size_t i = 0; i < stamps.size(); ++i) {
-    if (stamps[i] < before && before - stamps[i] >= 0.99 * typical_step_ &&
-        before - stamps[i] > 1.01 * digits_.rounding(before)) {
-      accepted = i;
-      break;
-    }
-    before = stamps[i];
-  }
+  const std::size_t accepted = until_restart(stamps);
   stamps = stamps.first(accepted);
   if (stamps.empty()) return 0;
   // Every stamp of a short record is looked at, one in 256 of a long one.
@@ -93,19 +105,21 @@ std::size_t TimeFollower::follow(std::span<const double> stamps) {
     summarise(stamps);
   } else {
     kept_.insert(kept_.end(), stamps.begin(), stamps.end());
-    if (kept_.size() >= kKept && groups_.empty() && count_ < kKept) {
-      const Line line = fitted();
-      double largest = 0;
-      if (line.step > 0 && fits(line, &largest)) {
-        summarising_ = true;
-        line_ = line;
-        open_ = Group{kept_.size(), 0, 0, 0, 0, 0, 0};
-      }
-    }
+    if (count_ < kKept && kept_.size() >= kKept) try_to_summarise();
   }
   count_ += accepted;
   last_ = stamps.back();
   return accepted;
+}
+
+void TimeFollower::try_to_summarise() {
+  const Line line = fitted();
+  if (!(line.step > 0) || !fits(line, nullptr)) return;
+  summarising_ = true;
+  line_ = line;
+  // Rounding of the stamps so far may have turned the line by this much.
+  slope_doubt_ = 2 * tolerance(kept_.back(), line.step) / static_cast<double>(kept_.size());
+  open_ = Group{kept_.size(), 0, 0, 0, 0};
 }
 
 void TimeFollower::look_at_pairs(std::span<const double> stamps) {
@@ -123,27 +137,31 @@ void TimeFollower::look_at_pairs(std::span<const double> stamps) {
 void TimeFollower::close_group() {
   if (open_.count == 0) return;
   groups_.push_back(open_);
-  open_ = Group{open_.first + open_.count, 0, 0, 0, 0, 0, 0};
+  open_ = Group{open_.first + open_.count, 0, 0, 0, 0};
 }
 
 void TimeFollower::summarise(std::span<const double> stamps) {
-  for (std::size_t i = 0; i < stamps.size(); ++i) {
-    const std::size_t index = open_.first + open_.count;
-    const double stamp = stamps[i];
-    const double deviation = stamp - line_.at(static_cast<double>(index));
-    // The line was fitted to the first million: its slope may be off by what rounding did to them.
-    const double drift = (2 * tolerance(line_.start, line_.step) / static_cast<double>(kKept)) * static_cast<double>(index);
-    if (!(std::fabs(deviation) <= 2 * tolerance(stamp, line_.step) + drift)) return give_up_line(stamps.subspan(i));
-    if (open_.count == 0 || deviation < open_.low - line_.at(static_cast<double>(open_.low_index))) {
-      open_.low = stamp;
-      open_.low_index = index;
+  while (!stamps.empty()) {
+    const std::size_t count = std::min(kGroup - open_.count, stamps.size());
+    const std::size_t first = open_.first + open_.count;
+    double low = std::numeric_limits<double>::infinity();
+    double high = -low;
+    double sum = 0;
+    for (std::size_t i = 0; i < count; ++i) {
+      const double deviation = stamps[i] - line_.at(static_cast<double>(first + i));
+      low = std::min(low, deviation);
+      high = std::max(high, deviation);
+      sum += deviation;
     }
-    if (open_.count == 0 || deviation > open_.high - line_.at(static_cast<double>(open_.high_index))) {
-      open_.high = stamp;
-      open_.high_index = index;
-    }
-    open_.mean += (stamp - open_.mean) / static_cast<double>(open_.count + 1);
-    if (++open_.count == kGroup) close_group();
+    const double allowed = 2 * std::max(tolerance(stamps.front(), line_.step), tolerance(stamps[count - 1], line_.step)) +
+                           slope_doubt_ * static_cast<double>(first + count);
+    if (!(low >= -allowed && high <= allowed) || std::isnan(sum)) return give_up_line(stamps);
+    open_.low = open_.count == 0 ? low : std::min(open_.low, low);
+    open_.high = open_.count == 0 ? high : std::max(open_.high, high);
+    open_.sum += sum;
+    open_.count += count;
+    if (open_.count == kGroup) close_group();
+    stamps = stamps.subspan(count);
   }
 }
 
@@ -176,7 +194,8 @@ TimeFollower::Line TimeFollower::fitted() const {
   for (std::size_t i = 0; i < kept_.size(); ++i) add(static_cast<double>(i), kept_[i], 1);
   const auto add_group = [&](const Group& g) {
     if (g.count == 0) return;
-    add(static_cast<double>(g.first) + static_cast<double>(g.count - 1) / 2, g.mean, static_cast<double>(g.count));
+    const auto weight = static_cast<double>(g.count);
+    add(g.middle(), line_.at(g.middle()) + g.sum / weight, weight);
   };
   for (const Group& group : groups_) add_group(group);
   add_group(open_);
@@ -192,23 +211,23 @@ double TimeFollower::tolerance(double stamp, double step) const {
 bool TimeFollower::fits(const Line& line, double* largest) const {
   double worst = 0;  // in tolerances
   double worst_deviation = 0;
-  const auto look = [&](std::size_t index, double stamp) {
-    const double deviation = std::fabs(stamp - line.at(static_cast<double>(index)));
-    worst_deviation = std::max(worst_deviation, deviation);
-    return deviation;
-  };
   // The tolerance changes slowly along the record: it is taken once for each stretch.
   for (std::size_t begin = 0; begin < kept_.size(); begin += 64) {
     const std::size_t end = std::min(begin + 64, kept_.size());
     double farthest = 0;
-    for (std::size_t i = begin; i < end; ++i) farthest = std::max(farthest, look(i, kept_[i]));
+    for (std::size_t i = begin; i < end; ++i) {
+      farthest = std::max(farthest, std::fabs(kept_[i] - line.at(static_cast<double>(i))));
+    }
+    worst_deviation = std::max(worst_deviation, farthest);
     const double allowed = std::max(tolerance(kept_[begin], line.step), tolerance(kept_[end - 1], line.step));
     worst = std::max(worst, farthest / allowed);
   }
   const auto look_at_group = [&](const Group& g) {
     if (g.count == 0) return;
-    worst = std::max(worst, look(g.low_index, g.low) / tolerance(g.low, line.step));
-    worst = std::max(worst, look(g.high_index, g.high) / tolerance(g.high, line.step));
+    const double turned = line_.at(g.middle()) - line.at(g.middle());
+    const double farthest = std::max(std::fabs(g.low + turned), std::fabs(g.high + turned));
+    worst_deviation = std::max(worst_deviation, farthest);
+    worst = std::max(worst, farthest / tolerance(line_.at(g.middle()), line.step));
   };
   for (const Group& group : groups_) look_at_group(group);
   look_at_group(open_);

@@ -26,6 +26,9 @@ class TimeFollower {
   /// How many of the stamps continue the record; the rest begin another one (time jumped back by at least a step).
   std::size_t follow(std::span<const double> stamps);
 
+  /// Whether this stamp, coming next, would begin another record.
+  bool restarts_at(double stamp) const;
+
   /// @param stated_step_s  step the file states; taken when the stamps agree with it
   TimeStory finish(std::optional<double> stated_step_s) const;
 
@@ -38,15 +41,14 @@ class TimeFollower {
     double step = 0;
     double at(double index) const { return start + index * step; }
   };
-  /// Stamps no longer kept: the two that lie farthest from the line, and their mean.
+  /// Stamps no longer kept: how far they lie from the line at most, and on average.
   struct Group {
     std::size_t first = 0;
     std::size_t count = 0;
-    double mean = 0;
-    std::size_t low_index = 0;
+    double sum = 0;  // of the deviations
     double low = 0;
-    std::size_t high_index = 0;
     double high = 0;
+    double middle() const { return static_cast<double>(first) + static_cast<double>(count - 1) / 2; }
   };
   /// Digits the stamps are written with.
   struct Digits {
@@ -60,6 +62,9 @@ class TimeFollower {
   static constexpr std::size_t kKept = std::size_t{1} << 20U;
   static constexpr std::size_t kGroup = 1024;
 
+  bool jumps_back(double before, double stamp) const;
+  void try_to_summarise();
+  std::size_t until_restart(std::span<const double> stamps) const;
   void look_at_pairs(std::span<const double> stamps);
   void summarise(std::span<const double> stamps);
   void close_group();
@@ -73,6 +78,7 @@ class TimeFollower {
   std::vector<double> kept_;   // all stamps, or the first kKept of a record on even steps
   std::vector<Group> groups_;  // the others
   Group open_;
+  double slope_doubt_ = 0;     // of line_, per index
   bool summarising_ = false;
   Line line_;
   Digits digits_;

@@ -1,0 +1,112 @@
+#include "acquire/table_join.h"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+
+#include "acquire/table_cells.h"
+#include "base/outside_text.h"
+
+namespace coilassay {
+namespace {
+
+bool starts_with_word(std::string_view text, std::string_view word) {
+  if (!text.starts_with(word)) return false;
+  if (text.size() == word.size()) return true;
+  const char next = text[word.size()];
+  return next < 'a' || next > 'z';
+}
+
+bool is_end_mark(std::string_view line) {
+  const std::string text = lower_case(bare_cell(line));
+  for (const std::string_view word : {"end", "[end", "<end", "eof", "</data"}) {
+    if (starts_with_word(text, word)) return true;
+  }
+  return false;
+}
+
+const TableBreak* first_hard(const std::vector<TableBreak>& breaks) {
+  const auto hard = std::find_if(breaks.begin(), breaks.end(), [](const TableBreak& b) { return !b.comment; });
+  return hard == breaks.end() ? nullptr : &*hard;
+}
+
+}  // namespace
+
+bool introduces_record(std::string_view line) {
+  const std::string text = lower_case(bare_cell(line));
+  for (const std::string_view word : {"step information", "step", "run", "segment", "record", "frame", "sweep", "acquisition",
+                                      "waveform", "begin", "[begin", "<begin", "data", "[data", "<data"}) {
+    if (starts_with_word(text, word)) return true;
+  }
+  return false;
+}
+
+Result<void> TableJoin::join(const BlockColumns& block) {
+  std::size_t from = 0;
+  for (const TableBreak& at : block.breaks) {
+    if (const auto done = append(block, from, at.row); !done) return done;
+    from = at.row;
+    pending_.push_back(at);
+    pending_.back().line += line_;
+  }
+  if (block.breaks.size() == BlockColumns::kMostBreaks) {
+    const TableBreak* hard = first_hard(pending_);
+    return damaged(hard != nullptr ? *hard : pending_.front(), "there are more remarks than rows from here on");
+  }
+  const auto done = append(block, from, block.rows);
+  line_ += block.lines;
+  return done;
+}
+
+Result<void> TableJoin::append(const BlockColumns& block, std::size_t from, std::size_t to) {
+  if (to == from) return {};
+  if (!pending_.empty()) {
+    if (const auto done = resolve(block, from); !done) return done;
+    pending_.clear();
+  }
+  store_.append(block, from, to - from);
+  return {};
+}
+
+Result<void> TableJoin::resolve(const BlockColumns& block, std::size_t row) {
+  for (const TableBreak& at : pending_) {
+    if (!at.words) return damaged(at, at.finding);
+  }
+  const TableBreak* hard = first_hard(pending_);
+  bool another = store_.begins_record(block, row);
+  if (!has_time_ && hard != nullptr) {
+    another = std::any_of(pending_.begin(), pending_.end(),
+                          [](const TableBreak& b) { return !b.comment && introduces_record(b.text); });
+  }
+  if (another) {
+    store_.begin_labelled(label());
+  } else if (hard != nullptr && !is_end_mark(hard->text)) {
+    return damaged(*hard, hard->finding);
+  } else if (hard != nullptr) {
+    return damaged(*hard, fmt::format("rows go on after '{}' without starting another record", shown(hard->text, 60)));
+  }
+  return {};
+}
+
+std::string TableJoin::label() const {
+  for (const TableBreak& at : pending_) {
+    if (at.text != heading_ && !is_end_mark(at.text)) return at.text;
+  }
+  return "";
+}
+
+Result<void> TableJoin::finish(bool last_line_open) {
+  for (const TableBreak& at : pending_) {
+    if (at.comment || is_end_mark(at.text)) continue;
+    const bool cut = last_line_open && &at == &pending_.back();
+    return damaged(at, cut ? "the file ends in the middle of a row: " + at.finding : at.finding);
+  }
+  return {};
+}
+
+tl::unexpected<Error> TableJoin::damaged(const TableBreak& at, const std::string& finding) const {
+  return failure(Problem::damaged, fmt::format("{}:{}", name_, at.line), finding,
+                 "repair or remove that line, or export the waveform again");
+}
+
+}  // namespace coilassay
