@@ -3,7 +3,6 @@
 
 #include <exception>
 #include <iostream>
-#include <new>
 #include <ostream>
 #include <string>
 #include <vector>
@@ -21,8 +20,6 @@ int main(int argc, char** argv) {
     std::ostream out(&standard_output);
     Console console(out, std::cerr, surroundings_of_process(), system_clock_now);
     return run_program(std::vector<std::string>(argv + (argc > 0 ? 1 : 0), argv + argc), console);
-  } catch (const std::bad_alloc&) {
-    std::cerr << "coilassay: there is not enough memory for this\n  try: a shorter record, or a machine with more memory\n";
   } catch (const std::exception& error) {
     std::cerr << "coilassay: this is a bug in the program, the input is not to blame (" << error.what()
               << ")\n  try: report it with the command line and the input\n";

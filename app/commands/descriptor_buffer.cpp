@@ -22,8 +22,13 @@ int DescriptorBuffer::sync() {
   const char* at = pbase();
   while (trouble_ == 0 && at != pptr()) {
     const ssize_t wrote = ::write(descriptor_, at, static_cast<std::size_t>(pptr() - at));
-    if (wrote > 0) at += wrote;
-    if (wrote < 0 && errno != EINTR) trouble_ = errno;
+    if (wrote > 0) {
+      at += wrote;
+    } else if (wrote == 0) {
+      trouble_ = EIO;  // must not happen for a count above zero, and must not hang
+    } else if (errno != EINTR) {
+      trouble_ = errno;
+    }
   }
   setp(block_.data(), block_.data() + block_.size());
   errno = trouble_;

@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <cerrno>
+#include <new>
 #include <ostream>
 #include <system_error>
 
@@ -73,6 +74,15 @@ Result<ExitCode> dispatch(const std::vector<std::string>& words, Console& consol
   return failure(Problem::usage, "coilassay " + first, "it does not say what to " + first, kinds);
 }
 
+Result<ExitCode> within_memory(const std::vector<std::string>& words, Console& console) {
+  try {
+    return dispatch(words, console);
+  } catch (const std::bad_alloc&) {
+    return failure(Problem::unreadable, "coilassay", "there is not enough memory for this",
+                   "a shorter record, or a machine with more memory");
+  }
+}
+
 /// Whether programs are to read what comes out, also when the command line itself is wrong.
 bool wants_json(const std::vector<std::string>& words) {
   const auto end = std::find(words.begin(), words.end(), "--");
@@ -119,7 +129,7 @@ ExitCode exit_code_of(Problem problem) {
 }
 
 int run_program(const std::vector<std::string>& words, Console& console) {
-  const Result<ExitCode> ended = dispatch(words, console);
+  const Result<ExitCode> ended = within_memory(words, console);
   ExitCode code = ended ? *ended : exit_code_of(ended.error().problem);
   if (!ended) {
     if (wants_json(words)) {

@@ -3,6 +3,7 @@
 #include <gmock/gmock.h>
 
 #include "app/commands/arguments.h"
+#include "base/random.h"
 
 namespace coilassay {
 namespace {
@@ -181,6 +182,27 @@ TEST(Arguments, RefusesBadValuesAtTheirOption) {
       {{"--how", "ill"}, "--how: 'ill' is none of its choices -> choose fast or well"},
   };
   for (const BadValue& row : table) EXPECT_THAT(trouble(row.words), HasSubstr(row.expected));
+}
+
+// Any mixture of words is either read or refused in words, and nothing else happens.
+TEST(CommandLine, SurvivesAnyMixtureOfWords) {
+  const Command command = made_up();
+  const std::vector<std::string> words = {"--capacitor", "--from", "--json", "-o", "--", "-", "", "10nF", "±", "--how=well", "--how",
+                                          "--help", "-5us", "[a,b]", "--name=", "=", "---", "--=", "-o=", "-ox", "a.csv", "\xff\xfe",
+                                          "--capacitor=1n±1%", "1e999", "-h", "--json=1", "++", "/x:1", "{}", std::string(5000, 'x')};
+  Random random(20260304);
+  std::size_t read = 0;
+  for (int round = 0; round < 3000; ++round) {
+    std::vector<std::string> line;
+    for (std::uint64_t n = random.below(6); n > 0; --n) line.push_back(words[random.below(words.size())]);
+    const Result<Arguments> arguments = read_arguments(command, line);
+    if (arguments) ++read;
+    if (arguments) continue;
+    EXPECT_FALSE(arguments.error().place.empty()) << testing::PrintToString(line);
+    EXPECT_FALSE(arguments.error().finding.empty()) << testing::PrintToString(line);
+    EXPECT_LT(arguments.error().finding.size(), 400u) << testing::PrintToString(line);
+  }
+  EXPECT_GT(read, 300u);  // the mixture is not all nonsense
 }
 
 TEST(Arguments, ShowsOutsideTextSafely) {

@@ -1,7 +1,9 @@
 #include <gmock/gmock.h>
 
+#include <cmath>
 #include <map>
 #include <nlohmann/json.hpp>
+#include <sstream>
 
 #include "app/commands/arguments.h"
 #include "app/commands/command_list.h"
@@ -181,6 +183,57 @@ TEST(RingDownRun, MeasuresASimulatedCoil) {
   ASSERT_NE(inductance, nullptr);
   EXPECT_LE(inductance->low, 47e-6);
   EXPECT_GE(inductance->high, 47e-6);
+}
+
+TEST(RingDownRun, DoesNotPassOverAColumnThatShouldBeSubtracted) {
+  const TemporaryFolder folder;
+  RingDownJob job;
+  job.files = {folder.file("ring.csv", ring_csv())};
+  job.bench_sheet = folder.file("bench.toml", "[voltage]\ncolumn = \"CH1\"\nlow_column = \"CH2\"\n");
+  const auto measured = run_ring_down(job, {});
+  ASSERT_FALSE(measured);
+  EXPECT_THAT(measured.error().finding, HasSubstr("low_column"));
+}
+
+/// Two records in one file: the time starts again.
+std::string two_records() {
+  std::ostringstream text;
+  text << "time [s],CH1 [V]\n";
+  for (const double cycles_per_sample : {0.02, 0.03}) {
+    for (int i = 0; i < 2000; ++i) {
+      text << i << "e-6," << 2 * std::exp(-i / 300.0) * std::sin(6.283185307179586 * cycles_per_sample * i) << '\n';
+    }
+  }
+  return text.str();
+}
+
+TEST(RingDownRun, MeasuresTheFirstOfSeveralRecordsAndSaysSo) {
+  const TemporaryFolder folder;
+  RingDownJob job;
+  job.files = {folder.file("two.csv", two_records())};
+  const auto first = run_ring_down(job, {});
+  ASSERT_TRUE(first) << first.error().finding;
+  EXPECT_NEAR(first->find("f_0")->quantity.value, 20e3, 20);
+  EXPECT_THAT(first->advice, testing::Contains(HasSubstr("holds 2 records")));
+  job.segment = "2";
+  const auto second = run_ring_down(job, {});
+  ASSERT_TRUE(second) << second.error().finding;
+  EXPECT_NEAR(second->find("f_0")->quantity.value, 30e3, 30);
+  EXPECT_THAT(second->advice, testing::Not(testing::Contains(HasSubstr("records"))));
+  job.segment = "3";
+  EXPECT_THAT(run_ring_down(job, {}).error().finding, HasSubstr("holds 2 records, none of them is '3'"));
+}
+
+TEST(RingDownCommand, EndsWithThreeWhenThereIsNothingToMeasure) {
+  const TemporaryFolder folder;
+  std::string flat = "time [s],CH1 [V]\n";
+  for (int i = 0; i < 500; ++i) flat += std::to_string(i) + "e-6,0.5\n";
+  const std::string file = folder.file("flat.csv", flat);
+  EXPECT_EQ(run({"ringdown", file}).code, 3);
+  const Ended json = run({"ringdown", file, "--json"});
+  EXPECT_EQ(json.code, 3);
+  EXPECT_EQ(schema_trouble(json.out, "result"), "");
+  EXPECT_EQ(json.error, "");
 }
 
 // An option that is declared but never looked at would be one that does nothing.
