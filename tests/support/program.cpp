@@ -70,6 +70,8 @@ std::vector<std::string> environment_of(const ProgramStart& start) {
   } else {
     dup2(out_file >= 0 ? out_file : out.write, STDOUT_FILENO);
   }
+  constexpr unsigned kNobody = 65534;
+  if (start.as_nobody && geteuid() == 0 && (setgid(kNobody) != 0 || setuid(kNobody) != 0)) _exit(126);
   execve(arguments[0], arguments, environment);
   _exit(127);
 }

@@ -14,6 +14,7 @@ struct ProgramStart {
   std::string out_file = {};                  // standard output goes there instead of being collected
   bool out_closed = false;                    // the program begins with standard output closed
   bool out_abandoned = false;                 // nobody reads: a write raises a broken pipe
+  bool as_nobody = false;                     // started by root: without root's rights
   std::chrono::seconds patience{60};
 };
 
