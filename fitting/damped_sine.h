@@ -34,14 +34,15 @@ void evaluate(const DampedSine& model, double first_n, std::span<double> out);
 
 struct DampedSineOptions {
   double resolution = std::nan("");  // step between codes, in units of y; NaN: not quantised or not known
+  double near_omega = std::nan("");  // frequency to begin at, rad per sample; NaN, or wrong: found from the record
 };
 
 struct DampedSineFit {
-  Fit fit;                    // parameters in the order a, q, p, s, c; covariance with sigma as below
+  Fit fit;                    // parameters in the order a, q, p, s, c; n from the first sample of the span
   DampedSine model;
   double sigma_per_sample = std::nan("");  // scatter of single samples about the model
   double sigma_in_band = std::nan("");     // scatter seen by the compressed data, expressed per sample
-  double sigma = std::nan("");             // the larger of what counts: the covariance uses it
+  double sigma = std::nan("");             // what the covariance uses; rounding is added to it, see fit_damped_sine
   double dof = 0;                          // degrees of freedom of sigma: the t quantile matters for short records
   std::size_t samples = 0;                 // used, from the first: fewer than given where an undithered tail is left out
   bool undithered = false;                 // noise below about 0.3 of the resolution: see fit_damped_sine
@@ -50,14 +51,29 @@ struct DampedSineFit {
   bool few_cycles = false;                 // block means in (a, q) instead of demodulated blocks
 };
 
-/// Fits one damped sine to evenly spaced samples (NaN = missing; blocks that hold one are left out).
+/// Fits one damped sine to evenly spaced samples (NaN = missing; blocks that hold one are left out, and made shorter
+/// where that would cost much).
 ///
 /// Statistically as good as a fit of every sample (variance within 1 % of the Cramer-Rao bound); cost is one read of the
-/// array. Q from 0.35 up, overdamped included.
-/// @return too_few_samples (fewer than 16 present), no_signal (nothing above the noise), not_converged.
+/// array. Q from 0.35 up, overdamped included; a may come out at or below 0 when the record is too short to show decay.
+///
+/// Noise. The covariance is (J^T J)^-1 sigma^2; sigma is the scatter of single samples, or the in-band scatter where that
+/// is larger beyond chance. It holds for short records with the t quantile of `dof`. With a `resolution` it also holds
+/// what rounding does: when the noise does not dither the converter (`undithered`: below about 0.34 of a step) rounding
+/// errs by a function of the signal, so the fit stops where the oscillation has fallen to one step (`samples`), and the
+/// mean square of that error over the unknown position of the levels is added. A larger sigma alone would not do: the
+/// error pushes single parameters, by up to 8 times more or less than white noise of that size.
+///
+/// @return too_few_samples (fewer than 16 present);
+///         no_signal: nothing above the noise (false alarms on white noise below 1e-4), a slow drift (a cubic describes it
+///         as well), a step or pulse (with few cycles: what is left over hangs together and exceeds 0.4 % of the fit), or
+///         one exponential or part of a swing (frequency and decay cannot be told);
+///         not_converged.
 Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSineOptions& options = {});
 
 /// Two modes on one offset; parameters a1, q1, p1, s1, a2, q2, p2, s2, c. The first is the larger at n = 0.
+///
+/// For modes as close as one decay rate in angular frequency; far ones are found in what the first leaves over.
 struct TwoModeFit {
   Fit fit;
   DampedSine first, second;   // c stands in the first
@@ -65,6 +81,7 @@ struct TwoModeFit {
   /// Chi-square the second mode takes away, in units of sigma^2 (large: it is really there).
   double gain = 0;
 };
+/// @return what fit_damped_sine returns, or not_converged: no second oscillation could be told apart.
 Result<TwoModeFit> fit_two_damped_sines(std::span<const double> y, const DampedSineOptions& options = {});
 
 /// Standard uncertainties by the Cramer-Rao bound for given truth and noise, same order as the parameters (5 values).

@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <complex>
 #include <numbers>
 #include <vector>
 
@@ -54,9 +55,9 @@ StrongestLine line_of(std::span<const double> values, std::size_t decimation) {
   line.omega_error = 0.3 * 2 * std::numbers::pi / (static_cast<double>(n) * d);
   line.cycles = line.omega * static_cast<double>(line.length) / (2 * std::numbers::pi);
   // Sums of samples are d times sums of averages; per sample of noise this is d per value.
-  line.strength = *peak * d / static_cast<double>(n);
+  line.strength = *peak * d / static_cast<double>(present);
   std::nth_element(power.begin() + 1, power.begin() + static_cast<std::ptrdiff_t>(power.size() / 2), power.end());
-  line.floor = power[power.size() / 2] * d / static_cast<double>(n);
+  line.floor = power[power.size() / 2] * d / static_cast<double>(present);
   return line;
 }
 
@@ -122,6 +123,28 @@ Beginning find_beginning(std::span<const double> y) {
     beginning.averages = std::move(levels[level - 1]);
   }
   return beginning;
+}
+
+Beginning beginning_near(std::span<const double> y, double omega, double reference) {
+  const std::size_t length = std::max<std::size_t>(1, y.size() / 512), count = y.size() / length;
+  const BlockSums sums = block_sums(y, length, count, omega, reference);
+  StrongestLine line;
+  std::complex<double> sum = 0;
+  std::size_t present = 0;
+  for (std::size_t k = 0; k < count; ++k) {
+    if (!std::isfinite(sums.sum[k])) continue;
+    sum += sums.demodulated[k] * std::polar(1.0, -omega * static_cast<double>(k * length));
+    present += length;
+    const double strength = std::norm(sum) / static_cast<double>(present);
+    if (present < 64 || strength < line.strength) continue;
+    line.strength = strength;
+    line.length = (k + 1) * length;
+  }
+  if (line.length == 0) line.length = y.size();
+  line.omega = omega;
+  line.omega_error = 0.3 * 2 * std::numbers::pi / static_cast<double>(line.length);
+  line.cycles = omega * static_cast<double>(line.length) / (2 * std::numbers::pi);
+  return {.line = line, .decimation = 1, .averages = {}};
 }
 
 std::vector<Shape> starting_shapes(const StrongestLine& line) {

@@ -36,6 +36,9 @@ struct Beginning {
 /// stands out, on up to 2^20 samples at full rate. Missing samples count as the mean.
 Beginning find_beginning(std::span<const double> y);
 
+/// The same when the frequency is known: only how long it lasts is looked for.
+Beginning beginning_near(std::span<const double> y, double omega, double reference);
+
 /// Below this many cycles in its stretch the line is not to be trusted and slow shapes are tried one by one.
 constexpr double kTrustedCycles = 6;
 
