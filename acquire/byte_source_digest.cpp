@@ -55,14 +55,6 @@ Result<bool> DigestedBytes::block_is_there() {
   return false;
 }
 
-Result<std::string_view> DigestedBytes::look_ahead(std::size_t count) {
-  const auto there = block_is_there();
-  if (!there) return failure(there);
-  if (!*there) return std::string_view();
-  const std::vector<char>& block = ring_[0];
-  return std::string_view(block.data(), std::min(count, block.size()));
-}
-
 Result<std::size_t> DigestedBytes::read(std::span<char> into) {
   std::size_t done = 0;
   while (done < into.size()) {

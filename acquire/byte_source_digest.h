@@ -22,9 +22,6 @@ class DigestedBytes final : public ByteSource {
   DigestedBytes(const DigestedBytes&) = delete;
   DigestedBytes& operator=(const DigestedBytes&) = delete;
 
-  /// The first bytes, at most a block (1 MiB), without using them up. Call before the first read().
-  Result<std::string_view> look_ahead(std::size_t count);
-
   const std::string& name() const override { return inner_.name(); }
   std::size_t size_hint() const override { return inner_.size_hint(); }
   Result<std::size_t> read(std::span<char> into) override;

@@ -52,9 +52,41 @@ struct Written {
 /// Exponents beyond this mean zero or infinity whatever the digits are (a cell has at most a few hundred of them).
 constexpr int kExponentLimit = 100000;
 
+/// "u" of "10u"; after a blank too.
+bool take_prefix(std::string_view text, int& exponent) {
+  text = trimmed(text);
+  if (text == "\xC2\xB5" || text == "\xCE\xBC" || text == "\xB5") text = "u";  // micro sign, Greek mu, both encodings
+  if (text.size() != 1) return false;
+  switch (text.front()) {
+    case 'f': exponent = -15; return true;
+    case 'p': exponent = -12; return true;
+    case 'n': exponent = -9; return true;
+    case 'u': exponent = -6; return true;
+    case 'm': exponent = -3; return true;
+    case 'k': case 'K': exponent = 3; return true;
+    case 'M': exponent = 6; return true;
+    case 'G': exponent = 9; return true;
+    case 'T': exponent = 12; return true;
+    default: return false;
+  }
+}
+
+/// The blank between thousands at the start of text: ordinary, non-breaking (UTF-8 and Windows-1252), thin, narrow; 0 if none.
+std::size_t blank_of_thousands(std::string_view text) {
+  for (const std::string_view sign : {" ", "\xC2\xA0", "\xE2\x80\x89", "\xE2\x80\xAF", "\xA0"}) {
+    if (text.starts_with(sign)) return sign.size();
+  }
+  return 0;
+}
+
+/// Whether three digits and no fourth follow.
+bool three_digits(std::string_view text) {
+  return text.size() >= 3 && digit(text[0]) && digit(text[1]) && digit(text[2]) && (text.size() == 3 || !digit(text[3]));
+}
+
 bool take_exponent(std::string_view text, int& exponent) {
   if (text.empty()) return true;
-  if (lower(text.front()) != 'e') return false;
+  if (lower(text.front()) != 'e') return take_prefix(text, exponent);
   text.remove_prefix(1);
   const bool down = text.starts_with('-');
   if (down || text.starts_with('+')) text.remove_prefix(1);
@@ -69,18 +101,30 @@ bool take_exponent(std::string_view text, int& exponent) {
 }
 
 bool take_number(std::string_view cell, char decimal, Written& written) {
-  if (cell.starts_with('-')) written.digits += '-';
-  if (cell.starts_with('-') || cell.starts_with('+')) cell.remove_prefix(1);
+  constexpr std::string_view kMinus = "\xE2\x88\x92";  // the sign typographers use
+  if (cell.starts_with('-') || cell.starts_with(kMinus)) written.digits += '-';
+  if (cell.starts_with('-') || cell.starts_with('+')) {
+    cell.remove_prefix(1);
+  } else if (cell.starts_with(kMinus)) {
+    cell.remove_prefix(kMinus.size());
+  }
   bool any = false;
   bool point = false;
+  std::size_t since_blank = 0;  // digits of the whole number since the last blank
   std::size_t i = 0;
-  for (; i < cell.size(); ++i) {
+  while (i < cell.size()) {
     if (digit(cell[i])) {
       any = true;
-      written.digits += cell[i];
+      ++since_blank;
+      written.digits += cell[i++];
     } else if (cell[i] == decimal && !point) {
       point = true;
       written.digits += '.';
+      ++i;
+    } else if (const std::size_t blanks = blank_of_thousands(cell.substr(i));
+               blanks > 0 && !point && since_blank >= 1 && since_blank <= 3 && three_digits(cell.substr(i + blanks))) {
+      since_blank = 0;
+      i += blanks;
     } else {
       break;
     }

@@ -22,7 +22,8 @@ struct CellValue {
 };
 
 /// Reads a whole cell: blanks around it, quotes, a sign, a decimal number with or without exponent, or one of the words
-/// instruments write where there is no number. Correctly rounded, as strtod.
+/// instruments write where there is no number. Correctly rounded, as strtod. A prefix may follow ("10u", "35m", "1M":
+/// case matters), and blanks of any width may part the thousands of the whole number ("1 234.5").
 ///
 /// @param decimal  '.' or ','
 /// @param shift    power of ten by which the number is multiplied before it is rounded (-3 for a column in mV)

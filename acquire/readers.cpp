@@ -1,5 +1,8 @@
 // The list of formats, and the one door to them.
 #include "acquire/byte_source_digest.h"
+#include "acquire/byte_source_head.h"
+#include "acquire/byte_source_text.h"
+#include "acquire/byte_source_unpack.h"
 #include "acquire/reader.h"
 #include "acquire/table_reader.h"
 
@@ -14,12 +17,43 @@ std::vector<std::unique_ptr<Reader>> all_readers() {
   return list;
 }
 
-void set_source(Recording& recording, const Source& source) {
+void describe_source(Recording& recording, const Source& source, const std::string& encoding) {
   if (auto* captures = std::get_if<std::vector<Capture>>(&recording)) {
-    for (Capture& capture : *captures) capture.source = source;
+    for (Capture& capture : *captures) {
+      capture.source = source;
+      if (!encoding.empty()) capture.dialect.encoding = encoding;
+    }
   } else {
-    std::get<Sweep>(recording).source = source;
+    auto& sweep = std::get<Sweep>(recording);
+    sweep.source = source;
+    if (!encoding.empty()) sweep.dialect.encoding = encoding;
   }
+}
+
+/// "ring.csv.gz" is a "ring.csv" for the readers that look at the ending.
+std::string without_packing(std::string name) {
+  for (const std::string_view ending : {".gz", ".zst"}) {
+    if (name.ends_with(ending)) name.resize(name.size() - ending.size());
+  }
+  return name;
+}
+
+/// The first reader that recognises the stream, on it.
+Result<Recording> read_stream(ByteSource& bytes, const ReadOptions& options) {
+  HeadedBytes headed(bytes);
+  const auto head = headed.look_ahead(kLookAhead);
+  if (!head) return failure(head);
+  const TextStream text = as_text(headed, *head);
+  HeadedBytes text_headed(text.bytes ? *text.bytes : headed);
+  const auto text_head = text_headed.look_ahead(kLookAhead);
+  if (!text_head) return failure(text_head);
+  for (const auto& reader : readers()) {
+    if (!reader->recognises(without_packing(bytes.name()), *text_head)) continue;
+    auto recording = reader->read(text_headed, *text_head, options);
+    if (recording) describe_source(*recording, {}, text.encoding);
+    return recording;
+  }
+  return failure(Problem::not_a_capture, bytes.name(), "it is of no known format", "export the waveform as CSV");
 }
 
 }  // namespace
@@ -32,23 +66,21 @@ const std::vector<std::unique_ptr<Reader>>& readers() {
 Result<Recording> read_recording(const std::string& path, const ReadOptions& options) {
   const auto opened = open_bytes(path);
   if (!opened) return failure(opened);
-  DigestedBytes bytes(**opened);
-  const auto head = bytes.look_ahead(kLookAhead);
+  DigestedBytes stored(**opened);
+  HeadedBytes headed(stored);
+  const auto head = headed.look_ahead(kLookAhead);
   if (!head) return failure(head);
   if (head->empty()) return failure(Problem::not_a_capture, path, "the file is empty", "export the waveform again");
-  for (const auto& reader : readers()) {
-    if (!reader->recognises(path, *head)) continue;
-    auto recording = reader->read(bytes, *head, options);
-    if (!recording) return recording;
-    if (const auto rest = bytes.drain(); !rest) return failure(rest);
-    Source source;
-    source.name = path;
-    source.bytes = bytes.bytes();
-    source.sha256 = bytes.digest();
-    set_source(*recording, source);
-    return recording;
-  }
-  return failure(Problem::not_a_capture, path, "it is of no known format", "export the waveform as CSV");
+  const std::unique_ptr<ByteSource> plain = unpacked(headed, *head);
+  auto recording = read_stream(plain ? *plain : headed, options);
+  if (!recording) return recording;
+  if (const auto rest = stored.drain(); !rest) return failure(rest);
+  Source source;
+  source.name = path;
+  source.bytes = stored.bytes();
+  source.sha256 = stored.digest();
+  describe_source(*recording, source, {});
+  return recording;
 }
 
 }  // namespace coilassay

@@ -49,9 +49,12 @@ Candidate judge(const std::vector<TableLine>& lines, char delimiter, char decima
   return found;
 }
 
-/// Best first: most rows read, then most columns.
+/// Best first: most rows read, then tabs before blanks (which may part thousands), then most columns.
 bool better(const Candidate& a, const Candidate& b) {
   if (a.rows != b.rows) return a.rows > b.rows;
+  const auto tabs = [](const Candidate& c) { return c.dialect.delimiter == '\t' && c.dialect.width > 1; };
+  if (tabs(a) && b.dialect.delimiter == ' ') return true;
+  if (tabs(b) && a.dialect.delimiter == ' ') return false;
   return a.dialect.width > b.dialect.width;
 }
 

@@ -60,7 +60,8 @@ bool rises_evenly(const std::vector<double>& column) {
 bool counts_rows(const std::vector<double>& column) {
   for (std::size_t i = 0; i < column.size(); ++i) {
     if (column[i] != std::floor(column[i])) return false;
-    if (i > 0 && column[i] - column[i - 1] != 1 && column[i] != column.front()) return false;  // segments count anew
+    // Segments count anew.
+    if (i > 0 && column[i] - column[i - 1] != 1 && !(i > 1 && column[i] == column.front())) return false;
   }
   return column.size() >= 2;
 }

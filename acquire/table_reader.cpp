@@ -1,6 +1,7 @@
 #include "acquire/table_reader.h"
 
 #include <fmt/format.h>
+#include <utf8cpp/utf8.h>
 
 #include <algorithm>
 
@@ -57,6 +58,8 @@ class TableRead {
     const auto dialect = find_dialect(name_, lines, options_);
     if (!dialect) return failure(dialect);
     dialect_ = *dialect;
+    const std::string_view preamble = text.substr(0, static_cast<std::size_t>(lines[dialect_.first_row].text.data() - text.data()));
+    if (!utf8::is_valid(preamble.begin(), preamble.end())) encoding_ = "windows-1252";
     header_ = understand_header(lines, dialect_);
     auto meaning = understand_columns(name_, lines, dialect_, header_, options_);
     if (!meaning) return failure(meaning);
@@ -107,7 +110,7 @@ class TableRead {
     std::vector<Capture> captures = store_->finish();
     for (Capture& capture : captures) {
       capture.dialect.format = "table";
-      capture.dialect.encoding = "utf-8";
+      capture.dialect.encoding = encoding_;
       capture.dialect.delimiter = std::string(1, dialect_.delimiter);
       capture.dialect.decimal = std::string(1, dialect_.decimal);
       capture.dialect.first_data_line = first_line_;
@@ -121,6 +124,7 @@ class TableRead {
   LineBlocks blocks_;
   const ReadOptions& options_;
   LineBlock block_;
+  std::string encoding_ = "utf-8";
   TableDialect dialect_;
   TableHeader header_;
   TableMeaning meaning_;

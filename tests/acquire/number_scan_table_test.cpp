@@ -57,6 +57,23 @@ TEST(NumberScan, ShiftsAPrefixBeforeItRounds) {
   EXPECT_EQ(read_cell("1,5", ',', 3).value, 1500.0);
 }
 
+TEST(NumberScan, ReadsPrefixesAndPartedThousands) {
+  EXPECT_EQ(read_cell("10u", '.').value, 10e-6);
+  EXPECT_EQ(read_cell("35m", '.').value, 35e-3);
+  EXPECT_EQ(read_cell("1M", '.').value, 1e6);
+  EXPECT_EQ(read_cell("-4.7 k", '.').value, -4700.0);
+  EXPECT_EQ(read_cell("10\xC2\xB5", '.').value, 10e-6);
+  EXPECT_EQ(read_cell("999E-06", '.').value, 999e-6);
+  EXPECT_EQ(read_cell("1 234 567.5", '.').value, 1234567.5);
+  EXPECT_EQ(read_cell("12\xE2\x80\xAF""345,25", ',').value, 12345.25);
+  EXPECT_EQ(read_cell("1\xC2\xA0""234", '.').value, 1234.0);
+  EXPECT_EQ(read_cell("\xE2\x88\x92""1.5", '.').value, -1.5);
+  EXPECT_EQ(read_cell("-00.0000", '.').value, 0.0);
+  for (const char* text : {"1 23", "1 2345", "1234 567", "1.5 000", "10x", "10uu", "1 234 5"}) {
+    EXPECT_EQ(read_cell(text, '.').kind, CellKind::text) << text;
+  }
+}
+
 struct Case {
   const char* cell;
   CellKind kind;
