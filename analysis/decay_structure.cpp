@@ -142,11 +142,13 @@ DecayStructure look_at_structure(std::span<const double> window, const Decay& de
   if (two.fit) {
     const double share = amplitude_of(two.fit->second) / amplitude_of(two.fit->first);
     const bool explains = two.residuals.chance > kImprobable ||
-                          two.residuals.lack_of_fit < 0.1 * decay.residuals.lack_of_fit ||
+                          two.residuals.lack_of_fit < 0.01 * decay.residuals.lack_of_fit ||
                           (!misfit && two.residuals.sigma < decay.residuals.sigma);
-    // Two modes closer than their decay describe any slow change of frequency as well: that is level dependence.
+    // Two modes closer than their decay, or too close to beat within the window, describe any slow change of frequency as
+    // well: that is level dependence.
     const double distance = std::fabs(std::sqrt(two.fit->second.q) - std::sqrt(two.fit->first.q));
-    const bool apart = distance > 0.5 * std::fmax(two.fit->first.a, two.fit->second.a);
+    const bool apart = distance > 0.5 * std::fmax(two.fit->first.a, two.fit->second.a) &&
+                       distance * static_cast<double>(window.size()) > 3;
     if (explains && apart && share > kSecondModeCounts) {
       structure.second_share = share;
       const double f2 = std::sqrt(two.fit->second.q) / (2 * std::numbers::pi * sample_interval_s);

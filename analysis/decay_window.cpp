@@ -214,8 +214,10 @@ class Search {
     }
     Result<Decay> backwards = from_behind(surely_free(record, level), end);
     if (!backwards) return settle(std::move(direct), release);
-    const bool better = !direct || backwards->residuals.lack_of_fit < 0.3 * direct->residuals.lack_of_fit ||
-                        (fits(*backwards) && !fits(*direct));
+    // A short stretch at the very end is always easy to describe, and says next to nothing.
+    const bool worth = !direct || 8 * (backwards->end - backwards->first) > direct->end - direct->first;
+    const bool better = !direct || (worth && (backwards->residuals.lack_of_fit < 0.3 * direct->residuals.lack_of_fit ||
+                                              (fits(*backwards) && !fits(*direct))));
     Result<Decay>& chosen = better ? backwards : direct;
     chosen->drive_before = stands_before(chosen->first, level, *chosen);
     return settle(std::move(chosen), release);
@@ -227,7 +229,7 @@ class Search {
 
   Result<Decay> fit_from(std::size_t first, std::size_t end) const {
     const auto window = y_.subspan(first, end - first);
-    Result<DampedSineFit> fit = fit_damped_sine(window, {search_.resolution});
+    Result<DampedSineFit> fit = fit_damped_sine(window, {search_.resolution, search_.near_omega});
     if (!fit) return failure(fit);
     Decay decay;
     decay.first = first;
@@ -237,7 +239,7 @@ class Search {
     const std::size_t stop =
         end_of_codes(decay.fit, decay.residuals.sigma, search_.resolution, window.size());
     if (stop < window.size()) {
-      Result<DampedSineFit> shorter = fit_damped_sine(window.first(stop), {search_.resolution});
+      Result<DampedSineFit> shorter = fit_damped_sine(window.first(stop), {search_.resolution, search_.near_omega});
       if (shorter) {
         decay.end = first + stop;
         decay.fit = std::move(*shorter);

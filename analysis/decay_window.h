@@ -16,6 +16,7 @@ namespace coilassay {
 struct DecaySearch {
   double resolution = std::nan("");            // step between codes of y
   std::span<const double> drive;               // a channel that shows the drive; may be empty
+  double near_omega = std::nan("");            // frequency to begin at, rad per sample, when it is known
   std::optional<std::size_t> from, to;         // stated window [from, to); searching stops at what is stated
 };
 

@@ -123,6 +123,7 @@ Result<Decay> without_clipped(CaptureDecay& result, const std::vector<FlatTop>& 
               std::nan(""));
   }
   search.from = std::max(search.from.value_or(0), result.decay->first);
+  search.near_omega = result.decay->fit.model.damped_omega();
   Result<Decay> decay = find_decay(masked, search);
   if (decay) {
     result.resampled = std::move(masked);

@@ -1,0 +1,174 @@
+// Every ring-down and capture finding that applies: planted, and found; silent on clean captures.
+#include <gtest/gtest.h>
+
+#include <cmath>
+
+#include "base/random.h"
+#include "tests/support/ring_down_bench.h"
+
+namespace coilassay {
+namespace {
+
+using test::covers;
+using test::exact_request;
+using test::finding;
+using test::measured;
+using test::simulated;
+
+synthetic::RingDownBench clean() {
+  synthetic::RingDownBench bench;
+  bench.noise_v = 5e-3;
+  bench.seed = 5;
+  return bench;
+}
+
+Measurement measure(const synthetic::RingDownBench& bench) {
+  const auto record = simulated(bench);
+  return measured(record.capture, exact_request(bench));
+}
+
+TEST(RingDownFindings, ClippedStart) {
+  auto bench = clean();
+  bench.bits = 8;
+  bench.resistance_ohm = 3;
+  bench.full_scale_v = 2.5;  // the ringing starts at 3.4 V
+  const Measurement result = measure(bench);
+  ASSERT_TRUE(result.has_finding("clipped"));
+  ASSERT_NE(result.find("R_s"), nullptr);
+  EXPECT_EQ(finding(result, "clipped")->severity, Severity::caution);
+  EXPECT_NEAR(result.find("L_s")->quantity.value, 47e-6, 5 * result.find("L_s")->quantity.standard_uncertainty);
+  EXPECT_NEAR(result.find("R_s")->quantity.value, 3, 5 * result.find("R_s")->quantity.standard_uncertainty);
+}
+
+TEST(RingDownFindings, ClippedNearlyToTheEnd) {
+  auto bench = clean();
+  bench.bits = 8;
+  bench.full_scale_v = 1.5;  // forty periods, 3.4 V falling to 1.9 V: every crest is cut off
+  const Measurement result = measure(bench);
+  ASSERT_TRUE(result.has_finding("clipped"));
+  ASSERT_NE(result.find("L_s"), nullptr);
+  EXPECT_NEAR(result.find("L_s")->quantity.value, 47e-6, 5 * result.find("L_s")->quantity.standard_uncertainty);
+  EXPECT_LT(result.find("L_s")->quantity.standard_uncertainty, 1e-3 * 47e-6);
+  EXPECT_NEAR(result.find("R_s")->quantity.value, 0.35, 5 * result.find("R_s")->quantity.standard_uncertainty);
+}
+
+TEST(RingDownFindings, CoarseRange) {
+  auto bench = clean();
+  bench.bits = 8;
+  bench.full_scale_v = 60;
+  EXPECT_TRUE(measure(bench).has_finding("coarse_range"));
+}
+
+TEST(RingDownFindings, FewCycles) {
+  auto bench = clean();
+  bench.resistance_ohm = 50;
+  EXPECT_TRUE(measure(bench).has_finding("few_cycles"));
+}
+
+TEST(RingDownFindings, HardlySampled) {
+  auto bench = clean();
+  bench.sample_interval_s = 2e-6;  // 2.15 samples a period
+  bench.samples = 2000;
+  bench.resistance_ohm = 0.05;
+  EXPECT_TRUE(measure(bench).has_finding("aliased"));
+}
+
+TEST(RingDownFindings, DriveInsideAStatedWindow) {
+  auto bench = clean();
+  bench.drive_time_s = 60e-6;
+  bench.drive_frequency_hz = 150e3;
+  const auto record = simulated(bench);
+  RingDownRequest request = exact_request(bench);
+  request.from_s = -40e-6;
+  const Measurement result = measured(record.capture, request);
+  ASSERT_TRUE(result.has_finding("drive_in_window"));
+  EXPECT_EQ(finding(result, "drive_in_window")->severity, Severity::caution);
+}
+
+TEST(RingDownFindings, SecondMode) {
+  for (const double ratio : {1.1, 1.3, 2.7}) {
+    auto bench = clean();
+    bench.second_amplitude_ratio = 0.1;
+    bench.second_frequency_ratio = ratio;
+    const Measurement result = measure(bench);
+    ASSERT_TRUE(result.has_finding("second_mode")) << ratio;
+    EXPECT_NEAR(finding(result, "second_mode")->figure, 0.1, 0.02) << ratio;
+    EXPECT_TRUE(covers(*result.find("L_s"), 47e-6)) << ratio;
+    EXPECT_TRUE(covers(*result.find("R_s"), 0.35)) << ratio;
+  }
+}
+
+TEST(RingDownFindings, LevelDependence) {
+  for (const double resistance : {0.35, 1.5, 5.0}) {
+    auto bench = clean();
+    bench.initial_current_a = 0.5;
+    bench.saturation_per_a2 = 0.2;  // L falls by 5 % at the first crest
+    bench.resistance_ohm = resistance;
+    const Measurement result = measure(bench);
+    ASSERT_TRUE(result.has_finding("level_dependent")) << resistance;
+    EXPECT_FALSE(result.has_finding("second_mode")) << resistance;
+    EXPECT_TRUE(covers(*result.find("L_s"), 47e-6)) << resistance;
+  }
+}
+
+TEST(RingDownFindings, NearCritical) {
+  auto bench = clean();
+  bench.resistance_ohm = 120;
+  bench.initial_voltage_v = 3;
+  EXPECT_TRUE(measure(bench).has_finding("near_critical"));
+}
+
+TEST(RingDownFindings, ProbeLoading) {
+  auto bench = clean();
+  bench.capacitance_f = 100e-12;
+  bench.probe_capacitance_f = 12e-12;
+  const Measurement result = measure(bench);
+  ASSERT_TRUE(result.has_finding("probe_loading"));
+  EXPECT_NEAR(finding(result, "probe_loading")->figure, 12.0 / 112, 0.01);
+}
+
+TEST(RingDownFindings, CapacitorLoss) {
+  auto bench = clean();
+  bench.capacitor_dissipation = 0.02;
+  const Measurement result = measure(bench);
+  ASSERT_TRUE(result.has_finding("capacitor_loss"));
+  EXPECT_EQ(finding(result, "capacitor_loss")->severity, Severity::caution);
+}
+
+TEST(RingDownFindings, NoRingingIsRefusedWithoutANumber) {
+  auto bench = clean();
+  bench.initial_current_a = 1e-9;
+  const Measurement result = measure(bench);
+  ASSERT_TRUE(result.has_finding("no_ringing"));
+  EXPECT_EQ(finding(result, "no_ringing")->severity, Severity::refusal);
+  EXPECT_TRUE(result.estimates.empty());
+}
+
+// At most 3 in 300 clean captures raise a caution or a refusal (full size in tests/proof).
+TEST(RingDownFindings, StaySilentOnCleanCaptures) {
+  int alarms = 0;
+  std::string which;
+  Random random(77);
+  for (int i = 0; i < 300; ++i) {
+    synthetic::RingDownBench bench;
+    bench.samples = 3000;
+    const double q = std::pow(10, random.uniform(-0.1, 2.7));
+    bench.resistance_ohm = std::sqrt(bench.inductance_h / bench.capacitance_f) / q;
+    bench.initial_voltage_v = random.uniform(-1, 1);
+    bench.noise_v = 3.4 * std::pow(10, -random.uniform(1.0, 3.0));
+    bench.bits = i % 3 == 0 ? 8 : i % 3 == 1 ? 12 : 0;
+    bench.seed = 500 + static_cast<std::uint64_t>(i);
+    const Measurement result = measure(bench);
+    for (const Finding& f : result.findings) {
+      if (f.severity == Severity::note) continue;
+      ++alarms;
+      which += f.code + " (Q " + std::to_string(q) + ", noise " + std::to_string(bench.noise_v) + ", bits " +
+               std::to_string(bench.bits) + ")\n";
+      break;
+    }
+  }
+  EXPECT_LE(alarms, 3) << which;
+}
+
+}  // namespace
+}  // namespace coilassay
