@@ -13,7 +13,9 @@ namespace coilassay {
 
 namespace {
 
-std::string place_of(const Option& option) { return std::string(option.name); }
+std::string place_of(const Option& option) {
+  return std::string(option.name);
+}
 
 /// What is wrong with a value or its tolerance, to stand after the value; empty when nothing is.
 std::string out_of_range(const StatedValue& stated, const Option& option) {
@@ -49,8 +51,8 @@ Result<StatedValue> read_stated(const Option& option, const std::string& text) {
     return failure(Problem::bad_number, place_of(option), in_quotes(text) + finding, how_to_write(option));
   }
   if (option.kind == ValueKind::plain && value->law != Law::unstated) {
-    return failure(Problem::bad_number, place_of(option), in_quotes(text) + " has a tolerance, which means nothing here",
-                   "give the value alone");
+    return failure(Problem::bad_number, place_of(option),
+                   in_quotes(text) + " has a tolerance, which means nothing here", "give the value alone");
   }
   return value;
 }
@@ -59,13 +61,15 @@ Result<std::uint64_t> read_count(const Option& option, const std::string& text) 
   std::uint64_t count = 0;
   const auto [end, trouble] = std::from_chars(text.data(), text.data() + text.size(), count);
   if (trouble != std::errc{} || end != text.data() + text.size()) {
-    return failure(Problem::bad_number, place_of(option), in_quotes(text) + " is not a whole number", how_to_write(option));
+    return failure(Problem::bad_number, place_of(option), in_quotes(text) + " is not a whole number",
+                   how_to_write(option));
   }
   if (count < option.least || count > option.most) {
     const bool low = count < option.least;
-    return failure(Problem::bad_number, place_of(option),
-                   in_quotes(text) + (low ? " is below " : " is above ") + std::to_string(low ? option.least : option.most),
-                   how_to_write(option));
+    return failure(
+        Problem::bad_number, place_of(option),
+        in_quotes(text) + (low ? " is below " : " is above ") + std::to_string(low ? option.least : option.most),
+        how_to_write(option));
   }
   return count;
 }

@@ -7,7 +7,9 @@ namespace coilassay {
 
 namespace {
 
-std::string first_word(std::string_view name) { return std::string(name.substr(0, name.find(' '))); }
+std::string first_word(std::string_view name) {
+  return std::string(name.substr(0, name.find(' ')));
+}
 
 std::string second_word(std::string_view name) {
   const std::size_t blank = name.find(' ');
@@ -29,7 +31,8 @@ std::string cases_of(const Command& command) {
       options += (options.empty() ? "" : " ") + name;
       if (option.kind == ValueKind::choice) {
         std::string choices;
-        for (const std::string_view choice : option.choices) choices += (choices.empty() ? "" : " ") + std::string(choice);
+        for (const std::string_view choice : option.choices)
+          choices += (choices.empty() ? "" : " ") + std::string(choice);
         values += "        " + name + ") words='" + choices + "' ;;\n";
       } else if (option.kind == ValueKind::file) {
         files += (files.empty() ? "" : "|") + name;
@@ -54,24 +57,27 @@ std::string bash_completion(std::span<const Command> commands) {
     firsts.insert(first_word(command.name));
     if (!second_word(command.name).empty()) families.insert(first_word(command.name));
   }
-  std::string out = "# bash completion for coilassay: source <(coilassay completion bash)\n_coilassay() {\n"
-                    "  local word=${COMP_WORDS[COMP_CWORD]} before='' command=${COMP_WORDS[1]} words='' files=''\n"
-                    "  COMPREPLY=()\n  if ((COMP_CWORD == 1)); then\n    COMPREPLY=($(compgen -W '" +
-                    joined(firsts) + " --help --version' -- \"$word\"))\n    return\n  fi\n  before=${COMP_WORDS[COMP_CWORD-1]}\n";
+  std::string out =
+      "# bash completion for coilassay: source <(coilassay completion bash)\n_coilassay() {\n"
+      "  local word=${COMP_WORDS[COMP_CWORD]} before='' command=${COMP_WORDS[1]} words='' files=''\n"
+      "  COMPREPLY=()\n  if ((COMP_CWORD == 1)); then\n    COMPREPLY=($(compgen -W '" +
+      joined(firsts) + " --help --version' -- \"$word\"))\n    return\n  fi\n  before=${COMP_WORDS[COMP_CWORD-1]}\n";
   for (const std::string& family : families) {
     std::set<std::string> kinds;
     for (const Command& command : commands) {
       if (first_word(command.name) == family) kinds.insert(second_word(command.name));
     }
-    out += "  if [[ $command == " + family + " ]]; then\n    if ((COMP_CWORD == 2)); then\n      COMPREPLY=($(compgen -W '" +
-           joined(kinds) + "' -- \"$word\"))\n      return\n    fi\n    command=\"$command ${COMP_WORDS[2]}\"\n  fi\n";
+    out += "  if [[ $command == " + family +
+           " ]]; then\n    if ((COMP_CWORD == 2)); then\n      COMPREPLY=($(compgen -W '" + joined(kinds) +
+           "' -- \"$word\"))\n      return\n    fi\n    command=\"$command ${COMP_WORDS[2]}\"\n  fi\n";
   }
   out += "  case $command in\n";
   for (const Command& command : commands) out += cases_of(command);
-  out += "  esac\n"
-         "  if [[ -z $files || $word == -* ]]; then COMPREPLY=($(compgen -W \"$words\" -- \"$word\")); fi\n"
-         "  if [[ -n $files && $word != -* ]]; then\n    compopt -o filenames 2>/dev/null\n"
-         "    mapfile -t COMPREPLY < <(compgen -f -- \"$word\")\n  fi\n}\ncomplete -F _coilassay coilassay\n";
+  out +=
+      "  esac\n"
+      "  if [[ -z $files || $word == -* ]]; then COMPREPLY=($(compgen -W \"$words\" -- \"$word\")); fi\n"
+      "  if [[ -n $files && $word != -* ]]; then\n    compopt -o filenames 2>/dev/null\n"
+      "    mapfile -t COMPREPLY < <(compgen -f -- \"$word\")\n  fi\n}\ncomplete -F _coilassay coilassay\n";
   return out;
 }
 

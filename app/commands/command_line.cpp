@@ -83,7 +83,8 @@ Result<SplitLine> split_command_line(const Command& command, const std::vector<s
   for (const OptionGroup& group : command.groups) {
     for (const Option& option : group.options) {
       const std::string name(option.name);
-      declared.emplace_back(&option, option.kind == ValueKind::flag ? app.add_flag(name) : app.add_option(name)->take_all());
+      declared.emplace_back(&option,
+                            option.kind == ValueKind::flag ? app.add_flag(name) : app.add_option(name)->take_all());
     }
   }
   SplitLine line;

@@ -14,9 +14,9 @@ struct SplitLine {
   std::vector<std::string> words;
 };
 
-/// "--name value", "--name=value", "-o value" and "-ovalue"; a value may begin with '-'; after "--" nothing is an option.
-/// usage: an option the command does not have (with the nearest one it has), an option without its value, a flag with
-/// one.
+/// "--name value", "--name=value", "-o value" and "-ovalue"; a value may begin with '-'; after "--" nothing is an
+/// option. usage: an option the command does not have (with the nearest one it has), an option without its value, a
+/// flag with one.
 Result<SplitLine> split_command_line(const Command& command, const std::vector<std::string>& words);
 
 }  // namespace coilassay

@@ -29,7 +29,9 @@ void Console::say(std::string_view sentence) {
   *error_ << wrapped(in_script(sentence, style.script), "", style.width);
 }
 
-void Console::show(const Error& error) { *error_ << to_text(error, error_style()); }
+void Console::show(const Error& error) {
+  *error_ << to_text(error, error_style());
+}
 
 Result<void> Console::write(const std::string& path, const std::string& contents) {
   if (path != "-") return write_file(path, contents);

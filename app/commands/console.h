@@ -19,10 +19,10 @@ namespace coilassay {
 /// What the terminal and the environment say.
 struct Surroundings {
   Script script = Script::ascii;
-  bool no_color = false;         // NO_COLOR is set
+  bool no_color = false;  // NO_COLOR is set
   bool out_is_terminal = false;
   bool error_is_terminal = false;
-  std::size_t width = 80;        // of the terminal
+  std::size_t width = 80;  // of the terminal
 };
 
 /// Text is UTF-8 when the first of LC_ALL, LC_CTYPE and LANG that is set says so; no locale is ever set.

@@ -10,7 +10,9 @@ DescriptorBuffer::DescriptorBuffer(int descriptor) : descriptor_(descriptor), bl
   setp(block_.data(), block_.data() + block_.size());
 }
 
-DescriptorBuffer::~DescriptorBuffer() { sync(); }
+DescriptorBuffer::~DescriptorBuffer() {
+  sync();
+}
 
 DescriptorBuffer::int_type DescriptorBuffer::overflow(int_type c) {
   if (sync() != 0) return traits_type::eof();

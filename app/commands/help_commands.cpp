@@ -57,7 +57,10 @@ Result<ExitCode> run_completion(const Arguments& arguments, Console& console) {
 Command help_command() {
   return {.name = "help",
           .summary = "options and examples of a command",
-          .positional = {.name = "COMMAND", .help = "the command; without one, all of them in short", .most = 2, .files = false},
+          .positional = {.name = "COMMAND",
+                         .help = "the command; without one, all of them in short",
+                         .most = 2,
+                         .files = false},
           .groups = {{.title = "Form",
                       .options = {{.name = "--markdown", .help = "the reference of all commands as Markdown"}}},
                      everywhere_options()},

@@ -14,7 +14,9 @@ std::string painted(std::string_view text, const TextStyle& style) {
   return style.color ? "\x1b[1m" + std::string(text) + "\x1b[0m" : std::string(text);
 }
 
-std::string heading(std::string_view text, const TextStyle& style) { return '\n' + painted(text, style) + '\n'; }
+std::string heading(std::string_view text, const TextStyle& style) {
+  return '\n' + painted(text, style) + '\n';
+}
 
 /// "  left    right", the right side wrapped in its own column.
 std::string entry(std::string_view left, const std::string& right, std::size_t left_width, const TextStyle& style) {
@@ -24,7 +26,9 @@ std::string entry(std::string_view left, const std::string& right, std::size_t l
   return begin + '\n' + wrapped(right, std::string(column, ' '), style.width);
 }
 
-std::string in_words(std::string_view text, const TextStyle& style) { return in_script(text, style.script); }
+std::string in_words(std::string_view text, const TextStyle& style) {
+  return in_script(text, style.script);
+}
 
 std::string help_of(const Option& option) {
   std::string help(option.help);
@@ -36,7 +40,8 @@ std::string help_of(const Option& option) {
 }  // namespace
 
 std::string overview(std::span<const Command> commands, const TextStyle& style) {
-  std::string page = painted("coilassay", style) + in_words(" measures inductors from captured waveforms.", style) + '\n';
+  std::string page =
+      painted("coilassay", style) + in_words(" measures inductors from captured waveforms.", style) + '\n';
   page += heading("Commands", style);
   std::size_t widest = 0;
   for (const Command& command : commands) widest = std::max(widest, command.name.size());
@@ -47,10 +52,11 @@ std::string overview(std::span<const Command> commands, const TextStyle& style) 
   page += entry("coilassay help COMMAND", in_words("options and examples of a command", style), 24, style);
   page += entry("coilassay --version", in_words("which program this is", style), 24, style);
   page += heading("How it ends", style);
-  page += wrapped(in_words("0 measured or passed, 1 failed, 2 the command line or an input cannot be used, 3 undecided or "
-                           "refused, 4 instrument or ledger",
-                           style),
-                  "  exit code ", style.width);
+  page +=
+      wrapped(in_words("0 measured or passed, 1 failed, 2 the command line or an input cannot be used, 3 undecided or "
+                       "refused, 4 instrument or ledger",
+                       style),
+              "  exit code ", style.width);
   return page;
 }
 

@@ -51,7 +51,8 @@ std::string man_page(std::span<const Command> commands, std::string_view version
       page += ".SS " + roff(group.title) + '\n';
       for (const Option& option : group.options) {
         std::string help(option.help);
-        if (!option.example.empty()) help += ". Example: " + std::string(option.name) + " " + std::string(option.example);
+        if (!option.example.empty())
+          help += ". Example: " + std::string(option.name) + " " + std::string(option.example);
         const std::string usage = usage_of(option);
         const std::size_t end = option.name.size();
         page += entry(option.name, usage.size() > end ? usage.substr(end + 1) : "", help + ".");

@@ -22,7 +22,9 @@ std::string cell(std::string_view text) {
   return out;
 }
 
-std::string code(std::string_view text) { return "`" + cell(text) + "`"; }
+std::string code(std::string_view text) {
+  return "`" + cell(text) + "`";
+}
 
 }  // namespace
 
@@ -30,10 +32,12 @@ std::string markdown_reference(std::span<const Command> commands) {
   std::string page = "# Commands\n\nWritten by `coilassay help --markdown`; a test keeps it current.\n\n";
   page += "| command | what it does |\n|---|---|\n";
   for (const Command& command : commands) {
-    page += "| [`" + std::string(command.name) + "`](#" + anchor(command.name) + ") | " + cell(command.summary) + " |\n";
+    page +=
+        "| [`" + std::string(command.name) + "`](#" + anchor(command.name) + ") | " + cell(command.summary) + " |\n";
   }
   page +=
-      "\nExit codes: 0 measured or passed, 1 failed, 2 the command line or an input cannot be used (or an output cannot be "
+      "\nExit codes: 0 measured or passed, 1 failed, 2 the command line or an input cannot be used (or an output "
+      "cannot be "
       "written), 3 undecided, not comparable or refused, 4 instrument or ledger.\n";
   for (const Command& command : commands) {
     page += "\n## " + std::string(command.name) + "\n\n    " + usage_of(command) + "\n";

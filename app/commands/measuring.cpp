@@ -20,8 +20,8 @@ struct Sign {
   char sign;
 };
 
-Result<std::optional<char>> sign_of(const Arguments& arguments, std::string_view option, std::initializer_list<Sign> signs,
-                                    const std::string& remedy) {
+Result<std::optional<char>> sign_of(const Arguments& arguments, std::string_view option,
+                                    std::initializer_list<Sign> signs, const std::string& remedy) {
   const std::optional<std::string> typed = arguments.text(option);
   if (!typed) return std::nullopt;
   for (const Sign& each : signs) {
@@ -62,7 +62,8 @@ Result<PropagationOptions> propagation_of(const Arguments& arguments) {
   const auto seed = arguments.count("--seed");
   for (const auto& [name, given] : {std::pair{"--trials", trials}, std::pair{"--seed", seed}}) {
     if (given && !options.by_trials) {
-      return failure(Problem::usage, name, "there are no trials it could apply to", "add --propagate trials, or leave it out");
+      return failure(Problem::usage, name, "there are no trials it could apply to",
+                     "add --propagate trials, or leave it out");
     }
   }
   options.trials = trials.value_or(options.trials);
@@ -84,7 +85,9 @@ RunSession::RunSession(const Arguments& arguments, Console& console, bool quiet)
     context_.threads = static_cast<unsigned>(arguments.count("--threads").value_or(context_.threads));
   }
   context_.now = console.now();
-  context_.write = [&console](const std::string& path, const std::string& contents) { return console.write(path, contents); };
+  context_.write = [&console](const std::string& path, const std::string& contents) {
+    return console.write(path, contents);
+  };
 }
 
 Result<ExitCode> finish_measuring(const Measurement& measurement, const Arguments& arguments, Console& console,

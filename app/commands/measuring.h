@@ -13,8 +13,8 @@
 
 namespace coilassay {
 
-/// Reading options and conditions as a set-up that replaces what a bench sheet says. usage for a sign that cannot separate
-/// columns or mark decimals.
+/// Reading options and conditions as a set-up that replaces what a bench sheet says. usage for a sign that cannot
+/// separate columns or mark decimals.
 Result<BenchSetup> stated_bench(const Arguments& arguments);
 
 /// usage: --trials or --seed without trials.
@@ -28,7 +28,10 @@ class RunSession {
   RunSession(const Arguments& arguments, Console& console, bool quiet);
   const RunContext& context() const { return context_; }
   /// Takes the progress line away, before anything else is shown.
-  void end_progress() { progress_.reset(); context_.progress = nullptr; }
+  void end_progress() {
+    progress_.reset();
+    context_.progress = nullptr;
+  }
 
  private:
   std::unique_ptr<Progress> progress_;

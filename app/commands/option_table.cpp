@@ -39,7 +39,9 @@ std::string usage_of(const Command& command) {
   return usage + " [options]";
 }
 
-std::string in_quotes(std::string_view outside) { return "'" + shown(outside, 60) + "'"; }
+std::string in_quotes(std::string_view outside) {
+  return "'" + shown(outside, 60) + "'";
+}
 
 std::string how_to_write(const Option& option) {
   if (option.example.empty()) return "write it like " + usage_of(option);

@@ -38,22 +38,22 @@ enum class ValueKind {
 /// Which values make sense, the same as in a bench sheet; what lies outside is refused with the option as the place.
 enum class Range {
   any,
-  not_zero,             // a factor: an inverted probe is one
-  not_negative,         // strays and losses
+  not_zero,      // a factor: an inverted probe is one
+  not_negative,  // strays and losses
   positive,
   above_absolute_zero,  // of a temperature in degrees Celsius
 };
 
 struct Option {
-  std::string_view name = {};        // "--capacitor", "-o"
+  std::string_view name = {};  // "--capacitor", "-o"
   ValueKind kind = ValueKind::flag;
   std::string_view value_name = {};  // "VALUE"
   std::string_view help = {};        // one sentence without its full stop
   std::string_view example = {};     // a value as typed; checked by a test to be accepted
   Unit unit = Unit::one;             // of a stated or plain value
   Range range = Range::any;
-  double below = HUGE_VAL;           // a stated or plain value must be less than this
-  std::uint64_t least = 0;           // of a count
+  double below = HUGE_VAL;  // a stated or plain value must be less than this
+  std::uint64_t least = 0;  // of a count
   std::uint64_t most = UINT64_MAX;
   std::vector<std::string_view> choices = {};
   bool repeatable = false;
@@ -70,7 +70,7 @@ struct Positional {
   std::string_view help = {};
   std::size_t least = 0;
   std::size_t most = 0;
-  bool files = true;           // for completion
+  bool files = true;  // for completion
 };
 
 struct Example {
@@ -97,7 +97,7 @@ std::string usage_of(const Option& option);
 std::string usage_of(const Command& command);
 
 // For messages.
-std::string in_quotes(std::string_view outside);          // made safe and short
-std::string how_to_write(const Option& option);           // "write it like --capacitor 10nF±1%"
+std::string in_quotes(std::string_view outside);  // made safe and short
+std::string how_to_write(const Option& option);   // "write it like --capacitor 10nF±1%"
 
 }  // namespace coilassay

@@ -5,8 +5,8 @@
 
 namespace coilassay {
 
-/// Before anything else: a reader that goes away ends no one, and a standard stream that is closed stays so, rather than
-/// becoming the next file that is opened.
+/// Before anything else: a reader that goes away ends no one, and a standard stream that is closed stays so, rather
+/// than becoming the next file that is opened.
 void prepare_process();
 
 Surroundings surroundings_of_process();

@@ -20,7 +20,9 @@ namespace {
 
 constexpr std::string_view kOverviewHint = "coilassay help shows all commands";
 
-bool asks_for_help(const std::string& word) { return word == "--help" || word == "-h"; }
+bool asks_for_help(const std::string& word) {
+  return word == "--help" || word == "-h";
+}
 
 /// "-h" for "--help" everywhere, before "--".
 std::vector<std::string> with_long_help(std::vector<std::string> words) {
@@ -70,7 +72,8 @@ Result<ExitCode> dispatch(const std::vector<std::string>& words, Console& consol
   if (words.size() > 1 && asks_for_help(words[1])) return start(*find_command("help"), {first}, console);
   if (words.size() > 1 && !words[1].starts_with('-')) return no_such_command(first + " " + words[1]);
   std::string kinds;
-  for (const Command* command : family) kinds += (kinds.empty() ? "coilassay " : ", coilassay ") + std::string(command->name);
+  for (const Command* command : family)
+    kinds += (kinds.empty() ? "coilassay " : ", coilassay ") + std::string(command->name);
   return failure(Problem::usage, "coilassay " + first, "it does not say what to " + first, kinds);
 }
 

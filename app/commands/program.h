@@ -8,8 +8,9 @@
 
 namespace coilassay {
 
-/// Runs the command the words name. Results go to standard output; an error goes to standard error or, with --json, as one
-/// document to standard output. Output that could not be written is exit code 2, unless its reader simply went away.
+/// Runs the command the words name. Results go to standard output; an error goes to standard error or, with --json, as
+/// one document to standard output. Output that could not be written is exit code 2, unless its reader simply went
+/// away.
 int run_program(const std::vector<std::string>& words, Console& console);
 
 /// The command of that name, or all of its family: "simulate" names "simulate ringdown".

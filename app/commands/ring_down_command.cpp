@@ -54,9 +54,13 @@ Command ring_down_command() {
       .description =
           "Connect a known capacitor across the coil, feed it a little current, let go, and capture the voltage as it "
           "rings. The release and the end of the usable decay are found from the record.\n"
-          "Without a capacitor: frequency, decay and Q of the circuit. With one: also L_s, R_s and Q of the coil itself. "
+          "Without a capacitor: frequency, decay and Q of the circuit. With one: also L_s, R_s and Q of the coil "
+          "itself. "
           "With several files, each with its own capacitor: L and the coil's own capacitance.",
-      .positional = {.name = "FILE", .help = "captures as text tables; '-' is standard input", .least = 1, .most = 1000},
+      .positional = {.name = "FILE",
+                     .help = "captures as text tables; '-' is standard input",
+                     .least = 1,
+                     .most = 1000},
       .groups = {ring_down_options(), reading_options(), window_options(), conditions_options(), uncertainty_options(),
                  output_options(), measuring_options()},
       .examples = {{"ringdown ring.csv --capacitor 10nF±1% --probe-capacitance 13pF±2pF",

@@ -4,8 +4,12 @@ namespace coilassay {
 
 namespace {
 
-Option help_option() { return {.name = "--help", .help = "this page"}; }
-Option quiet_option() { return {.name = "--quiet", .help = "no messages on standard error except errors"}; }
+Option help_option() {
+  return {.name = "--help", .help = "this page"};
+}
+Option quiet_option() {
+  return {.name = "--quiet", .help = "no messages on standard error except errors"};
+}
 Option color_option() {
   return {.name = "--color",
           .kind = ValueKind::choice,
@@ -61,20 +65,22 @@ Option timebase() {
 }
 
 OptionGroup reading_options() {
-  return {.title = "Reading the file",
-          .options = {voltage_column(),
-                      voltage_gain(),
-                      segment(),
-                      {.name = "--delimiter",
-                       .kind = ValueKind::text,
-                       .value_name = "SIGN",
-                       .help = "what separates columns, when the file itself leaves it open: a comma, a semicolon, tab or space",
-                       .example = ";"},
-                      {.name = "--decimal",
-                       .kind = ValueKind::text,
-                       .value_name = "SIGN",
-                       .help = "the decimal sign, when the file itself leaves it open: a point or a comma",
-                       .example = ","}}};
+  return {
+      .title = "Reading the file",
+      .options = {
+          voltage_column(),
+          voltage_gain(),
+          segment(),
+          {.name = "--delimiter",
+           .kind = ValueKind::text,
+           .value_name = "SIGN",
+           .help = "what separates columns, when the file itself leaves it open: a comma, a semicolon, tab or space",
+           .example = ";"},
+          {.name = "--decimal",
+           .kind = ValueKind::text,
+           .value_name = "SIGN",
+           .help = "the decimal sign, when the file itself leaves it open: a point or a comma",
+           .example = ","}}};
 }
 
 OptionGroup ring_down_options() {
@@ -163,26 +169,26 @@ OptionGroup conditions_options() {
 
 OptionGroup uncertainty_options() {
   return {.title = "Uncertainty",
-          .options = {{.name = "--propagate",
-                       .kind = ValueKind::choice,
-                       .value_name = "HOW",
-                       .help = "how errors are carried to the result: by their slopes (the default) or by random trials",
-                       .example = "trials",
-                       .choices = {"first-order", "trials"}},
-                      {.name = "--trials",
-                       .kind = ValueKind::count,
-                       .value_name = "N",
-                       .help = "number of trials, 200000 unless given",
-                       .example = "1000000",
-                       .least = 1000,
-                       .most = 100'000'000},
-                      {.name = "--seed",
-                       .kind = ValueKind::count,
-                       .value_name = "N",
-                       .help = "of the trials, 1 unless given; the same seed gives the same digits",
-                       .example = "7"},
-                      {.name = "--exact-bench",
-                       .help = "no default tolerances: only what is stated and what the data show"}}};
+          .options = {
+              {.name = "--propagate",
+               .kind = ValueKind::choice,
+               .value_name = "HOW",
+               .help = "how errors are carried to the result: by their slopes (the default) or by random trials",
+               .example = "trials",
+               .choices = {"first-order", "trials"}},
+              {.name = "--trials",
+               .kind = ValueKind::count,
+               .value_name = "N",
+               .help = "number of trials, 200000 unless given",
+               .example = "1000000",
+               .least = 1000,
+               .most = 100'000'000},
+              {.name = "--seed",
+               .kind = ValueKind::count,
+               .value_name = "N",
+               .help = "of the trials, 1 unless given; the same seed gives the same digits",
+               .example = "7"},
+              {.name = "--exact-bench", .help = "no default tolerances: only what is stated and what the data show"}}};
 }
 
 OptionGroup output_options() {

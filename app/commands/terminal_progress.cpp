@@ -9,14 +9,18 @@ namespace coilassay {
 
 namespace {
 
-constexpr double kPatience_s = 1;      // work that is done by then needs no line
+constexpr double kPatience_s = 1;  // work that is done by then needs no line
 constexpr double kBetweenLines_s = 0.1;
 
 }  // namespace
 
 TerminalProgress::TerminalProgress(std::ostream& terminal, Script script, std::size_t width,
                                    std::function<double()> seconds)
-    : terminal_(terminal), script_(script), width_(width), seconds_(std::move(seconds)), begun_(seconds_()),
+    : terminal_(terminal),
+      script_(script),
+      width_(width),
+      seconds_(std::move(seconds)),
+      begun_(seconds_()),
       shown_at_(begun_) {}
 
 TerminalProgress::~TerminalProgress() {

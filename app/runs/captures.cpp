@@ -20,7 +20,8 @@ std::string labels_of(const std::vector<Capture>& captures) {
 }
 
 /// The segment a text names: a label first, then a position, as for columns.
-Result<std::size_t> find_segment(const std::vector<Capture>& captures, const std::string& named, const std::string& file) {
+Result<std::size_t> find_segment(const std::vector<Capture>& captures, const std::string& named,
+                                 const std::string& file) {
   for (std::size_t i = 0; i < captures.size(); ++i) {
     if (captures[i].segment == named) return i;
   }
@@ -29,8 +30,7 @@ Result<std::size_t> find_segment(const std::vector<Capture>& captures, const std
     if (*position == static_cast<double>(i + 1)) return i;
   }
   const std::string count = captures.size() == 1 ? "one record" : std::to_string(captures.size()) + " records";
-  return failure(Problem::usage, "--segment",
-                 file + " holds " + count + ", none of them is '" + shown(named, 60) + "'",
+  return failure(Problem::usage, "--segment", file + " holds " + count + ", none of them is '" + shown(named, 60) + "'",
                  captures.size() == 1 ? "leave --segment out" : "choose one of " + labels_of(captures));
 }
 
@@ -38,7 +38,8 @@ Result<std::size_t> find_segment(const std::vector<Capture>& captures, const std
 
 Result<CapturesRead> read_captures(const CaptureRequest& request, const RunContext& context) {
   if (std::count(request.files.begin(), request.files.end(), "-") > 1) {
-    return failure(Problem::usage, "-", "standard input can be read only once", "give '-' once and name the other files");
+    return failure(Problem::usage, "-", "standard input can be read only once",
+                   "give '-' once and name the other files");
   }
   ReadOptions reading = request.reading;
   reading.threads = context.threads;
@@ -55,7 +56,8 @@ Result<CapturesRead> read_captures(const CaptureRequest& request, const RunConte
                      "measure this file with coilassay sweep");
     }
     if (captures->empty()) {
-      return failure(Problem::not_a_capture, file, "no record was found in the file", "check that the export is complete");
+      return failure(Problem::not_a_capture, file, "no record was found in the file",
+                     "check that the export is complete");
     }
     std::size_t chosen = 0;
     if (request.segment) {

@@ -16,7 +16,7 @@ struct CaptureRequest {
   std::vector<std::string> files;      // "-" is standard input, once
   std::optional<std::string> segment;  // label, or position counted from 1; absent: the first
   ReadOptions reading;
-  std::string test;                    // the command that asks, for the messages
+  std::string test;  // the command that asks, for the messages
 };
 
 struct CapturesRead {

@@ -18,7 +18,8 @@ Result<bool> write_figure(const Measurement& measurement, const std::string& pat
 }
 
 Result<void> write_report(const Measurement& measurement, const std::string& path, const RunContext& context) {
-  const std::string page = html_report(measurement, {.program = program_name(), .when = context.now, .operator_name = ""});
+  const std::string page =
+      html_report(measurement, {.program = program_name(), .when = context.now, .operator_name = ""});
   if (!path.ends_with(".pdf")) return context.write(path, page);
   const Result<std::string> pdf = pdf_from_html(page);
   if (!pdf) return failure(pdf);

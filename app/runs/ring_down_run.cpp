@@ -43,8 +43,8 @@ Result<Measurement> run_ring_down(const RingDownJob& job, const RunContext& cont
                    "a ring-down is measured on one column, and the sheet names a low_column to be subtracted",
                    "capture the difference itself, with a differential probe or the instrument's own arithmetic");
   }
-  Result<CapturesRead> read =
-      read_captures({.files = job.files, .segment = job.segment, .reading = bench->reading, .test = "ringdown"}, context);
+  Result<CapturesRead> read = read_captures(
+      {.files = job.files, .segment = job.segment, .reading = bench->reading, .test = "ringdown"}, context);
   if (!read) return failure(read);
 
   RingDownRequest request;

@@ -59,12 +59,18 @@ std::string truth_document(const SimulateRingDownJob& job, const RingDownRecord&
   parameters["drive_channel"] = job.bench.drive_channel;
 
   const RingDownTruth& t = record.truth;
-  nlohmann::ordered_json truth = {{"L_s", t.l_s_h},     {"R_s", t.r_s_ohm},
-                                  {"f_0", t.f_0_hz},    {"f_d", t.f_d_hz},
-                                  {"alpha", t.alpha_per_s}, {"Q", t.q},
-                                  {"Q_coil", t.q_coil}, {"L", job.bench.inductance_h},
-                                  {"C_par", job.bench.parallel_capacitance_f}, {"C_total", t.c_total_f},
-                                  {"peak_current_A", t.peak_current_a}, {"peak_voltage_V", t.peak_voltage_v}};
+  nlohmann::ordered_json truth = {{"L_s", t.l_s_h},
+                                  {"R_s", t.r_s_ohm},
+                                  {"f_0", t.f_0_hz},
+                                  {"f_d", t.f_d_hz},
+                                  {"alpha", t.alpha_per_s},
+                                  {"Q", t.q},
+                                  {"Q_coil", t.q_coil},
+                                  {"L", job.bench.inductance_h},
+                                  {"C_par", job.bench.parallel_capacitance_f},
+                                  {"C_total", t.c_total_f},
+                                  {"peak_current_A", t.peak_current_a},
+                                  {"peak_voltage_V", t.peak_voltage_v}};
   return json_text({{"schema", "coilassay.truth/1"},
                     {"program", program_name()},
                     {"kind", "ringdown"},
@@ -76,7 +82,9 @@ std::string truth_document(const SimulateRingDownJob& job, const RingDownRecord&
 
 }  // namespace
 
-std::span<const RingDownParameter> ring_down_parameters() { return kParameters; }
+std::span<const RingDownParameter> ring_down_parameters() {
+  return kParameters;
+}
 
 Result<RingDownTruth> run_simulate_ring_down(const SimulateRingDownJob& job, const RunContext& context) {
   if (job.truth_file == job.capture_file) {

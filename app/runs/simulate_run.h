@@ -23,12 +23,12 @@ std::span<const RingDownParameter> ring_down_parameters();
 
 struct SimulateRingDownJob {
   synthetic::RingDownBench bench;
-  std::string capture_file;               // "-": standard output
+  std::string capture_file;  // "-": standard output
   std::optional<std::string> truth_file;
 };
 
-/// Writes the capture and, when asked for, the truth: every parameter, the seed, and the exact quantities of the circuit.
-/// usage when both are to go to the same place.
+/// Writes the capture and, when asked for, the truth: every parameter, the seed, and the exact quantities of the
+/// circuit. usage when both are to go to the same place.
 Result<synthetic::RingDownTruth> run_simulate_ring_down(const SimulateRingDownJob& job, const RunContext& context);
 
 }  // namespace coilassay

@@ -2,7 +2,11 @@
 
 namespace coilassay {
 
-std::string version() { return COILASSAY_VERSION; }
-std::string program_name() { return "coilassay " + version(); }
+std::string version() {
+  return COILASSAY_VERSION;
+}
+std::string program_name() {
+  return "coilassay " + version();
+}
 
 }  // namespace coilassay

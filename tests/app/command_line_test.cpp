@@ -12,24 +12,40 @@ using testing::ElementsAre;
 using testing::HasSubstr;
 
 Command made_up(std::size_t most = 9) {
-  return {.name = "weigh",
-          .positional = {.name = "FILE", .help = "what to weigh", .least = 0, .most = most},
-          .groups = {{.title = "All",
-                      .options = {{.name = "--capacitor", .kind = ValueKind::stated, .value_name = "VALUE", .example = "10nF±1%",
-                                   .unit = Unit::farad, .range = Range::positive, .repeatable = true},
-                                  {.name = "--capacitor-loss", .kind = ValueKind::stated, .value_name = "VALUE",
-                                   .range = Range::not_negative},
-                                  {.name = "--from", .kind = ValueKind::plain, .value_name = "TIME", .unit = Unit::second},
-                                  {.name = "--gain", .kind = ValueKind::stated, .value_name = "VALUE", .range = Range::not_zero},
-                                  {.name = "--room", .kind = ValueKind::stated, .value_name = "VALUE",
-                                   .unit = Unit::degree_celsius, .range = Range::above_absolute_zero},
-                                  {.name = "--name", .kind = ValueKind::text, .value_name = "TEXT"},
-                                  {.name = "--trials", .kind = ValueKind::count, .value_name = "N", .example = "1000",
-                                   .least = 10, .most = 5000},
-                                  {.name = "--how", .kind = ValueKind::choice, .value_name = "HOW", .choices = {"fast", "well"}},
-                                  {.name = "--json"},
-                                  {.name = "--help"},
-                                  {.name = "-o", .kind = ValueKind::file, .value_name = "FILE"}}}}};
+  return {
+      .name = "weigh",
+      .positional = {.name = "FILE", .help = "what to weigh", .least = 0, .most = most},
+      .groups = {
+          {.title = "All",
+           .options = {{.name = "--capacitor",
+                        .kind = ValueKind::stated,
+                        .value_name = "VALUE",
+                        .example = "10nF±1%",
+                        .unit = Unit::farad,
+                        .range = Range::positive,
+                        .repeatable = true},
+                       {.name = "--capacitor-loss",
+                        .kind = ValueKind::stated,
+                        .value_name = "VALUE",
+                        .range = Range::not_negative},
+                       {.name = "--from", .kind = ValueKind::plain, .value_name = "TIME", .unit = Unit::second},
+                       {.name = "--gain", .kind = ValueKind::stated, .value_name = "VALUE", .range = Range::not_zero},
+                       {.name = "--room",
+                        .kind = ValueKind::stated,
+                        .value_name = "VALUE",
+                        .unit = Unit::degree_celsius,
+                        .range = Range::above_absolute_zero},
+                       {.name = "--name", .kind = ValueKind::text, .value_name = "TEXT"},
+                       {.name = "--trials",
+                        .kind = ValueKind::count,
+                        .value_name = "N",
+                        .example = "1000",
+                        .least = 10,
+                        .most = 5000},
+                       {.name = "--how", .kind = ValueKind::choice, .value_name = "HOW", .choices = {"fast", "well"}},
+                       {.name = "--json"},
+                       {.name = "--help"},
+                       {.name = "-o", .kind = ValueKind::file, .value_name = "FILE"}}}}};
 }
 
 /// "--name=value" of each option, in order.
@@ -85,7 +101,8 @@ TEST(CommandLine, TakesAShortOptionWithItsValueAttached) {
 
 TEST(CommandLine, KeepsRepeatedOptionsInTheirOrder) {
   const Command command = made_up();
-  const auto line = split_command_line(command, {"--capacitor", "1n", "a", "--capacitor=2n", "--json", "--capacitor", "3n"});
+  const auto line =
+      split_command_line(command, {"--capacitor", "1n", "a", "--capacitor=2n", "--json", "--capacitor", "3n"});
   ASSERT_TRUE(line);
   EXPECT_THAT(options_of(*line), ElementsAre("--capacitor=1n", "--capacitor=2n", "--capacitor=3n", "--json="));
 }
@@ -105,7 +122,8 @@ TEST(CommandLine, TakesAMinusAloneAsStandardInput) {
 }
 
 TEST(CommandLine, NamesTheNearestOption) {
-  EXPECT_THAT(trouble({"--capactor", "3"}), HasSubstr("--capactor: weigh has no such option -> did you mean --capacitor?"));
+  EXPECT_THAT(trouble({"--capactor", "3"}),
+              HasSubstr("--capactor: weigh has no such option -> did you mean --capacitor?"));
   EXPECT_THAT(trouble({"--cap=1n"}), HasSubstr("--cap: weigh has no such option -> did you mean --capacitor?"));
   EXPECT_THAT(trouble({"--capacitor-l=1"}), HasSubstr("did you mean --capacitor-loss?"));
   EXPECT_THAT(trouble({"--entirely-different"}), HasSubstr("-> coilassay help weigh lists its options"));
@@ -113,14 +131,17 @@ TEST(CommandLine, NamesTheNearestOption) {
 }
 
 TEST(CommandLine, MissesAValueThatIsNotThere) {
-  EXPECT_THAT(trouble({"--capacitor"}), HasSubstr("--capacitor: the option has no value -> write it like --capacitor 10nF±1%"));
+  EXPECT_THAT(trouble({"--capacitor"}),
+              HasSubstr("--capacitor: the option has no value -> write it like --capacitor 10nF±1%"));
   EXPECT_THAT(trouble({"--capacitor", "--json"}), HasSubstr("--capacitor: the option has no value"));
   EXPECT_THAT(trouble({"--name", "--", "a"}), HasSubstr("--name: the option has no value"));
   EXPECT_THAT(trouble({"--name="}), HasSubstr("--name: the value is empty"));
   EXPECT_THAT(trouble({"--name", ""}), HasSubstr("--name: the value is empty"));
 }
 
-TEST(CommandLine, RefusesAValueForAFlag) { EXPECT_THAT(trouble({"--json=no"}), HasSubstr("--json: the option takes no value")); }
+TEST(CommandLine, RefusesAValueForAFlag) {
+  EXPECT_THAT(trouble({"--json=no"}), HasSubstr("--json: the option takes no value"));
+}
 
 TEST(CommandLine, RefusesAnOptionTwiceUnlessItMayRepeat) {
   EXPECT_THAT(trouble({"--from", "1s", "--from=2s"}), HasSubstr("--from: the option is given twice"));
@@ -187,9 +208,36 @@ TEST(Arguments, RefusesBadValuesAtTheirOption) {
 // Any mixture of words is either read or refused in words, and nothing else happens.
 TEST(CommandLine, SurvivesAnyMixtureOfWords) {
   const Command command = made_up();
-  const std::vector<std::string> words = {"--capacitor", "--from", "--json", "-o", "--", "-", "", "10nF", "±", "--how=well", "--how",
-                                          "--help", "-5us", "[a,b]", "--name=", "=", "---", "--=", "-o=", "-ox", "a.csv", "\xff\xfe",
-                                          "--capacitor=1n±1%", "1e999", "-h", "--json=1", "++", "/x:1", "{}", std::string(5000, 'x')};
+  const std::vector<std::string> words = {"--capacitor",
+                                          "--from",
+                                          "--json",
+                                          "-o",
+                                          "--",
+                                          "-",
+                                          "",
+                                          "10nF",
+                                          "±",
+                                          "--how=well",
+                                          "--how",
+                                          "--help",
+                                          "-5us",
+                                          "[a,b]",
+                                          "--name=",
+                                          "=",
+                                          "---",
+                                          "--=",
+                                          "-o=",
+                                          "-ox",
+                                          "a.csv",
+                                          "\xff\xfe",
+                                          "--capacitor=1n±1%",
+                                          "1e999",
+                                          "-h",
+                                          "--json=1",
+                                          "++",
+                                          "/x:1",
+                                          "{}",
+                                          std::string(5000, 'x')};
   Random random(20260304);
   std::size_t read = 0;
   for (int round = 0; round < 3000; ++round) {

@@ -28,6 +28,8 @@ inline Ended run(const std::vector<std::string>& words, Surroundings surrounding
   return {code, fake.out.str(), fake.error.str()};
 }
 
-inline bool contains(const std::string& text, std::string_view part) { return text.find(part) != std::string::npos; }
+inline bool contains(const std::string& text, std::string_view part) {
+  return text.find(part) != std::string::npos;
+}
 
 }  // namespace coilassay::test

@@ -86,15 +86,18 @@ TEST(Reference, InDocsIsCurrent) {
   std::ifstream file(project_file("docs/commands.md"));
   std::ostringstream text;
   text << file.rdbuf();
-  EXPECT_EQ(text.str(), markdown_reference(commands())) << "write it anew: coilassay help --markdown > docs/commands.md";
+  EXPECT_EQ(text.str(), markdown_reference(commands()))
+      << "write it anew: coilassay help --markdown > docs/commands.md";
 }
 
 /// What bash offers after these words, the last of which is being typed.
 std::string completed(const std::vector<std::string>& words) {
   const std::string script = testing::TempDir() + "coilassay_completion.bash";
   std::ofstream(script) << bash_completion(commands());
-  std::string line = "bash --norc -c 'source \"$0\"; COMP_WORDS=(\"$@\"); COMP_CWORD=$(($# - 1)); _coilassay; "
-                     "printf \"%s\\n\" \"${COMPREPLY[@]}\"' '" + script + "'";
+  std::string line =
+      "bash --norc -c 'source \"$0\"; COMP_WORDS=(\"$@\"); COMP_CWORD=$(($# - 1)); _coilassay; "
+      "printf \"%s\\n\" \"${COMPREPLY[@]}\"' '" +
+      script + "'";
   for (const std::string& word : words) line += " '" + word + "'";
   FILE* pipe = popen(line.c_str(), "r");
   std::string out;

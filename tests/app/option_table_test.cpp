@@ -5,6 +5,7 @@
 #include "app/commands/arguments.h"
 #include "app/commands/command_list.h"
 #include "app/runs/simulate_run.h"
+#include "base/number_text.h"
 #include "report/text_layout.h"
 
 namespace coilassay {
@@ -71,7 +72,8 @@ TEST(OptionTable, ShowsExamplesOfCommandsThatParse) {
           words.push_back(std::exchange(word, ""));
         }
       }
-      if (const auto bar = std::find(words.begin(), words.end(), "|"); bar != words.end()) words.erase(bar, words.end());
+      if (const auto bar = std::find(words.begin(), words.end(), "|"); bar != words.end())
+        words.erase(bar, words.end());
       const Result<Arguments> read = read_arguments(command, words);
       EXPECT_TRUE(read) << (read ? "" : read.error().place + ": " + read.error().finding);
     }
@@ -94,11 +96,29 @@ TEST(OptionTable, GivesEveryParameterOfTheSimulatedBenchAnOption) {
   }
 }
 
+// "inductance, 47 µH unless given": what the help says must be what the bench takes.
+TEST(OptionTable, StatesTheDefaultsOfTheSimulatedBench) {
+  const Command* simulate = find_command("simulate ringdown");
+  const synthetic::RingDownBench defaults;
+  for (const RingDownParameter& parameter : ring_down_parameters()) {
+    if (defaults.*parameter.member == 0) continue;
+    std::string name = "--" + std::string(parameter.name);
+    std::replace(name.begin(), name.end(), '_', '-');
+    const std::string_view help = simulate->find(name)->help;
+    const std::size_t end = help.find(" unless given");
+    ASSERT_NE(end, std::string_view::npos) << name;
+    const std::size_t begin = help.rfind(", ", end) + 2;
+    const auto stated = parse_value(help.substr(begin, end - begin), parameter.unit, name);
+    ASSERT_TRUE(stated) << name << ": " << stated.error().finding;
+    EXPECT_EQ(stated->value, defaults.*parameter.member) << name;
+  }
+}
+
 TEST(OptionTable, NamesSimulatedThingsLikeMeasuredOnes) {
   const Command* measure = find_command("ringdown");
   const Command* simulate = find_command("simulate ringdown");
-  for (const char* name : {"--capacitor", "--capacitor-dissipation", "--probe-capacitance", "--probe-resistance", "--across",
-                           "--across-capacitance", "--timebase"}) {
+  for (const char* name : {"--capacitor", "--capacitor-dissipation", "--probe-capacitance", "--probe-resistance",
+                           "--across", "--across-capacitance", "--timebase"}) {
     ASSERT_NE(measure->find(name), nullptr) << name;
     ASSERT_NE(simulate->find(name), nullptr) << name;
     EXPECT_EQ(measure->find(name)->unit, simulate->find(name)->unit) << name;

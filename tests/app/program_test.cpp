@@ -36,7 +36,8 @@ TEST(Program, SaysWhatIsWrongWithACommandLine) {
   const std::vector<Mistyped> table = {
       {{"ringdwn"}, "ringdwn: there is no such command\n  try: did you mean coilassay ringdown?"},
       {{"simulte"}, "did you mean coilassay simulate?"},
-      {{"simulate", "ringdwn"}, "simulate ringdwn: there is no such command\n  try: did you mean coilassay simulate ringdown?"},
+      {{"simulate", "ringdwn"},
+       "simulate ringdwn: there is no such command\n  try: did you mean coilassay simulate ringdown?"},
       {{"simulate"}, "coilassay simulate: it does not say what to simulate\n  try: coilassay simulate ringdown"},
       {{"zzzzzzzzzzzzzz"}, "try: coilassay help shows all commands"},
       {{"--verbose", "ringdown"}, "--verbose: the command comes first"},

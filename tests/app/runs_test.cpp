@@ -35,7 +35,9 @@ struct FakeContext {
   RunContext context;
 };
 
-StatedValue farad(double value) { return StatedValue::exact(value, Unit::farad); }
+StatedValue farad(double value) {
+  return StatedValue::exact(value, Unit::farad);
+}
 
 std::string simulated(const SimulateRingDownJob& job) {
   FakeContext fake;
@@ -54,10 +56,11 @@ std::string ring_csv() {
 TEST(BenchOfAJob, TakesStatedValuesBeforeThoseOfTheSheet) {
   const TemporaryFolder folder;
   RingDownJob job;
-  job.bench_sheet = folder.file("bench.toml",
-                                "[voltage]\ncolumn = \"CH1\"\ninput_capacitance = \"13 pF\"\ninput_resistance = \"10 Mohm\"\n"
-                                "[timebase]\ntolerance = \"25 ppm\"\n"
-                                "[[capacitor]]\nvalue = \"10 nF ± 1 %\"\ndissipation_factor = \"0.0005\"\n");
+  job.bench_sheet =
+      folder.file("bench.toml",
+                  "[voltage]\ncolumn = \"CH1\"\ninput_capacitance = \"13 pF\"\ninput_resistance = \"10 Mohm\"\n"
+                  "[timebase]\ntolerance = \"25 ppm\"\n"
+                  "[[capacitor]]\nvalue = \"10 nF ± 1 %\"\ndissipation_factor = \"0.0005\"\n");
   auto bench = bench_of(job);
   ASSERT_TRUE(bench) << bench.error().place << bench.error().finding;
   ASSERT_EQ(bench->capacitors.size(), 1u);
@@ -98,7 +101,8 @@ TEST(BenchOfAJob, GivesDissipationToOneCapacitorOrToEach) {
 }
 
 TEST(Captures, RefuseStandardInputTwice) {
-  const auto read = read_captures({.files = {"-", "a.csv", "-"}, .segment = std::nullopt, .reading = {}, .test = "ringdown"}, {});
+  const auto read =
+      read_captures({.files = {"-", "a.csv", "-"}, .segment = std::nullopt, .reading = {}, .test = "ringdown"}, {});
   ASSERT_FALSE(read);
   EXPECT_EQ(read.error().problem, Problem::usage);
   EXPECT_THAT(read.error().finding, HasSubstr("only once"));
@@ -168,7 +172,8 @@ TEST(Outputs, WriteTheReportEvenWhenTheFigureCannotBeStored) {
   EXPECT_THAT(fake.files.at("a.html"), HasSubstr("2026-03-04"));
 
   fake.refused = "a.html";
-  EXPECT_EQ(write_outputs(measurement, {.figure = std::nullopt, .report = "a.html"}, fake.context).error().finding, "no room");
+  EXPECT_EQ(write_outputs(measurement, {.figure = std::nullopt, .report = "a.html"}, fake.context).error().finding,
+            "no room");
 }
 
 TEST(RingDownRun, MeasuresASimulatedCoil) {

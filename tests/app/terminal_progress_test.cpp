@@ -30,7 +30,10 @@ TEST(TerminalProgress, StaysSilentForASecondAndTidiesUp) {
 
 TEST(TerminalProgress, LeavesNoTraceOfQuickWork) {
   std::ostringstream terminal;
-  { TerminalProgress progress(terminal, Script::utf8, 80, [] { return 0.0; }); progress.advance("reading", 1, 2); }
+  {
+    TerminalProgress progress(terminal, Script::utf8, 80, [] { return 0.0; });
+    progress.advance("reading", 1, 2);
+  }
   EXPECT_EQ(terminal.str(), "");
 }
 
