@@ -36,6 +36,30 @@ Result<std::size_t> find_segment(const std::vector<Capture>& captures, const std
 
 }  // namespace
 
+Result<Capture> chosen_capture(Recording recording, const std::string& file, const CaptureRequest& request,
+                               std::vector<std::string>& notes) {
+  auto* captures = std::get_if<std::vector<Capture>>(&recording);
+  if (captures == nullptr) {
+    return failure(Problem::usage, file,
+                   "the file holds impedance against frequency, and " + request.test + " needs a waveform over time",
+                   "measure this file with coilassay sweep");
+  }
+  if (captures->empty()) {
+    return failure(Problem::not_a_capture, file, "no record was found in the file",
+                   "check that the export is complete");
+  }
+  std::size_t chosen = 0;
+  if (request.segment) {
+    const Result<std::size_t> found = find_segment(*captures, *request.segment, shown(file));
+    if (!found) return failure(found);
+    chosen = *found;
+  } else if (captures->size() > 1) {
+    notes.push_back(shown(file) + " holds " + std::to_string(captures->size()) + " records (" + labels_of(*captures) +
+                    "): the first was measured, --segment takes another");
+  }
+  return std::move((*captures)[chosen]);
+}
+
 Result<CapturesRead> read_captures(const CaptureRequest& request, const RunContext& context) {
   if (std::count(request.files.begin(), request.files.end(), "-") > 1) {
     return failure(Problem::usage, "-", "standard input can be read only once",
@@ -49,26 +73,9 @@ Result<CapturesRead> read_captures(const CaptureRequest& request, const RunConte
   for (const std::string& file : request.files) {
     Result<Recording> recording = read_recording(file, reading);
     if (!recording) return failure(recording);
-    auto* captures = std::get_if<std::vector<Capture>>(&*recording);
-    if (captures == nullptr) {
-      return failure(Problem::usage, file,
-                     "the file holds impedance against frequency, and " + request.test + " needs a waveform over time",
-                     "measure this file with coilassay sweep");
-    }
-    if (captures->empty()) {
-      return failure(Problem::not_a_capture, file, "no record was found in the file",
-                     "check that the export is complete");
-    }
-    std::size_t chosen = 0;
-    if (request.segment) {
-      const Result<std::size_t> found = find_segment(*captures, *request.segment, shown(file));
-      if (!found) return failure(found);
-      chosen = *found;
-    } else if (captures->size() > 1) {
-      read.notes.push_back(shown(file) + " holds " + std::to_string(captures->size()) + " records (" +
-                           labels_of(*captures) + "): the first was measured, --segment takes another");
-    }
-    read.captures.push_back(std::move((*captures)[chosen]));
+    Result<Capture> capture = chosen_capture(std::move(*recording), file, request, read.notes);
+    if (!capture) return failure(capture);
+    read.captures.push_back(std::move(*capture));
   }
   return read;
 }

@@ -24,7 +24,12 @@ struct CapturesRead {
   std::vector<std::string> notes;  // what was chosen where a file left a choice
 };
 
-/// One capture per file. usage: standard input twice, a file that holds a sweep, a segment that is not there.
+/// The capture to measure in what was read from `file`; a choice that was made for the user is added to `notes`. usage:
+/// a sweep, a segment that is not there.
+Result<Capture> chosen_capture(Recording recording, const std::string& file, const CaptureRequest& request,
+                               std::vector<std::string>& notes);
+
+/// One capture per file. usage: standard input twice, and what chosen_capture() refuses.
 Result<CapturesRead> read_captures(const CaptureRequest& request, const RunContext& context);
 
 }  // namespace coilassay

@@ -108,6 +108,16 @@ TEST(Captures, RefuseStandardInputTwice) {
   EXPECT_THAT(read.error().finding, HasSubstr("only once"));
 }
 
+TEST(Captures, SendASweepToItsOwnCommand) {
+  std::vector<std::string> notes;
+  const auto chosen =
+      chosen_capture(Sweep{}, "z.s1p", {.files = {}, .segment = {}, .reading = {}, .test = "ringdown"}, notes);
+  ASSERT_FALSE(chosen);
+  EXPECT_EQ(chosen.error().place, "z.s1p");
+  EXPECT_THAT(chosen.error().finding, HasSubstr("ringdown needs a waveform over time"));
+  EXPECT_THAT(chosen.error().remedy, HasSubstr("coilassay sweep"));
+}
+
 TEST(Captures, NameTheSegmentsThereAreWhenOneIsNot) {
   const TemporaryFolder folder;
   const std::string file = folder.file("ring.csv", ring_csv());
