@@ -57,6 +57,18 @@ BlockSums block_sums(std::span<const double> y, std::size_t length, std::size_t 
   const PhaseTable table(omega, demodulate ? std::min(length, kTable) : 0);
   const Kernels& k = kernels();
   const double* v = y.data();
+  if (!demodulate && length < 16) {
+    // Too short for lanes to pay.
+    for (std::size_t block = 0; block < count; ++block) {
+      for (std::size_t m = 0; m < length; ++m) {
+        const double x = v[m] - reference;
+        sums.sum[block] += x;
+        sums.square[block] += x * x;
+      }
+      v += length;
+    }
+    return sums;
+  }
   for (std::size_t block = 0; block < count; ++block) {
     double sum = 0, square = 0;
     std::complex<double> rotated = 0;

@@ -29,7 +29,7 @@ struct DampedSine {
   double operator()(double n) const;
 };
 
-/// The model at first_n, first_n + 1, ...: by recurrence, within 1e-12 of the amplitude for n up to 1e7.
+/// The model at first_n, first_n + 1, ...: by recurrence, within 2e-12 of the amplitude for n up to 1e7.
 void evaluate(const DampedSine& model, double first_n, std::span<double> out);
 
 struct DampedSineOptions {

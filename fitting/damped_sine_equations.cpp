@@ -6,6 +6,7 @@
 #include <cassert>
 #include <cmath>
 #include <complex>
+#include <numbers>
 
 namespace coilassay {
 namespace {
@@ -284,8 +285,13 @@ DampedPair damped_pair(const Shape& shape, double n) {
             e * n * (1 - x / 6 * (1 - x / 20 * (1 - x / 42 * (1 - x / 72))))};
   }
   if (x > 0) {
-    const double w = std::sqrt(shape.q), e = std::exp(-shape.a * n);
-    return {e * std::cos(w * n), e * std::sin(w * n) / w};
+    // The phase in extended precision: after 10^7 samples a double would be off by 10^-9 rad.
+    constexpr long double kTurn = 2 * std::numbers::pi_v<long double>;
+    const long double w = std::sqrt(static_cast<long double>(shape.q));
+    const long double phase = w * static_cast<long double>(n);
+    const auto turned = static_cast<double>(phase - kTurn * std::floor(phase / kTurn));
+    const double e = std::exp(-shape.a * n);
+    return {e * std::cos(turned), e * std::sin(turned) / static_cast<double>(w)};
   }
   // Both exponents apart: cosh alone would overflow where the damped product is harmless.
   const double r = std::sqrt(-shape.q);
