@@ -1,0 +1,27 @@
+#!/bin/sh
+# The statistical claims at full size, one program per claim (tests/proof/). Takes long; each program prints its figures and
+# fails when its claim does not hold.
+#   sh tests/proof.sh [PART OF A NAME]     only the programs whose name holds it
+set -eu
+cd "$(dirname "$0")/.."
+. cmake/debian-packages.sh
+
+# shellcheck disable=SC2086
+need_packages $packages_to_build $packages_to_run $packages_to_test
+if [ ! -f build/build.ninja ] || ! grep -q '^COILASSAY_TESTS:BOOL=ON' build/CMakeCache.txt; then
+  cmake --preset default -DCOILASSAY_TESTS=ON
+fi
+cmake --build --preset default --target proofs
+
+failed=
+found=
+for source in tests/proof/*.cpp; do
+  name=$(basename "$source" .cpp)
+  case $name in *"${1:-}"*) ;; *) continue ;; esac
+  [ -x "build/bin/proof_$name" ] || continue  # part of another program
+  found=yes
+  echo "== $name"
+  "build/bin/proof_$name" || failed="$failed $name"
+done
+[ -n "$found" ] || { echo "no proof has '${1:-}' in its name" >&2; exit 2; }
+[ -z "$failed" ] || { echo "does not hold:$failed" >&2; exit 1; }
