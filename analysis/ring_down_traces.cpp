@@ -3,6 +3,7 @@
 #include <numbers>
 
 #include "analysis/ring_down_decay.h"
+#include "base/random.h"
 
 namespace coilassay {
 
@@ -11,33 +12,18 @@ namespace {
 constexpr std::size_t kPoints = 2000;
 
 /// Smallest and largest of each block of samples, in the order they stand: no crest is lost.
-Table thin_out(const char* name, const char* value_name, const CaptureDecay& decay, std::size_t first, std::size_t end,
-               bool residual) {
-  Table table{name, {{"time_s", Unit::second, {}}, {value_name, Unit::volt, {}}}};
+Table thin_out(const CaptureDecay& decay, std::size_t first, std::size_t end) {
+  Table table{"trace_capture", {{"time_s", Unit::second, {}}, {"voltage_V", Unit::volt, {}}}};
   const std::size_t block = std::max<std::size_t>((end - first) / (kPoints / 2), 1);
-  const DampedSine& model = decay.model();
-  const bool both = decay.structure.modes.has_value();
-  const auto value_at = [&](std::size_t i) {
-    double v = decay.samples[i];
-    if (residual) {
-      const double n = static_cast<double>(i) - static_cast<double>(decay.decay->first);
-      v -= model(n);
-      if (both) v -= decay.structure.modes->second(n);
-    }
-    return decay.gain * v;
-  };
   const auto keep = [&](std::size_t i) {
     table.columns[0].values.push_back(decay.start_s + static_cast<double>(i) * decay.step_s);
-    table.columns[1].values.push_back(value_at(i));
+    table.columns[1].values.push_back(decay.gain * decay.samples[i]);
   };
   for (std::size_t at = first; at < end; at += block) {
     std::size_t low = at, high = at;
-    const std::size_t stop = std::min(at + block, end);
-    // A residual costs a model value each: some hundred per block show its extent well enough.
-    const std::size_t stride = residual ? block / 64 + 1 : 1;
     double least = INFINITY, most = -INFINITY;
-    for (std::size_t i = at; i < stop; i += stride) {
-      const double v = residual ? value_at(i) : decay.samples[i];
+    for (std::size_t i = at; i < std::min(at + block, end); ++i) {
+      const double v = decay.samples[i];
       if (v < least) least = v, low = i;
       if (v > most) most = v, high = i;
     }
@@ -48,14 +34,30 @@ Table thin_out(const char* name, const char* value_name, const CaptureDecay& dec
   return table;
 }
 
+/// One residual of each block, its place in the block scattered so that no beat with the signal shows: extremes would make
+/// the noise look like two bands.
+Table some_residuals(const CaptureDecay& decay, std::size_t first, std::size_t end) {
+  Table table{"trace_residual", {{"time_s", Unit::second, {}}, {"residual_V", Unit::volt, {}}}};
+  const std::size_t block = std::max<std::size_t>((end - first) / kPoints, 1);
+  const DampedSine& model = decay.model();
+  Random random(1);
+  for (std::size_t at = first; at < end; at += block) {
+    const std::size_t i = std::min(at + random.below(block), end - 1);
+    const double n = static_cast<double>(i) - static_cast<double>(decay.decay->first);
+    double v = decay.samples[i] - model(n);
+    if (decay.structure.modes) v -= decay.structure.modes->second(n);
+    if (std::isnan(v)) continue;
+    table.columns[0].values.push_back(decay.start_s + static_cast<double>(i) * decay.step_s);
+    table.columns[1].values.push_back(decay.gain * v);
+  }
+  return table;
+}
+
 }  // namespace
 
 void add_traces(Measurement& result, const CaptureDecay& decay) {
   if (!decay.decay) {
-    if (!decay.samples.empty()) {
-      CaptureDecay whole = decay;
-      result.tables.push_back(thin_out("trace_capture", "voltage_V", whole, 0, decay.samples.size(), false));
-    }
+    if (!decay.samples.empty()) result.tables.push_back(thin_out(decay, 0, decay.samples.size()));
     return;
   }
   const DampedSine& model = decay.model();
@@ -65,7 +67,7 @@ void add_traces(Measurement& result, const CaptureDecay& decay) {
   const std::size_t end =
       std::min(decay.decay->end, first + static_cast<std::size_t>(std::fmin(lasting, 1e15)) + 16);
   const std::size_t lead = std::min(first, (end - first) / 6);
-  result.tables.push_back(thin_out("trace_capture", "voltage_V", decay, first - lead, end, false));
+  result.tables.push_back(thin_out(decay, first - lead, end));
 
   Table fit{"trace_fit",
             {{"time_s", Unit::second, {}},
@@ -87,7 +89,7 @@ void add_traces(Measurement& result, const CaptureDecay& decay) {
     fit.columns[3].values.push_back(decay.gain * (model.c - half));
   }
   result.tables.push_back(std::move(fit));
-  result.tables.push_back(thin_out("trace_residual", "residual_V", decay, first, end, true));
+  result.tables.push_back(some_residuals(decay, first, end));
 }
 
 }  // namespace coilassay
