@@ -46,7 +46,7 @@ std::size_t samples_above_a_step(const DampedSine& model, double resolution, std
 
 // What speaks against calling it a decaying oscillation; nothing when nothing does.
 std::optional<Error> refusal(const Settled& settled, const DampedSine& model, const NoiseJudgement& noise,
-                             std::size_t samples) {
+                             std::size_t samples, double resolution) {
   const double gain = settled.solution.gain(), variance = noise.sigma * noise.sigma;
   // Noise alone gives a gain of 2 ln(N) + 2 x with a probability of a few e^-x, over all frequencies and decays.
   const double threshold = 2 * (std::log(static_cast<double>(samples)) + 14);
@@ -55,7 +55,9 @@ std::optional<Error> refusal(const Settled& settled, const DampedSine& model, co
   // With few cycles a wandering level is taken for an oscillation, but leaves more over than a second mode would.
   const double cycles = model.damped_omega() * static_cast<double>(samples) / (2 * std::numbers::pi);
   const bool slow = cycles < 1.5 || model.damped_omega() < 4 * std::abs(model.a);
-  if (noise.structure > (slow ? kMostStructure : 0.05) * gain && cycles < 6) {
+  // Rounding to coarse steps hangs together as well; it leaves at most a quarter of a squared step per sample.
+  const double rounding = resolution > 0 ? resolution * resolution / 4 * static_cast<double>(samples) : 0;
+  if (noise.structure > (slow ? kMostStructure : 0.05) * gain + rounding && cycles < 6) {
     return nothing("what is there has a shape that no decaying oscillation has (a step, a pulse or a drift)");
   }
   // Slow shapes look like many things. A drift that a cubic describes as well is no decay.
@@ -142,7 +144,7 @@ Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSin
       noise = judged;
     }
   }
-  if (auto error = refusal(settled, model_of(settled), noise, y.size())) {
+  if (auto error = refusal(settled, model_of(settled), noise, y.size(), options.resolution)) {
     // The frequency that was given may be wrong; the record itself is asked before it is refused.
     if (options.near_omega > 0) return fit_damped_sine(y, {.resolution = options.resolution});
     return tl::make_unexpected(*error);
