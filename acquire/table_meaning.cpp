@@ -146,7 +146,8 @@ void check_angle(const ChannelMeaning& channel, const std::vector<double>& value
 }  // namespace
 
 Result<TableMeaning> understand_columns(const std::string& name, const std::vector<TableLine>& lines,
-                                        const TableDialect& dialect, const TableHeader& header, const ReadOptions& options) {
+                                        const TableDialect& dialect, const TableHeader& header, const ReadOptions& options,
+                                        bool is_sweep) {
   const ColumnJudge judge(lines, dialect, header);
   TableMeaning meaning;
   meaning.layout.delimiter = dialect.delimiter;
@@ -156,14 +157,14 @@ Result<TableMeaning> understand_columns(const std::string& name, const std::vect
   meaning.count = header.count;
   meaning.segment = header.segment;
 
-  const auto time = judge.time_column();
+  const auto time = is_sweep ? std::nullopt : judge.time_column();
   for (std::size_t c = 0; c < dialect.width; ++c) {
     const ColumnHeading& heading = header.columns[c];
     ColumnPlan plan;
     if (time == c) {
       meaning.time = meaning.layout.stored();
       plan.shift = time_shift(heading.name, heading, judge.values(c), meaning.interval_s, meaning.findings);
-    } else if (judge.is_index(c) || judge.empty(c)) {
+    } else if (judge.empty(c) || (judge.is_index(c) && !is_sweep)) {
       plan.stored = false;
     } else {
       ChannelMeaning channel;
@@ -180,7 +181,7 @@ Result<TableMeaning> understand_columns(const std::string& name, const std::vect
       if (const auto found = header.resolution.find(channel.name); found != header.resolution.end()) {
         channel.resolution = found->second;
       }
-      if (!heading.unit) check_angle(channel, judge.values(c), meaning.findings);
+      if (!heading.unit && !is_sweep) check_angle(channel, judge.values(c), meaning.findings);
       meaning.channels.push_back(channel);
     }
     meaning.layout.columns.push_back(plan);

@@ -32,13 +32,14 @@ struct TableMeaning {
   std::vector<Finding> findings;         // contradictions already seen in the headings
 };
 
-/// Decides from the headings and the first rows of numbers.
+/// Decides from the headings and the first rows of numbers. In a sweep no column is time: every column is a channel.
 ///
 /// Time is the column named so or with a unit of time; without names, a first column that rises evenly and is no row
 /// number (whole numbers in steps of one). Where a heading's unit and a stated interval contradict each other, the
 /// stamps decide which of them is right, and a finding says so.
 /// @return not_a_capture when no column is left for a channel.
 Result<TableMeaning> understand_columns(const std::string& name, const std::vector<TableLine>& lines,
-                                        const TableDialect& dialect, const TableHeader& header, const ReadOptions& options);
+                                        const TableDialect& dialect, const TableHeader& header, const ReadOptions& options,
+                                        bool is_sweep = false);
 
 }  // namespace coilassay

@@ -12,6 +12,7 @@
 #include "acquire/table_meaning.h"
 #include "acquire/table_pipeline.h"
 #include "acquire/table_store.h"
+#include "acquire/table_sweep.h"
 #include "base/outside_text.h"
 
 namespace coilassay {
@@ -38,7 +39,16 @@ class TableRead {
     if (const auto got = blocks_.next(block_); !got) return failure(got);
     if (const auto understood = understand(); !understood) return failure(understood);
     if (const auto done = read_rows(); !done) return failure(done);
-    return captures();
+    std::vector<Capture> list = captures();
+    if (!sweep_plan_) return Recording(std::move(list));
+    if (list.size() > 1) {
+      return failure(Problem::not_a_capture, name_, fmt::format("it holds {} sweeps one after the other", list.size()),
+                     "put each of them into a file of its own");
+    }
+    list.front().source.name = name_;
+    auto sweep = sweep_of(std::move(list.front()), *sweep_plan_);
+    if (!sweep) return failure(sweep);
+    return Recording(std::move(*sweep));
   }
 
  private:
@@ -61,7 +71,8 @@ class TableRead {
     const std::string_view preamble = text.substr(0, static_cast<std::size_t>(lines[dialect_.first_row].text.data() - text.data()));
     if (!utf8::is_valid(preamble.begin(), preamble.end())) encoding_ = "windows-1252";
     header_ = understand_header(lines, dialect_);
-    auto meaning = understand_columns(name_, lines, dialect_, header_, options_);
+    sweep_plan_ = plan_sweep(header_);
+    auto meaning = understand_columns(name_, lines, dialect_, header_, options_, sweep_plan_.has_value());
     if (!meaning) return failure(meaning);
     meaning_ = std::move(*meaning);
     const TableLine& first = lines[dialect_.first_row];
@@ -106,9 +117,9 @@ class TableRead {
            !options_.progress->advance("reading " + shown(name_), blocks_.bytes_read(), source_.size_hint());
   }
 
-  Recording captures() {
-    std::vector<Capture> captures = store_->finish();
-    for (Capture& capture : captures) {
+  std::vector<Capture> captures() {
+    std::vector<Capture> list = store_->finish();
+    for (Capture& capture : list) {
       capture.dialect.format = "table";
       capture.dialect.encoding = encoding_;
       capture.dialect.delimiter = std::string(1, dialect_.delimiter);
@@ -116,7 +127,7 @@ class TableRead {
       capture.dialect.first_data_line = first_line_;
       capture.dialect.settings = header_.settings;
     }
-    return captures;
+    return list;
   }
 
   std::string name_;
@@ -128,6 +139,7 @@ class TableRead {
   TableDialect dialect_;
   TableHeader header_;
   TableMeaning meaning_;
+  std::optional<SweepPlan> sweep_plan_;
   std::optional<TableStore> store_;
   std::size_t first_line_ = 0;
   std::size_t first_byte_ = 0;
