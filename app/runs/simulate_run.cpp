@@ -91,8 +91,10 @@ Result<RingDownTruth> run_simulate_ring_down(const SimulateRingDownJob& job, con
     return failure(Problem::usage, "--truth", "capture and truth would go to the same place",
                    "give --truth a file of its own");
   }
-  const Result<RingDownRecord> record = simulate_ring_down(job.bench);
+  Result<RingDownRecord> record = simulate_ring_down(job.bench);
   if (!record) return failure(record);
+  // Whoever meets the file later must not take it for a measurement.
+  record->capture.dialect.settings["origin"] = "simulated: coilassay simulate ringdown --seed " + std::to_string(job.bench.seed);
   std::ostringstream capture;
   write_capture_csv(capture, record->capture);
   if (const Result<void> written = context.write(job.capture_file, capture.str()); !written) return failure(written);
