@@ -75,7 +75,8 @@ struct Coefficients {
 
 DecayContour decay_contour(std::span<const double> y, const DampedSineFit& fit, double rise, int directions) {
   DecayContour contour;
-  if (fit.fit.covariance.size() == 0 || !(fit.sigma > 0)) return contour;
+  // Rounding without dither errs by the signal: its share stands in the covariance alone and no chi-square shows it.
+  if (fit.fit.covariance.size() == 0 || !(fit.sigma > 0) || fit.undithered) return contour;
   const double a = fit.model.a, square = a * a + fit.model.q;
   if (!(a > 0) || !(square > 0)) return contour;
   const Coefficients best{2 * a / square, 1 / square};

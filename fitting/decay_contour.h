@@ -15,7 +15,7 @@ struct DecayPoint {
 };
 
 struct DecayContour {
-  std::vector<DecayPoint> points;   // empty when the fit has no covariance
+  std::vector<DecayPoint> points;   // empty when the fit has no covariance or is undithered
   /// The region reaches a^2 + q -> infinity: the data see one decaying exponential, and of the natural frequency only a
   /// lower limit.
   bool open = false;
