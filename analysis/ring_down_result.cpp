@@ -56,6 +56,8 @@ FittedInputs DecayErrors::fitted(const CaptureDecay& decay) const {
   FittedInputs inputs;
   inputs.values = Eigen::Vector2d(decay.a(), decay.q());
   inputs.covariance = decay.covariance();
+  const double dof = decay.decay->fit.dof;
+  if (!decay.structure.modes && dof > 0 && dof < 200) inputs.dof = dof;
   for (const DecayPoint& point : decay.contour) inputs.contour.emplace_back(Eigen::Vector2d(point.a, point.q));
   return inputs;
 }
