@@ -56,8 +56,13 @@ StrongestLine line_of(std::span<const double> values, std::size_t decimation) {
   line.cycles = line.omega * static_cast<double>(line.length) / (2 * std::numbers::pi);
   // Sums of samples are d times sums of averages; per sample of noise this is d per value.
   line.strength = *peak * d / static_cast<double>(present);
-  std::nth_element(power.begin() + 1, power.begin() + static_cast<std::ptrdiff_t>(power.size() / 2), power.end());
-  line.floor = power[power.size() / 2] * d / static_cast<double>(present);
+  // The median of some hundred bins is floor enough.
+  const std::size_t skip = power.size() / 256 + 1;
+  std::vector<double> some;
+  for (std::size_t k = 1; k < power.size(); k += skip) some.push_back(power[k]);
+  const auto middle = some.begin() + static_cast<std::ptrdiff_t>(some.size() / 2);
+  std::nth_element(some.begin(), middle, some.end());
+  line.floor = *middle * d / static_cast<double>(present);
   return line;
 }
 
@@ -68,8 +73,19 @@ std::vector<double> averages(std::span<const double> y, std::size_t decimation, 
   for (std::size_t i = 0; i < known; ++i) {
     result[i] = (values[4 * i] + values[4 * i + 1] + values[4 * i + 2] + values[4 * i + 3]) / 4;
   }
-  const BlockSums sums = block_sums(y.subspan(known * decimation), decimation, count - known, 0, 0);
-  for (std::size_t i = known; i < count; ++i) result[i] = sums.sum[i - known] / static_cast<double>(decimation);
+  // Four chains of additions keep pace with memory, and cost nothing to set up for short averages.
+  const double* v = y.data() + known * decimation;
+  for (std::size_t i = known; i < count; ++i) {
+    double s0 = 0, s1 = 0, s2 = 0, s3 = 0;
+    for (std::size_t m = 0; m < decimation; m += 4) {
+      s0 += v[m];
+      s1 += v[m + 1];
+      s2 += v[m + 2];
+      s3 += v[m + 3];
+    }
+    result[i] = ((s0 + s1) + (s2 + s3)) / static_cast<double>(decimation);
+    v += decimation;
+  }
   return result;
 }
 
@@ -159,13 +175,16 @@ std::vector<Shape> starting_shapes(const StrongestLine& line) {
     }
     return shapes;
   }
+  // A line of two cycles or more is right to within a bin; a slower one may be the skirt of the offset.
+  const bool some_cycles = line.cycles > 2;
+  const double around = (some_cycles ? 4 : 7) / length;
   for (const double decay : {0.15, 0.5, 1.2, 2.5, 5.0, 10.0, 25.0}) {
     const double a = decay / length;
     const double step = 0.7 * std::max(a, std::numbers::pi / (8 * length));
-    const double last = line.omega + 7 / length;
-    for (double omega = std::max(0.0, line.omega - 7 / length); omega < last; omega += step) {
+    for (double omega = std::max(0.0, line.omega - around); omega < line.omega + around; omega += step) {
       shapes.push_back({a, omega * omega});
     }
+    if (some_cycles) continue;
     for (const double split : {0.5, 0.8, 0.95}) shapes.push_back({a, -a * a * split * split});
   }
   return shapes;
