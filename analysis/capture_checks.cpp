@@ -2,9 +2,11 @@
 
 #include <algorithm>
 #include <cmath>
+#include <span>
 
 #include "base/number_text.h"
 #include "base/outside_text.h"
+#include "fitting/extremes.h"
 
 namespace coilassay {
 
@@ -56,19 +58,19 @@ std::vector<FlatTop> find_flat_tops(const Channel& channel, std::size_t first, s
   const std::vector<double>& v = channel.samples;
   end = std::min(end, v.size());
   if (first + 8 > end) return tops;
-  double low = INFINITY, high = -INFINITY;
-  for (std::size_t i = first; i < end; ++i) {
-    low = std::fmin(low, v[i]);
-    high = std::fmax(high, v[i]);
-  }
+  const auto [low, high] = extremes(std::span<const double>(v).subspan(first, end - first));
   if (!(high > low)) return tops;
   const double code = std::isnan(channel.resolution) ? 0 : channel.resolution;
   const double noise = sample_noise(v, first, end);
   const double tolerance = 3 * std::max(code, noise);
   for (std::size_t i = first; i < end;) {
+    if (v[i] != high && v[i] != low) {
+      ++i;
+      continue;
+    }
     std::size_t run = i + 1;
     while (run < end && v[run] == v[i]) ++run;
-    if (run - i >= 3 && (v[i] == high || v[i] == low)) {
+    if (run - i >= 3) {
       // Within a step of the stated full scale, and on the side where the converter ends.
       const bool at_scale =
           !std::isnan(channel.full_scale) && code > 0 && std::fabs(v[i]) >= channel.full_scale - 1.01 * code;
@@ -82,11 +84,9 @@ std::vector<FlatTop> find_flat_tops(const Channel& channel, std::size_t first, s
 std::vector<Finding> check_range(const Channel& channel, std::size_t first, std::size_t end) {
   std::vector<Finding> findings;
   if (std::isnan(channel.resolution) || !(channel.resolution > 0)) return findings;
-  double low = INFINITY, high = -INFINITY;
-  for (std::size_t i = first; i < std::min(end, channel.samples.size()); ++i) {
-    low = std::fmin(low, channel.samples[i]);
-    high = std::fmax(high, channel.samples[i]);
-  }
+  end = std::min(end, channel.samples.size());
+  if (first >= end) return findings;
+  const auto [low, high] = extremes(std::span<const double>(channel.samples).subspan(first, end - first));
   if (!(high > low)) return findings;
   const double codes = (high - low) / channel.resolution;
   const double share = std::isnan(channel.full_scale) ? 1 : (high - low) / (2 * channel.full_scale);

@@ -4,6 +4,7 @@
 #include <cmath>
 #include <numbers>
 
+#include "fitting/extremes.h"
 #include "fitting/statistics.h"
 
 namespace coilassay {
@@ -24,9 +25,8 @@ double end_level(std::span<const double> y) {
 }
 
 double largest_deviation(std::span<const double> y, double level) {
-  double largest = 0;
-  for (const double v : y) largest = std::fmax(largest, std::fabs(v - level));
-  return largest;
+  const auto [low, high] = extremes(y);
+  return std::fmax(0, std::fmax(high - level, level - low));
 }
 
 /// Noise of a single sample by the median of its second differences: slow shapes and the few samples of an edge do not
@@ -58,14 +58,15 @@ std::size_t first_departure(std::span<const double> y, double level, double reso
   const double code = std::isnan(resolution) ? 0 : resolution;
   const double noise = sample_noise(y);
   for (std::size_t block = 1; block <= std::max<std::size_t>(y.size() / 256, 1); block *= 4) {
-    const std::vector<double> m = means_of(y, block);
+    const std::vector<double> means = block > 1 ? means_of(y, block) : std::vector<double>();
+    const std::span<const double> m = block > 1 ? std::span<const double>(means) : y;
     const double largest = largest_deviation(m, level);
     const double scatter_expected = noise / std::sqrt(static_cast<double>(block));
     if (0.25 * largest < 6 * scatter_expected && block * 4 <= y.size() / 256) continue;
     std::size_t far = 0;
     while (far < m.size() && !(std::fabs(m[far] - level) >= 0.25 * largest)) ++far;
     if (far < 8) return 0;
-    const std::span<const double> before(m.data(), far - far / 8);
+    const auto before = m.first(far - far / 8);
     const double rest = median(before);
     const double scatter = std::fmax(robust_deviation(before), 0.6 * code);
     if (scatter > 0.1 * largest) return 0;

@@ -25,6 +25,10 @@ struct DrivenRecord {
   double volt_resolution = std::nan("");         // after scaling
   double amp_resolution = std::nan("");
   std::string volt_name, amp_name;               // of the channels, for findings; outside text
+  struct Columns {                               // places among the capture's channels
+    std::size_t voltage = 0, current = 0;
+    std::optional<std::size_t> voltage_low, current_low;
+  } columns;
 
   // Still to be taken out of the current channel.
   double skew_s = 0;                             // delay of the current channel behind the voltage channel
@@ -51,11 +55,17 @@ inline constexpr double kVoltageGainRatio = 0.02;    // a bench oscilloscope's u
 inline constexpr double kCurrentGainRatio = 0.02;    // of a current channel that is in ampere
 inline constexpr double kShuntRatio = 0.01;          // a shunt given without tolerance
 inline constexpr double kSkew_s = 2e-9;              // two channels of one instrument with unlike probes
+inline constexpr double kShuntInductance_h = 5e-9;   // of a shunt whose inductance is not stated: a small four-wire one
+inline constexpr double kStatedInductanceRatio = 0.5;  // of a shunt inductance given without tolerance
+inline constexpr double kStatedCornerRatio = 0.2;      // of a probe corner given without tolerance
 inline constexpr double kTimebaseRatio = 100e-6;     // a poor crystal
 }  // namespace driven_defaults
 
-/// Picks the two channels (named in the bench, else the first in volts and the first in amperes), scales them and collects
-/// errors. missing_column; usage when the current is in volts and no shunt or gain in A/V is stated, or no time is given.
+/// Picks the two channels (named in the bench, else the first in volts and the first in amperes; with a shunt or a gain in
+/// A/V the next one in volts), scales them and collects errors. A column of a file that does not say its units is volts
+/// when a shunt or a gain in A/V is stated, and amperes when the current gain is a plain number.
+/// @return missing_column; usage when the current is in volts and no shunt or gain in A/V is stated, when what is stated
+///         contradicts the column's unit, or when no time is given.
 Result<DrivenRecord> driven_record(const Capture& capture, const BenchSetup& bench, const PropagationOptions& options);
 
 /// What the current channel's chain does to a phasor at angular frequency omega: multiply the measured current phasor by
@@ -63,7 +73,9 @@ Result<DrivenRecord> driven_record(const Capture& capture, const BenchSetup& ben
 std::complex<double> current_chain(double omega, double skew_s, double shunt_tau_s, double probe_corner_hz);
 
 /// The record with skew, shunt inductance and droop taken out sample by sample (for pulses); the kept-aside values are 0
-/// afterwards. Shifts by a fraction of a sample go through a cubic.
+/// afterwards. Shifts by a fraction of a sample go through a cubic; the samples at the ends whose partner lies outside the
+/// record are missing (NaN). The shunt's inductance is a first-order lag taken from the first sample on, the droop the
+/// integral from there: the record should begin before the pulse, with no offset left in the current.
 DrivenRecord corrected_in_time(const DrivenRecord& record);
 
 }  // namespace coilassay

@@ -9,7 +9,7 @@ namespace coilassay {
 
 namespace {
 
-constexpr std::size_t kBlocks = 160;
+constexpr std::size_t kBlocks = 96;
 
 /// Means of blocks of samples: a damped exponential stays one, with the same decay and frequency.
 struct BlockMeans {
@@ -108,7 +108,7 @@ DecayContour decay_contour(std::span<const double> y, const DampedSineFit& fit, 
       low = high;
       high *= 1.5;
     }
-    for (int halving = 0; halving < 12; ++halving) {
+    for (int halving = 0; halving < 7; ++halving) {
       const double middle = (low + high) / 2;
       (inside(at(way, middle)) ? low : high) = middle;
     }
