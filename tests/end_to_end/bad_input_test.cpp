@@ -60,7 +60,8 @@ void expect_refused(const std::vector<std::string>& arguments) {
 
 TEST(BadInput, NoFile) {
   expect_unusable({"ringdown", "/no/such/ring.csv"}, "unreadable", "/no/such/ring.csv: ");
-  expect_unusable({"ringdown", "/no/such/ring.csv", "--bench", "/no/such/bench.toml"}, "unreadable", "/no/such/bench.toml");
+  expect_unusable({"ringdown", "/no/such/ring.csv", "--bench", "/no/such/bench.toml"}, "unreadable",
+                  "/no/such/bench.toml");
 }
 
 TEST(BadInput, EmptyFile) {
@@ -227,7 +228,8 @@ TEST(BadInput, ACaptureThatHoldsNoRinging) {
     return static_cast<double>(state >> 16) / 65536 - 0.5;
   };
   expect_refused({"ringdown", folder.file("noise.csv", table(4000, noise))});
-  expect_refused({"ringdown", folder.file("slope.csv", table(4000, [](std::size_t i) { return 1e-3 * static_cast<double>(i); }))});
+  expect_refused(
+      {"ringdown", folder.file("slope.csv", table(4000, [](std::size_t i) { return 1e-3 * static_cast<double>(i); }))});
   expect_refused({"ringdown", folder.file("step.csv", table(4000, [](std::size_t i) { return i < 400 ? 0.0 : 1.0; }))});
 }
 

@@ -42,7 +42,8 @@ TEST(RingDown, ReadsWellOnATerminal) {
   ascii.environment = {"LC_ALL=C"};
   const ProgramEnd plain = run_program_process(ascii);
   EXPECT_THAT(plain.out, HasSubstr("uH"));
-  EXPECT_TRUE(std::all_of(plain.out.begin(), plain.out.end(), [](char c) { return static_cast<unsigned char>(c) < 0x80; }));
+  EXPECT_TRUE(
+      std::all_of(plain.out.begin(), plain.out.end(), [](char c) { return static_cast<unsigned char>(c) < 0x80; }));
 }
 
 TEST(RingDown, WithoutACapacitorSaysWhichToTry) {
@@ -78,9 +79,10 @@ TEST(RingDown, TakesTheSetUpFromABenchSheetAndOptionsBeforeIt) {
   const TemporaryFolder folder;
   const std::string ring = folder / "ring.csv";
   simulate_into(ring, kNoise);
-  const std::string sheet = folder.file("bench.toml",
-                                        "[voltage]\ninput_capacitance = \"13 pF ± 2 pF\"\ninput_resistance = \"10 Mohm\"\n"
-                                        "[[capacitor]]\nvalue = \"10 nF ± 1 %\"\n[timebase]\ntolerance = \"25 ppm\"\n");
+  const std::string sheet =
+      folder.file("bench.toml",
+                  "[voltage]\ninput_capacitance = \"13 pF ± 2 pF\"\ninput_resistance = \"10 Mohm\"\n"
+                  "[[capacitor]]\nvalue = \"10 nF ± 1 %\"\n[timebase]\ntolerance = \"25 ppm\"\n");
   const auto by_sheet = measured_json({"ringdown", ring, "--bench", sheet});
   EXPECT_TRUE(covers(by_sheet, "L_s", 47e-6));
   const auto other = measured_json({"ringdown", ring, "--bench", sheet, "--capacitor", "20nF±1%"});
@@ -107,8 +109,8 @@ TEST(RingDown, GivesTheSameBytesForAnyNumberOfThreads) {
   const TemporaryFolder folder;
   const std::string ring = folder / "ring.csv";
   simulate_into(ring, kNoise);
-  const std::vector<std::string> line = {"ringdown", ring, "--capacitor", "10nF±1%", "--propagate", "trials", "--trials",
-                                         "20000", "--json", "--threads"};
+  const std::vector<std::string> line = {"ringdown", ring,       "--capacitor", "10nF±1%", "--propagate",
+                                         "trials",   "--trials", "20000",       "--json",  "--threads"};
   std::string first;
   for (const char* threads : {"1", "2", "5"}) {
     std::vector<std::string> arguments = line;

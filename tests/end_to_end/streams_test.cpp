@@ -18,7 +18,8 @@ TEST(Streams, AFullDiskIsNoticed) {
     start.arguments = arguments;
     const ProgramEnd end = run_program_process(start);
     EXPECT_EQ(end.exit_code, 2) << arguments.front();
-    EXPECT_THAT(end.error, HasSubstr("standard output: not all of the result could be written: No space left on device"));
+    EXPECT_THAT(end.error,
+                HasSubstr("standard output: not all of the result could be written: No space left on device"));
   }
 }
 

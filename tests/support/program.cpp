@@ -103,7 +103,8 @@ ProgramEnd run_program_process(const ProgramStart& start) {
   if (out_file >= 0) close(out_file);
   if (start.out_abandoned) Pipe::close_end(out.read);
 
-  struct sigaction ignore {}, before {};
+  struct sigaction ignore {
+  }, before{};
   ignore.sa_handler = SIG_IGN;
   sigaction(SIGPIPE, &ignore, &before);
   fcntl(in.write, F_SETFL, O_NONBLOCK);
@@ -113,8 +114,10 @@ ProgramEnd run_program_process(const ProgramStart& start) {
   std::size_t sent = 0;
   while (out.read >= 0 || error.read >= 0) {
     if (sent == start.input.size()) Pipe::close_end(in.write);
-    std::array<pollfd, 3> wait = {pollfd{out.read, POLLIN, 0}, pollfd{error.read, POLLIN, 0}, pollfd{in.write, POLLOUT, 0}};
-    const auto left = std::chrono::duration_cast<std::chrono::milliseconds>(deadline - std::chrono::steady_clock::now());
+    std::array<pollfd, 3> wait = {pollfd{out.read, POLLIN, 0}, pollfd{error.read, POLLIN, 0},
+                                  pollfd{in.write, POLLOUT, 0}};
+    const auto left =
+        std::chrono::duration_cast<std::chrono::milliseconds>(deadline - std::chrono::steady_clock::now());
     if (left.count() <= 0 || poll(wait.data(), wait.size(), static_cast<int>(left.count())) == 0) {
       end.too_slow = true;
       kill(child, SIGKILL);

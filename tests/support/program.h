@@ -19,8 +19,8 @@ struct ProgramStart {
 };
 
 struct ProgramEnd {
-  int exit_code = -1;   // -1: it did not end by itself
-  int signal = 0;       // that ended it
+  int exit_code = -1;  // -1: it did not end by itself
+  int signal = 0;      // that ended it
   bool too_slow = false;
   std::string out, error;
 };
