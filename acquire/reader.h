@@ -33,6 +33,10 @@ struct ReadOptions {
   std::optional<char> delimiter;
   std::optional<char> decimal;
   std::optional<double> sample_interval_s;  // for a file without time; what stands in the file is then not asked
+  std::size_t skip = 0;                     // lines at the beginning that are not looked at
+  /// Headings of all columns of a table, "CH1 [V]", "-" for one to leave out; empty: as in the file. A file with another
+  /// number of columns, or with other names where it has names, is refused.
+  std::vector<std::string> columns;
   unsigned threads = 2;           // the result does not depend on it
   Progress* progress = nullptr;   // not owned; may be null
 };

@@ -4,8 +4,10 @@
 #include "acquire/byte_source_text.h"
 #include "acquire/byte_source_unpack.h"
 #include "acquire/reader.h"
+#include "acquire/table_paired.h"
 #include "acquire/table_reader.h"
 #include "acquire/touchstone_reader.h"
+#include "acquire/wav_reader.h"
 
 namespace coilassay {
 namespace {
@@ -14,7 +16,9 @@ constexpr std::size_t kLookAhead = 4096;
 
 std::vector<std::unique_ptr<Reader>> all_readers() {
   std::vector<std::unique_ptr<Reader>> list;
+  list.push_back(wav_reader());
   list.push_back(touchstone_reader());
+  list.push_back(paired_table_reader());
   list.push_back(table_reader());  // takes whatever text the others leave
   return list;
 }

@@ -1,11 +1,14 @@
 #include "acquire/table_header.h"
 
+#include <fmt/format.h>
+
 #include <algorithm>
 #include <cmath>
 
 #include "acquire/number_scan.h"
 #include "acquire/table_join.h"
 #include "acquire/table_settings.h"
+#include "base/outside_text.h"
 
 namespace coilassay {
 namespace {
@@ -144,6 +147,33 @@ TableHeader understand_header(const std::vector<TableLine>& lines, const TableDi
   for (std::size_t i = 0; i + used < above.size(); ++i) read_setting(above[i], dialect.delimiter, header.settings);
   interpret_settings(header, dialect.decimal);
   return header;
+}
+
+Result<void> apply_reading_key(const std::string& name, std::size_t first_line, const std::vector<std::string>& columns,
+                               TableHeader& header) {
+  constexpr const char* kRemedy = "look at the file with describe, and correct [file] columns in the bench sheet or export as before";
+  const std::string place = fmt::format("{}:{}", name, first_line);
+  if (columns.size() != header.columns.size()) {
+    return failure(Problem::missing_column, place,
+                   fmt::format("the rows have {} columns where the reading key names {}", header.columns.size(), columns.size()), kRemedy);
+  }
+  for (std::size_t c = 0; c < columns.size(); ++c) {
+    ColumnHeading& heading = header.columns[c];
+    if (columns[c] == "-") {
+      heading.left_out = true;
+      continue;
+    }
+    const Heading stated = understand_heading(columns[c]);
+    if (!heading.name.empty() && heading.name != stated.name) {
+      return failure(Problem::missing_column, place,
+                     fmt::format("column {} is '{}' where the reading key names '{}'", c + 1, shown(heading.name, 60), shown(stated.name, 60)),
+                     kRemedy);
+    }
+    heading.name = stated.name;
+    if (stated.unit) heading.unit = stated.unit;
+    header.has_names = true;
+  }
+  return {};
 }
 
 }  // namespace coilassay

@@ -16,6 +16,7 @@ namespace coilassay {
 struct ColumnHeading {
   std::string name;  // empty when the file has none
   std::optional<ColumnUnit> unit;
+  bool left_out = false;
 };
 
 struct TableHeader {
@@ -35,5 +36,11 @@ struct TableHeader {
 /// Reads the lines before dialect.first_row: rows of key and value (or "key: value", "key = value", comment signs in
 /// front or not), then a row of names and perhaps a row of units.
 TableHeader understand_header(const std::vector<TableLine>& lines, const TableDialect& dialect);
+
+/// Puts the headings of a reading key in place of the file's.
+/// @param first_line  of the numbers, for errors
+/// @return missing_column when the file does not fit the key
+Result<void> apply_reading_key(const std::string& name, std::size_t first_line, const std::vector<std::string>& columns,
+                               TableHeader& header);
 
 }  // namespace coilassay

@@ -72,7 +72,7 @@ class ColumnJudge {
       : header_(header), values_(first_rows(lines, dialect)) {}
 
   const std::vector<double>& values(std::size_t c) const { return values_[c]; }
-  bool empty(std::size_t c) const { return all_missing(values_[c]); }
+  bool empty(std::size_t c) const { return header_.columns[c].left_out || all_missing(values_[c]); }
 
   bool is_index(std::size_t c) const {
     const std::string& name = header_.columns[c].name;
@@ -161,7 +161,9 @@ Result<TableMeaning> understand_columns(const std::string& name, const std::vect
   for (std::size_t c = 0; c < dialect.width; ++c) {
     const ColumnHeading& heading = header.columns[c];
     ColumnPlan plan;
-    if (time == c) {
+    if (heading.left_out) {
+      plan.stored = false;
+    } else if (time == c) {
       meaning.time = meaning.layout.stored();
       plan.shift = time_shift(heading.name, heading, judge.values(c), meaning.interval_s, meaning.findings);
     } else if (judge.empty(c) || (judge.is_index(c) && !is_sweep)) {

@@ -65,12 +65,17 @@ class TableRead {
     }
     std::vector<TableLine> lines = lines_of(text, true);
     if (lines.size() > kLinesLookedAt) lines.resize(kLinesLookedAt);
+    lines.erase(lines.begin(), lines.begin() + static_cast<std::ptrdiff_t>(std::min(options_.skip, lines.size())));
     const auto dialect = find_dialect(name_, lines, options_);
     if (!dialect) return failure(dialect);
     dialect_ = *dialect;
     const std::string_view preamble = text.substr(0, static_cast<std::size_t>(lines[dialect_.first_row].text.data() - text.data()));
     if (!utf8::is_valid(preamble.begin(), preamble.end())) encoding_ = "windows-1252";
     header_ = understand_header(lines, dialect_);
+    if (!options_.columns.empty()) {
+      const auto fits = apply_reading_key(name_, lines[dialect_.first_row].number, options_.columns, header_);
+      if (!fits) return fits;
+    }
     sweep_plan_ = plan_sweep(header_);
     auto meaning = understand_columns(name_, lines, dialect_, header_, options_, sweep_plan_.has_value());
     if (!meaning) return failure(meaning);
@@ -81,12 +86,12 @@ class TableRead {
     return {};
   }
 
-  /// From the length of the first rows; the last one of the block is a better guide than the first.
+  /// From the length of the first rows and a quarter more: later ones may be shorter, and untouched memory costs nothing.
   std::size_t expected_rows(const BlockColumns& first) const {
     const std::size_t bytes = block_.size - first_byte_;
     const std::size_t left = source_.size_hint() > block_.size ? source_.size_hint() - block_.size : 0;
     const double row = static_cast<double>(bytes) / static_cast<double>(std::max<std::size_t>(first.rows, 1));
-    return first.rows + static_cast<std::size_t>(1.02 * static_cast<double>(left) / row) + (left > 0 ? 1024 : 0);
+    return first.rows + static_cast<std::size_t>(1.25 * static_cast<double>(left) / row) + (left > 0 ? 1024 : 0);
   }
 
   Result<void> read_rows() {

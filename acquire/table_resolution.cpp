@@ -97,11 +97,11 @@ double find_resolution(std::span<const double> samples) {
     if ((values.back() - values.front()) / step > kMostCodes) break;
     const Grid grid = fitted_grid(values, step);
     if (std::fabs(grid.step / step - 1) > 0.2 || !all_near(grid, values)) continue;
-    if (!all_near(grid, samples)) return std::nan("");
     const double codes = (values.back() - values.front()) / grid.step;
     if (codes > kMostWrittenCodes && is_last_digit(grid.step, values)) return std::nan("");
     // Few values over many codes lie on some fine grid by chance.
     if (codes > 1000.0 * static_cast<double>(values.size())) return std::nan("");
+    if (!all_near(grid, samples)) continue;  // codes between those looked at
     return written_shortly(grid.step);
   }
   return std::nan("");

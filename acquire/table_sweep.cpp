@@ -121,6 +121,12 @@ Result<Sweep> sweep_of(Capture capture, const SweepPlan& plan) {
                                 "the file does not say to which reference resistance its S belongs: 50 ohm were taken", "S", reference, Unit::ohm});
     }
   }
+  if (!plan.parameter_stated) {
+    sweep.findings.push_back({"scale_suspect", Severity::note,
+                              fmt::format("the headings '{}' and '{}' do not say of what: they were taken as impedance in ohm{}", shown(first->name, 60),
+                                          shown(second->name, 60), plan.decibels ? ", 0 dB for 1 ohm" : ""),
+                              first->name, 1, Unit::ohm});
+  }
   const Channel* const status = plan.status ? channel_at(capture, *plan.status) : nullptr;
   sweep.ports = 1;
   sweep.as_read = as_read(plan);

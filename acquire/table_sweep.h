@@ -35,6 +35,7 @@ struct SweepPlan {
   std::size_t frequency = 0;
   SweepPair pair = SweepPair::re_im;
   char parameter = 'Z';  // Z, Y or S
+  bool parameter_stated = true;
   std::size_t first = 0;
   std::size_t second = 0;
   bool decibels = false;

@@ -37,6 +37,7 @@ char parameter_of(const std::string& name) {
   }
   if (name.find("admittance") != std::string::npos) return 'Y';
   if (name.find("impedance") != std::string::npos) return 'Z';
+  if (name.find("v(") != std::string::npos && name.find(")/i(") != std::string::npos) return 'Z';
   std::string bare;
   for (const char c : name) {
     if ((c >= 'a' && c <= 'z') || c == '\'') bare += c;
@@ -84,10 +85,10 @@ Meaning meaning_of(const ColumnHeading& heading) {
     return {Role::phase, parameter};
   }
   if (const Role role = element_role(name); role != Role::none) return {role, 0};
-  if (one_of(name, {"z'", "re", "real", "z're"}) || (parameter != 0 && says(name, {"re(", "re:", "real", "re{", "rez", "zre", "res", "s11re", "yre", "rey"}))) {
+  if (one_of(name, {"z'", "re", "real", "z're"}) || name.starts_with("re(") || (parameter != 0 && says(name, {"re(", "re:", "real", "re{", "rez", "zre", "res", "s11re", "yre", "rey"}))) {
     return {Role::real, parameter};
   }
-  if (one_of(name, {"z''", "z\"", "im", "imag", "imaginary"}) || (parameter != 0 && says(name, {"im(", "im:", "imag", "im{", "imz", "zim", "ims", "s11im", "yim", "imy"}))) {
+  if (one_of(name, {"z''", "z\"", "im", "imag", "imaginary"}) || name.starts_with("im(") || (parameter != 0 && says(name, {"im(", "im:", "imag", "im{", "imz", "zim", "ims", "s11im", "yim", "imy"}))) {
     return {Role::imaginary, parameter};
   }
   if (parameter != 0 || one_of(name, {"mag", "magnitude", "abs", "modulus"}) || (heading.unit && heading.unit->decibels)) {
@@ -107,6 +108,9 @@ std::optional<double> stated_reference(const TableHeader& header) {
   }
   return std::nullopt;
 }
+
+/// Real and imaginary part, or size and angle, of whatever it is.
+bool is_of_anything(Role role) { return role == Role::real || role == Role::magnitude; }
 
 struct PairRoles {
   Role first, second;
@@ -129,7 +133,7 @@ constexpr PairRoles kPairs[] = {
 
 std::optional<SweepPlan> plan_sweep(const TableHeader& header) {
   std::vector<Meaning> meanings;
-  for (const ColumnHeading& heading : header.columns) meanings.push_back(meaning_of(heading));
+  for (const ColumnHeading& heading : header.columns) meanings.push_back(heading.left_out ? Meaning{} : meaning_of(heading));
   const auto find = [&](Role role) -> std::optional<std::size_t> {
     for (std::size_t c = 0; c < meanings.size(); ++c) {
       if (meanings[c].role == role) return c;
@@ -158,8 +162,12 @@ std::optional<SweepPlan> plan_sweep(const TableHeader& header) {
     plan.decibels = (first_unit && first_unit->decibels) || reduced(header.columns[*first].name).ends_with("db");
     if (roles.first == Role::magnitude && second_unit) plan.degrees = second_unit->degrees;
     if (roles.first == Role::magnitude && !second_unit && reduced(header.columns[*second].name).ends_with("deg")) plan.degrees = true;
-    if (roles.first == Role::magnitude && first_unit && first_unit->unit == Unit::ohm) plan.parameter = 'Z';
-    if (roles.first == Role::magnitude && first_unit && first_unit->unit == Unit::siemens) plan.parameter = 'Y';
+    const bool ohms = first_unit && first_unit->unit == Unit::ohm;
+    const bool siemens = first_unit && first_unit->unit == Unit::siemens;
+    if (ohms) plan.parameter = 'Z';
+    if (siemens) plan.parameter = 'Y';
+    const bool bare_pair = is_of_anything(roles.first);
+    plan.parameter_stated = !bare_pair || ohms || siemens || meanings[*first].parameter != 0 || meanings[*second].parameter != 0;
     return plan;
   }
   return std::nullopt;

@@ -104,6 +104,7 @@ std::size_t TimeFollower::follow(std::span<const double> stamps) {
   if (summarising_) {
     summarise(stamps);
   } else {
+    if (kept_.empty() && stamps.size() > kGroup) kept_.reserve(kKept + stamps.size());
     kept_.insert(kept_.end(), stamps.begin(), stamps.end());
     if (count_ < kKept && kept_.size() >= kKept) try_to_summarise();
   }

@@ -59,7 +59,7 @@ class TimeFollower {
     double rounding(double stamp) const;  // step between numbers that can be written near it
   };
 
-  static constexpr std::size_t kKept = std::size_t{1} << 20U;
+  static constexpr std::size_t kKept = std::size_t{1} << 19U;
   static constexpr std::size_t kGroup = 1024;
 
   bool jumps_back(double before, double stamp) const;

@@ -5,12 +5,19 @@
 
 #include <filesystem>
 #include <fstream>
+#include <sstream>
 #include <string>
 
 #include "acquire/reader.h"
 #include "gtest/gtest.h"
 
 namespace coilassay::test {
+
+inline std::string bytes_of(const std::string& path) {
+  std::ostringstream bytes;
+  bytes << std::ifstream(path, std::ios::binary).rdbuf();
+  return bytes.str();
+}
 
 class MadeFiles : public testing::Test {
  protected:

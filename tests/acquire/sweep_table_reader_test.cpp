@@ -125,5 +125,19 @@ TEST_F(SweepTable, AnAmplitudeAgainstFrequencyIsNoImpedance) {
   EXPECT_TRUE(std::holds_alternative<std::vector<Capture>>(*got));
 }
 
+TEST_F(SweepTable, TwoNumbersInOneCellOfASimulator) {
+  for (const std::string degree : {"\xC2\xB0", "\xB0"}) {
+    const auto polar = sweep("Freq.\tV(coil)\n1.0e+03\t(2.0e+01dB,9.0e+01" + degree + ")\n2.0e+03\t(4.0e+01dB,-9.0e+01" + degree + ")\n");
+    ASSERT_TRUE(polar) << polar.error().finding;
+    EXPECT_NEAR(polar->z_ohm[0][0].imag(), 10, 1e-12);
+    EXPECT_NEAR(polar->z_ohm[1][0].imag(), -100, 1e-12);
+    ASSERT_EQ(polar->findings.size(), 1U);
+    EXPECT_EQ(polar->findings[0].code, "scale_suspect");
+  }
+  const auto cartesian = sweep("Freq.\tV(coil)/I(L1)\n1.0e+03\t1.5e+0,2.5e+1\n2.0e+03\t1.5e+0,5.0e+1\n");
+  ASSERT_TRUE(cartesian) << cartesian.error().finding;
+  EXPECT_EQ(cartesian->z_ohm[1][0], Complex(1.5, 50));
+}
+
 }  // namespace
 }  // namespace coilassay

@@ -138,5 +138,80 @@ TEST_F(TableReader, ReadsAcrossBlocksOfAnyLength) {
   EXPECT_EQ(c.time.start_s, -1e-3);
 }
 
+TEST_F(TableReader, AReadingKeyNamesTheColumns) {
+  ReadOptions key;
+  key.columns = {"time [us]", "V [mV]", "-", "I [A]"};
+  const Capture c = capture_of("0,1,2,3\n1,2,3,4\n2,4,5,6\n", key);
+  ASSERT_EQ(c.channels.size(), 2U);
+  EXPECT_EQ(c.channels[0].name, "V");
+  EXPECT_EQ(c.channels[0].samples, (std::vector<double>{1e-3, 2e-3, 4e-3}));
+  EXPECT_EQ(c.channels[1].column, 4U);
+  EXPECT_EQ(c.time.step_s, 1e-6);
+}
+
+TEST_F(TableReader, AFileThatNoLongerFitsItsReadingKeyIsRefused) {
+  ReadOptions key;
+  key.columns = {"time [s]", "CH1 [V]"};
+  EXPECT_EQ(capture_of("time,CH1\n0,1\n1,2\n2,4\n", key).channels.at(0).unit, Unit::volt);
+  const Error other_name = error_of("time,CH2\n0,1\n1,2\n", key);
+  EXPECT_EQ(other_name.problem, Problem::missing_column);
+  EXPECT_NE(other_name.finding.find("CH2"), std::string::npos);
+  EXPECT_EQ(error_of("time,CH1,CH2\n0,1,1\n1,2,2\n", key).problem, Problem::missing_column);
+}
+
+TEST_F(TableReader, LinesMayBeSkipped) {
+  ReadOptions key;
+  key.skip = 2;
+  EXPECT_EQ(capture_of("1,2\n3,4\ntime,CH1\n0,1\n1,2\n2,4\n", key).samples(), 3U);
+}
+
+TEST_F(TableReader, TheResultDoesNotDependOnTheThreads) {
+  std::string text = "time (s),CH1 (V),CH2 (V)\n";
+  for (int i = 0; i < 200000; ++i) text += fmt::format("{:.6e},{},{}\n", i * 1e-8, i % 4096, i % 5000 == 0 ? std::string("OL") : std::to_string(i % 17));
+  ReadOptions options;
+  options.threads = 1;
+  const Capture one = capture_of(text, options);
+  for (const unsigned threads : {2U, 5U}) {
+    options.threads = threads;
+    const Capture many = capture_of(text, options);
+    EXPECT_EQ(many.channels[0].samples, one.channels[0].samples);
+    EXPECT_EQ(many.channels[1].missing, one.channels[1].missing);
+    EXPECT_EQ(many.time.step_s, one.time.step_s);
+    EXPECT_EQ(many.channels[0].resolution, one.channels[0].resolution);
+    EXPECT_EQ(one.channels[0].resolution, 1.0);
+    EXPECT_EQ(many.findings.size(), one.findings.size());
+  }
+}
+
+class Listener final : public Progress {
+ public:
+  explicit Listener(int stop_after) : stop_after_(stop_after) {}
+  bool advance(std::string_view, std::uint64_t done, std::uint64_t total) override {
+    last_ = done;
+    total_ = total;
+    return ++calls_ < stop_after_;
+  }
+  int calls_ = 0;
+  std::uint64_t last_ = 0;
+  std::uint64_t total_ = 0;
+
+ private:
+  int stop_after_;
+};
+
+TEST_F(TableReader, TellsItsProgressAndStopsWhenAsked) {
+  std::string text = "time (s),CH1 (V)\n";
+  for (int i = 0; i < 300000; ++i) text += fmt::format("{:.6e},{}\n", i * 1e-8, i % 4096);
+  ReadOptions options;
+  Listener patient(1000);
+  options.progress = &patient;
+  EXPECT_EQ(capture_of(text, options).samples(), 300000U);
+  EXPECT_GT(patient.calls_, 2);
+  EXPECT_EQ(patient.total_, text.size());
+  Listener hasty(1);
+  options.progress = &hasty;
+  EXPECT_EQ(error_of(text, options).problem, Problem::interrupted);
+}
+
 }  // namespace
 }  // namespace coilassay
