@@ -68,7 +68,7 @@ SquaredTime squared_time_for(const std::vector<double>& values) {
   constexpr std::array kChoices = {SquaredTime{1, "s²"}, SquaredTime{1e6, "ms²"}, SquaredTime{1e12, "µs²"},
                                    SquaredTime{1e18, "ns²"}};
   for (const SquaredTime& each : kChoices) {
-    if (largest * each.per_si >= 1) return each;
+    if (largest * each.per_si >= 0.05) return each;  // short tick labels: 0.15 µs² rather than 150000 ns²
   }
   return kChoices.back();
 }
