@@ -1,0 +1,65 @@
+#!/bin/sh
+# Makes every capture of this folder anew, with its truth beside it: the same seeds give the same bytes.
+#   sh sample-data/make.sh PROGRAM [FOLDER]     build/bin/coilassay; FOLDER is sample-data unless given
+set -eu
+program=${1:?name the program, build/bin/coilassay}
+to=${2:-$(dirname "$0")}
+
+# simulate NAME OPTION...: NAME.csv and NAME.truth.json
+simulate() {
+  name=$1
+  shift
+  # From inside the folder, as the truth names its capture.
+  (cd "$to" && "$program" simulate ringdown -o "$name.csv" --truth "$name.truth.json" --quiet "$@")
+}
+case $program in
+  /*) ;;
+  *) program=$(pwd)/$program ;;
+esac
+
+# As on a real bench, nothing is exactly what its label says: the probe is 12.3 pF where the bench sheet says 13 pF ± 2 pF, each
+# capacitor is a little off its certificate, and the scope's clock runs 8 ppm slow.
+bench='--probe-capacitance 12.3pF --probe-resistance 9.91M --timebase 8e-6'
+# The scope: 12 bits and noise that dithers the converter.
+scope="--bits 12 --full-scale 5V --noise 2mV $bench"
+
+# shellcheck disable=SC2086
+{
+simulate charging-coil --seed 11 $scope --inductance 24.3uH --resistance 0.21ohm --capacitor 22.0437nF \
+  --capacitor-dissipation 0.00037 --initial-current 80mA --interval 20ns --samples 12000
+
+simulate drum-47 --seed 12 $scope --inductance 46.2uH --resistance 0.36ohm --capacitor 10.0171nF \
+  --capacitor-dissipation 0.00026 --initial-current 50mA --interval 20ns --samples 12000
+
+simulate loading-coil --seed 13 $scope --inductance 815uH --resistance 9.4ohm --capacitor 1.0036nF \
+  --capacitor-dissipation 0.00022 --initial-current 4mA --interval 50ns --samples 10000
+
+simulate suppression-choke --seed 14 $scope --inductance 1.04mH --resistance 1.9ohm --capacitor 10.0171nF \
+  --capacitor-dissipation 0.00026 --across 142.4ohm --initial-current 20mA --interval 50ns --samples 4000
+
+# The same old coil across three capacitors, one after another; its own capacitance is 68 pF.
+for capacitor in 1.0033nF 4.6899nF 22.0437nF; do
+  case $capacitor in
+    1.*) name=old-coil-1n seed=15 step=10ns ;;
+    4.*) name=old-coil-4n7 seed=16 step=20ns ;;
+    *) name=old-coil-22n seed=17 step=50ns ;;
+  esac
+  simulate $name --seed $seed $scope --inductance 183uH --resistance 2.4ohm --parallel-capacitance 68pF \
+    --capacitor $capacitor --capacitor-dissipation 0.00026 --initial-current 10mA --interval $step --samples 8000
+done
+
+# An old scope of 8 bits, set for 40 V although the ringing reaches only 3 V.
+simulate drum-coarse --seed 18 --bits 8 --full-scale 20V --noise 20mV $bench \
+  --inductance 46.2uH --resistance 0.36ohm --capacitor 10.0171nF --capacitor-dissipation 0.00026 --initial-current 50mA \
+  --interval 40ns --samples 8000
+
+# The range was chosen too small: the first crests are cut off.
+simulate drum-clipped --seed 19 --bits 12 --full-scale 2V --noise 2mV $bench \
+  --inductance 46.2uH --resistance 0.36ohm --capacitor 10.0171nF --capacitor-dissipation 0.00026 --initial-current 50mA \
+  --interval 20ns --samples 12000
+
+# The burst that fed the coil is still in the file: 60 us at 150 kHz, then the release.
+simulate charging-driven --seed 20 $scope --inductance 24.3uH --resistance 0.21ohm --capacitor 22.0437nF \
+  --capacitor-dissipation 0.00037 --initial-current 60mA --drive-time 60us --drive-frequency 150kHz --pretrigger 0.3 \
+  --interval 20ns --samples 12000
+}

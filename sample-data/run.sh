@@ -1,0 +1,45 @@
+#!/bin/sh
+# Installs what is missing, builds the program and measures the ring-downs of this folder: text here, a page each with figures
+# in build/sample-reports/. A second run builds and installs nothing again.
+set -eu
+cd "$(dirname "$0")/.."
+. cmake/debian-packages.sh
+
+# shellcheck disable=SC2086
+need_packages $packages_to_build $packages_to_run
+
+if [ ! -f build/build.ninja ]; then
+  cmake --preset default -DCOILASSAY_TESTS=OFF
+fi
+cmake --build --preset default --target coilassay
+
+program=$(pwd)/build/bin/coilassay
+reports=$(pwd)/build/sample-reports
+mkdir -p "$reports"
+cd sample-data
+
+# measure NAME FILE... OPTION...: shows the command, its result, and leaves NAME.html.
+measure() {
+  name=$1
+  shift
+  echo
+  echo "\$ coilassay ringdown $*"
+  "$program" ringdown "$@" --report "$reports/$name.html"
+}
+
+# Without a capacitor: frequency, decay and Q, and what to try next.
+measure first-look drum-47.csv
+# Coils of the tide-gauge buoy (README.md has their story).
+measure drum-47 drum-47.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+measure charging-coil charging-coil.csv --bench bench.toml --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0004±0.0001'
+measure loading-coil loading-coil.csv --bench bench.toml --capacitor '1.003nF±2pF(k=2)' --capacitor-dissipation '0.0002±0.0001'
+measure suppression-choke suppression-choke.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001' --across '143ohm±1%'
+# One coil, three capacitors: its inductance and its own capacitance.
+measure old-coil old-coil-1n.csv old-coil-4n7.csv old-coil-22n.csv --bench bench.toml --capacitor '1.004nF±2pF(k=2)' --capacitor '4.688nF±5pF(k=2)' --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+# Captures that went wrong in some way.
+measure drum-coarse drum-coarse.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+measure drum-clipped drum-clipped.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+measure charging-driven charging-driven.csv --bench bench.toml --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0004±0.0001'
+
+echo
+echo "Pages with figures: build/sample-reports/"
