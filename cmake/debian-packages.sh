@@ -42,17 +42,20 @@ need_packages() {
   fi
   echo "Installing what is missing:$missing"
   # A machine's package index may be absent or out of date: it is fetched only when the installation does not work without.
-  install_packages $missing && return 0
+  # shellcheck disable=SC2086
+  if apt-get -qq -s --no-install-recommends --no-remove install $missing >/dev/null 2>&1; then
+    install_packages $missing && return 0
+  fi
   $as_root env DEBIAN_FRONTEND=noninteractive apt-get -qq update || return 1
+  # shellcheck disable=SC2086
   install_packages $missing && return 0
   echo "apt-get could not install:$missing" >&2
   echo "  try: apt-get update, and look at its messages; the project is made for Debian 12 (bookworm)" >&2
   return 1
 }
 
-# Splits its list on purpose.
+# Each step of dpkg is a line on standard output, hundreds of them; what goes wrong is on standard error.
 install_packages() {
-  # shellcheck disable=SC2086
   $as_root env DEBIAN_FRONTEND=noninteractive apt-get -qq -y -o Dpkg::Use-Pty=0 \
-    --no-install-recommends --no-remove install "$@" >&2
+    --no-install-recommends --no-remove install "$@" >/dev/null
 }

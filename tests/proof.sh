@@ -16,7 +16,7 @@ names=$(sed -n 's/^coilassay_proof(\([a-z0-9_]*\).*/\1/p' tests/proof/CMakeLists
   echo "no proof has '${1:-}' in its name" >&2
   exit 2
 }
-# shellcheck disable=SC2086
+# shellcheck disable=SC2046,SC2086
 cmake --build --preset default --target $(printf 'proof_%s ' $names)
 
 failed=

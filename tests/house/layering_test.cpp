@@ -45,7 +45,7 @@ constexpr OneFileOnly kOneFileOnly[] = {{"CLI/", "app/commands/command_line.cpp"
                                         {"ceres/ceres.h", "fitting/least_squares.cpp"},
                                         {"libserialport.h", ""},
                                         {"soci/", ""},
-                                        {"sndfile", ""}};
+                                        {"sndfile", "acquire/wav_reader.cpp"}};
 
 std::string room_of(const std::string& path) {
   std::string best;
