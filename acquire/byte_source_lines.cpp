@@ -24,6 +24,9 @@ Result<void> LineBlocks::next(LineBlock& block) {
     }
     block.size = filled;
     carry_.clear();
+    constexpr std::size_t kTail = 4096;
+    const std::size_t tail = std::min(filled, kTail);
+    tail_.assign(block.bytes.data() + filled - tail, tail);
   } else {
     const char* const begin = block.bytes.data();
     const void* const end = ::memrchr(begin, '\n', filled);

@@ -31,10 +31,13 @@ class LineBlocks {
   std::size_t bytes_read() const { return bytes_read_; }
   /// Whether the last line of the file had no end of its own.
   bool last_line_open() const { return last_line_open_; }
+  /// The last lines of the file, at most 4 KiB, once the last block has been given.
+  const std::string& tail() const { return tail_; }
 
  private:
   ByteSource& source_;
   std::string carry_;  // the beginning of a line whose end is in the next block
+  std::string tail_;
   std::size_t lines_ = 0;
   std::size_t bytes_read_ = 0;
   bool last_line_open_ = false;

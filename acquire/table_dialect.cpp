@@ -39,7 +39,9 @@ Candidate judge(const std::vector<TableLine>& lines, char delimiter, char decima
     if (!is_row_of_numbers(cells, decimal)) continue;
     ++widths[cells.size()];
   }
-  Candidate found{{delimiter, decimal, 0, 0}, 0};
+  Candidate found;
+  found.dialect.delimiter = delimiter;
+  found.dialect.decimal = decimal;
   for (const auto& [width, count] : widths) {
     if (count >= found.rows) {
       found.rows = count;
@@ -155,6 +157,56 @@ std::size_t first_row(const std::vector<TableLine>& lines, const TableDialect& d
   return begin;
 }
 
+/// A table of another width before the one that was found: a file whose rows lost or gained a cell from some line on.
+/// Returns that width, or 0.
+std::size_t other_width_before(const std::vector<TableLine>& lines, const TableDialect& dialect) {
+  constexpr std::size_t kRun = 3;  // a preamble may hold a row or two of numbers
+  std::size_t run = 0;
+  std::size_t width = 0;
+  for (std::size_t i = 0; i < dialect.first_row; ++i) {
+    const auto cells = cells_of(lines[i].text, dialect.delimiter);
+    if (!is_row_of_numbers(cells, dialect.decimal)) {
+      run = 0;
+      continue;
+    }
+    run = cells.size() == width ? run + 1 : 1;
+    width = cells.size();
+    if (run == kRun && width != dialect.width) return width;
+  }
+  return 0;
+}
+
+/// Columns that are empty in the first rows of numbers.
+std::vector<std::size_t> empty_columns(const std::vector<TableLine>& lines, const TableDialect& dialect) {
+  std::vector<bool> filled(dialect.width, false);
+  std::size_t rows = 0;
+  for (std::size_t i = dialect.first_row; i < lines.size() && rows < 100; ++i) {
+    const auto cells = cells_of(lines[i].text, dialect.delimiter);
+    if (cells.size() != dialect.width || !is_row_of_numbers(cells, dialect.decimal)) continue;
+    ++rows;
+    for (std::size_t c = 0; c < dialect.width; ++c) filled[c] = filled[c] || !bare_cell(cells[c]).empty();
+  }
+  std::vector<std::size_t> empty;
+  for (std::size_t c = 0; c < dialect.width; ++c) {
+    if (!filled[c]) empty.push_back(c);
+  }
+  return empty;
+}
+
+/// Settings may stand beside the first rows, in columns that are empty later: those rows are samples as well.
+void take_rows_beside_settings(const std::vector<TableLine>& lines, TableDialect& dialect) {
+  dialect.empty_columns = empty_columns(lines, dialect);
+  if (dialect.empty_columns.empty() || dialect.empty_columns.size() == dialect.width) return;
+  while (dialect.first_row > 0) {
+    auto cells = cells_of(lines[dialect.first_row - 1].text, dialect.delimiter);
+    if (cells.size() != dialect.width) return;
+    for (const std::size_t c : dialect.empty_columns) cells[c] = {};
+    if (!is_row_of_numbers(cells, dialect.decimal)) return;
+    --dialect.first_row;
+    ++dialect.beside;
+  }
+}
+
 }  // namespace
 
 bool is_row_of_numbers(const std::vector<std::string_view>& cells, char decimal) {
@@ -194,6 +246,12 @@ Result<TableDialect> find_dialect(const std::string& name, const std::vector<Tab
                    "export it again, or say which is meant in the bench sheet: [file] decimal = \",\"");
   }
   best.dialect.first_row = first_row(lines, best.dialect);
+  take_rows_beside_settings(lines, best.dialect);
+  if (const std::size_t before = other_width_before(lines, best.dialect); before > 0) {
+    return failure(Problem::damaged, fmt::format("{}:{}", name, lines[best.dialect.first_row].number),
+                   fmt::format("from here on rows have {} cells where those before have {}", best.dialect.width, before),
+                   "repair the file, or export the waveform again");
+  }
   if (best.dialect.delimiter == ',' && !options.delimiter) {
     if (const auto why = comma_is_both(lines, best.dialect)) {
       return failure(Problem::ambiguous, name, "a comma may be both separator and decimal sign here: " + *why,

@@ -15,6 +15,8 @@ struct TableDialect {
   char decimal = '.';
   std::size_t width = 0;        // cells in a row of numbers
   std::size_t first_row = 0;    // index of the first row of numbers among the lines looked at
+  std::size_t beside = 0;       // rows from there on that have settings in columns which are empty further down
+  std::vector<std::size_t> empty_columns;  // those, counted from 0
 };
 
 /// Finds the dialect from the first lines of a file, or takes what the options say.

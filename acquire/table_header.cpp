@@ -59,6 +59,12 @@ bool is_row_of_names(const Cells& cells, std::size_t width, char decimal) {
   return words > 0 && words + 1 >= width;
 }
 
+/// Above units names may be numbers of channels: "x-axis,1,2".
+bool is_row_above_units(const Cells& cells, std::size_t width, char decimal) {
+  if (cells.empty() || cells.size() < width) return false;
+  return std::any_of(cells.begin(), cells.end(), [decimal](const std::string& cell) { return !cell.empty() && !is_number(cell, decimal); });
+}
+
 /// A blank-separated heading such as "CH1 [V]" falls apart into two cells: the bracket belongs to the name before it.
 Cells rejoined(Cells cells, std::size_t width) {
   if (cells.size() <= width) return cells;
@@ -80,6 +86,18 @@ void take_settings_beside(const Cells& names, const Cells& below, std::size_t wi
     const bool beyond = c >= width || understand_column_unit(below[c]) == std::nullopt;
     if (beyond && !names[c].empty() && is_number(below[c], decimal)) settings[names[c]] = below[c];
   }
+}
+
+/// Key, value and unit in the columns that are empty further down.
+void read_settings_beside(std::string_view line, const TableDialect& dialect, std::map<std::string, std::string>& settings) {
+  const auto cells = cells_of(line, dialect.delimiter);
+  std::string setting;
+  for (const std::size_t c : dialect.empty_columns) {
+    if (c >= cells.size()) continue;
+    if (!setting.empty()) setting += dialect.delimiter;
+    setting += cells[c];
+  }
+  read_setting(setting, dialect.delimiter, settings);
 }
 
 /// "Record,Waveform" names columns, "Record 5" announces a record.
@@ -123,7 +141,7 @@ TableHeader understand_header(const std::vector<TableLine>& lines, const TableDi
   Cells names;
   Cells units;
   std::size_t used = 0;
-  if (is_row_of_units(last, width) && is_row_of_names(cells_from_below(1), width, dialect.decimal)) {
+  if (is_row_of_units(last, width) && is_row_above_units(cells_from_below(1), width, dialect.decimal)) {
     names = cells_from_below(1);
     header.names_line = cell_text(above[above.size() - 2]);
     units = std::move(last);
@@ -135,16 +153,20 @@ TableHeader understand_header(const std::vector<TableLine>& lines, const TableDi
     used = 1;
   }
 
+  const bool all_units = std::all_of(names.begin(), names.end(), [](const std::string& name) { return unit_of_cell(name).has_value(); });
   for (std::size_t c = 0; c < std::min(names.size(), dialect.width); ++c) {
     Heading heading = understand_heading(names[c]);
     header.columns[c].name = heading.name;
     header.columns[c].unit = heading.unit;
     header.has_names |= !heading.name.empty();
+    // "second,Volt" alone: the units are all there is of names.
+    if (units.empty() && all_units) header.columns[c].unit = unit_of_cell(names[c]);
   }
   for (std::size_t c = 0; c < std::min(units.size(), dialect.width); ++c) {
     if (const auto unit = unit_of_cell(units[c])) header.columns[c].unit = unit;
   }
   for (std::size_t i = 0; i + used < above.size(); ++i) read_setting(above[i], dialect.delimiter, header.settings);
+  for (std::size_t i = 0; i < dialect.beside; ++i) read_settings_beside(lines[dialect.first_row + i].text, dialect, header.settings);
   interpret_settings(header, dialect.decimal);
   return header;
 }

@@ -29,6 +29,8 @@ struct TableHeader {
   std::map<std::string, double> full_scale;     // by channel name, "" for all; largest magnitude in SI
   std::map<std::string, double> resolution;     // by channel name; step between codes in SI
   std::string segment;
+  std::optional<ColumnUnit> vertical_unit;      // of the one channel
+  std::string source;                           // its name
   std::string names_line;   // as it stands
   std::string first_label;  // of the first record, when a line between names and numbers announces it
 };

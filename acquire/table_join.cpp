@@ -25,6 +25,17 @@ bool is_end_mark(std::string_view line) {
   return false;
 }
 
+/// What follows the whole number, digits all alike: "-1.25e-06" is ".99e+99", "35m" is "m".
+std::string shape(std::string_view number, char decimal) {
+  std::string out;
+  for (const char c : bare_cell(number)) {
+    const bool digit = c >= '0' && c <= '9';
+    const bool letter = (c >= 'a' && c <= 'z') || (c >= 'A' && c <= 'Z');
+    if (c == decimal || letter || !out.empty()) out += digit ? '9' : c == '-' ? '+' : c;
+  }
+  return out;
+}
+
 const TableBreak* first_hard(const std::vector<TableBreak>& breaks) {
   const auto hard = std::find_if(breaks.begin(), breaks.end(), [](const TableBreak& b) { return !b.comment; });
   return hard == breaks.end() ? nullptr : &*hard;
@@ -39,6 +50,21 @@ bool introduces_record(std::string_view line) {
     if (starts_with_word(text, word)) return true;
   }
   return false;
+}
+
+bool last_number_cut(std::string_view tail, char delimiter, char decimal) {
+  const auto lines = lines_of(tail, true);
+  constexpr std::size_t kCompared = 5;
+  if (lines.size() < kCompared + 2) return false;  // the first may be cut off by the look itself
+  const std::string last = shape(cells_of(lines.back().text, delimiter).back(), decimal);
+  std::string before;
+  for (std::size_t i = 1; i <= kCompared; ++i) {
+    const auto cells = cells_of(lines[lines.size() - 1 - i].text, delimiter);
+    const std::string one = cells.empty() ? "" : shape(cells.back(), decimal);
+    if (i > 1 && one != before) return false;
+    before = one;
+  }
+  return last.size() < before.size();
 }
 
 Result<void> TableJoin::join(const BlockColumns& block) {

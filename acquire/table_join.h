@@ -14,6 +14,10 @@ namespace coilassay {
 /// Whether a line in words announces a record: "Step Information: ...", "Segment 2", "Run 3", "BEGIN".
 bool introduces_record(std::string_view line);
 
+/// Whether the last number of a file without a last line end was cut off: it has fewer digits behind the decimal sign, or
+/// in its exponent, than the numbers above it all have. `tail` are the last lines.
+bool last_number_cut(std::string_view tail, char delimiter, char decimal);
+
 /// Joins blocks in the order of the file.
 ///
 /// A line in words followed by time that starts again begins another record, labelled by it; without a time column its
@@ -26,6 +30,7 @@ class TableJoin {
   Result<void> join(const BlockColumns& block);
   /// After the last block: nothing but an end mark may follow the last row.
   Result<void> finish(bool last_line_open);
+  std::size_t lines_read() const { return line_ - 1; }  // the number of the last line
 
  private:
   Result<void> append(const BlockColumns& block, std::size_t from, std::size_t to);

@@ -17,7 +17,10 @@ constexpr std::size_t kRowsLookedAt = 500;
 std::vector<std::vector<double>> first_rows(const std::vector<TableLine>& lines, const TableDialect& dialect) {
   std::vector<std::vector<double>> columns(dialect.width);
   for (std::size_t i = dialect.first_row; i < lines.size() && columns.front().size() < kRowsLookedAt; ++i) {
-    const auto cells = cells_of(lines[i].text, dialect.delimiter);
+    auto cells = cells_of(lines[i].text, dialect.delimiter);
+    for (const std::size_t c : dialect.empty_columns) {
+      if (c < cells.size()) cells[c] = {};  // settings may stand there
+    }
     if (cells.size() < dialect.width || !is_row_of_numbers(cells, dialect.decimal)) continue;
     for (std::size_t c = 0; c < dialect.width; ++c) columns[c].push_back(read_cell(cells[c], dialect.decimal).value);
   }
@@ -111,6 +114,10 @@ Finding contradiction(std::string message, const std::string& about, double figu
   return {"header_contradicts", Severity::note, std::move(message), about, figure, unit};
 }
 
+std::string_view unit_name(int shift) {
+  return shift == 0 ? "s" : shift == -3 ? "ms" : shift == -6 ? "us" : shift == -9 ? "ns" : "ps";
+}
+
 /// Time in a unit that the interval contradicts: the interval and the stamps agree for another power of a thousand.
 int time_shift(const std::string& name, const ColumnHeading& heading, const std::vector<double>& stamps,
                const std::optional<double>& interval_s, std::vector<Finding>& findings) {
@@ -121,9 +128,9 @@ int time_shift(const std::string& name, const ColumnHeading& heading, const std:
     const double ratio = step * std::pow(10.0, shift) / *interval_s;
     if (std::fabs(ratio - 1) > 0.02 || shift == stated) continue;
     findings.push_back(contradiction(
-        fmt::format("the heading '{}' {} but the stated sample interval of {} s fits stamps in {}: these were taken",
-                    shown(name, 60), heading.unit ? "says otherwise" : "names no unit", *interval_s,
-                    shift == 0 ? "s" : shift == -3 ? "ms" : shift == -6 ? "us" : shift == -9 ? "ns" : "ps"),
+        fmt::format("the heading '{}' {}, but the stated sample interval of {} s fits the stamps only in {}: that was taken",
+                    shown(name, 60), heading.unit ? fmt::format("gives time in {}", unit_name(stated)) : "names no unit", *interval_s,
+                    unit_name(shift)),
         name, *interval_s, Unit::second));
     return shift;
   }
@@ -141,6 +148,16 @@ void check_angle(const ChannelMeaning& channel, const std::vector<double>& value
                                   shown(channel.name, 60), largest,
                                   largest <= 3.2 ? ": radians or small degrees" : ": degrees"),
                       channel.name, largest, Unit::one});
+}
+
+/// A preamble that speaks of one channel speaks of the only one.
+void name_the_one_channel(const TableHeader& header, TableMeaning& meaning) {
+  ChannelMeaning& channel = meaning.channels.front();
+  if (!header.source.empty() && header.columns[channel.column - 1].name.empty()) channel.name = header.source;
+  if (channel.unit_stated || !header.vertical_unit || header.vertical_unit->degrees || header.vertical_unit->decibels) return;
+  channel.unit = *header.vertical_unit;
+  channel.unit_stated = true;
+  meaning.layout.columns[channel.column - 1].shift = channel.unit.exponent;
 }
 
 }  // namespace
@@ -188,6 +205,7 @@ Result<TableMeaning> understand_columns(const std::string& name, const std::vect
     }
     meaning.layout.columns.push_back(plan);
   }
+  if (meaning.channels.size() == 1) name_the_one_channel(header, meaning);
   if (meaning.channels.empty()) {
     return failure(Problem::not_a_capture, name,
                    time ? "it has a column of time but none of samples" : "it has row numbers but no column of samples",

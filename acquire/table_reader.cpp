@@ -110,6 +110,9 @@ class TableRead {
                                   });
     if (!done) return done;
     if (const auto ended = join.finish(blocks_.last_line_open()); !ended) return ended;
+    if (blocks_.last_line_open() && last_number_cut(blocks_.tail(), dialect_.delimiter, dialect_.decimal)) {
+      return failure(Problem::damaged, place(name_, join.lines_read()), "the file ends in the middle of a number", "copy or export it again");
+    }
     if (store_->rows() < 2) {
       return failure(Problem::too_few_samples, place(name_, first_line_), "it has one row of numbers only",
                      "export the whole waveform");

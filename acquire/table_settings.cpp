@@ -95,6 +95,8 @@ void interpret_settings(TableHeader& header, char decimal) {
     const Heading heading = understand_heading(std::string(bare_cell(key_text)));
     const std::string key = reduced(heading.name);
     if (key == "segment" && channel.empty()) header.segment = value;
+    if (one_of(key, {"verticalunits", "verticalunit", "yunit", "yunits", "unity"})) header.vertical_unit = understand_column_unit(value);
+    if (one_of(key, {"source", "trace", "waveformsource"}) && channel.empty()) header.source = value;
     const auto stated = stated_value(value, heading.unit, decimal);
     if (!stated) continue;
     if (one_of(key, {"interval", "sampleinterval", "samplinginterval", "sampletime", "samplingtime", "sampleperiod",

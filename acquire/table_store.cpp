@@ -159,6 +159,16 @@ void TableStore::set_time(const Record& record, Capture& capture) const {
                                   "every time stamp occurs twice: these are the least and the largest value of each interval, "
                                   "not samples; capture again without peak detection",
                                   "time", story.distinct_step_s, Unit::second});
+    } else if (story.step_lost) {
+      capture.findings.push_back({"uneven_step", Severity::caution,
+                                  "the time stamps have too few digits to tell the time step; state it in the bench sheet, or export "
+                                  "with more digits",
+                                  "time", story.step_doubt, Unit::one});
+    } else if (story.step_doubt > 1e-4) {
+      capture.findings.push_back({"uneven_step", Severity::caution,
+                                  fmt::format("the time stamps have few digits: the time step is known to {:.2g} % only; export with more digits",
+                                              100 * story.step_doubt),
+                                  "time", story.step_doubt, Unit::one});
     } else if (!story.axis.uniform()) {
       capture.findings.push_back({"uneven_step", Severity::note,
                                   fmt::format("the time steps are not even: stamps lie up to {:.3g} steps beside even ones",

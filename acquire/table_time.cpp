@@ -14,6 +14,9 @@ namespace {
 /// Deviation from even steps that no measurement notices: 1e-4 of a step is 95 dB below a wave of twenty samples a period.
 constexpr double kNegligible = 1e-4;
 
+/// Relative doubt beyond which rounded stamps do not give a step any more.
+constexpr double kStepLost = 0.02;
+
 double median_step(std::span<const double> stamps) {
   std::vector<double> steps;
   for (std::size_t i = 1; i < std::min<std::size_t>(stamps.size(), 4096); ++i) {
@@ -276,8 +279,8 @@ TimeStory TimeFollower::finish(std::optional<double> stated_step_s) const {
     }
     distinct.follow(every_second);
     const TimeStory each = distinct.finish(stated_step_s);
-    // Stamps that merely lost their digits repeat as well, but then differ by one in the last digit.
-    if (each.axis.uniform() && each.axis.step_s > 4 * digits_.rounding(last_)) {
+    // Stamps that merely lost their digits repeat as well, but then differ by one in the last digit written.
+    if (each.axis.uniform() && each.axis.step_s > 1.5 * digits_.rounding(last_)) {
       story.every_stamp_twice = true;
       story.distinct_step_s = each.axis.step_s;
       for (std::size_t i = 0; i < count_; ++i) {
@@ -291,6 +294,18 @@ TimeStory TimeFollower::finish(std::optional<double> stated_step_s) const {
   double largest = 0;
   if (count_ >= 2 && line.step > 0 && fits(line, &largest)) {
     const Line shortest = written_shortly(line, stated_step_s);
+    const bool as_stated = stated_step_s && shortest.step == *stated_step_s;
+    double left_over = 0;
+    fits(shortest, &left_over);
+    // Rounding may turn the line by twice its size over the record; averaged over all stamps, by much less.
+    const auto n = static_cast<double>(count_);
+    const double at_most = as_stated ? 0 : 2 * left_over / ((n - 1) * line.step);
+    story.step_doubt = as_stated ? 0 : 2 * left_over / (std::pow(n, 1.5) * line.step);
+    if (at_most > kStepLost) {
+      story.step_lost = true;
+      story.step_doubt = at_most;
+      return story;
+    }
     story.axis.start_s = shortest.start;
     story.axis.step_s = shortest.step;
     return story;

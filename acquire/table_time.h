@@ -17,6 +17,8 @@ struct TimeStory {
   bool every_stamp_twice = false;     // minimum and maximum of an interval exported as two samples
   double distinct_step_s = 0;         // step between distinct stamps, when those are even
   double largest_deviation_steps = 0; // from even steps, when they are not
+  double step_doubt = 0;              // relative: what the rounding of the stamps leaves open of an even step
+  bool step_lost = false;             // it leaves the step itself open: the axis has none
 };
 
 /// Follows the stamps of a record as they are read. Even steps within what the written digits can show are kept as a line

@@ -121,11 +121,16 @@ Heading understand_heading(const std::string& heading) {
     if (name.empty()) name = heading;
     return {name, unit};
   }
-  for (const std::string_view sign : {" in ", " / ", "/"}) {  // "Spannung in V", "U / V"
+  for (const std::string_view sign : {" in ", " / ", "/", ","}) {  // "Spannung in V", "U / V", "CH1, V"
     const std::size_t at = heading.rfind(sign);
     if (at == std::string::npos || at == 0) continue;
     const auto unit = understand_column_unit(std::string_view(heading).substr(at + sign.size()));
     if (unit) return {std::string(bare_cell(std::string_view(heading).substr(0, at))), unit};
+  }
+  // Simulators name voltages and currents by letter and place: "V(coil)", "I(L1)".
+  if (heading.size() > 3 && heading[1] == '(' && heading.find(')') == heading.size() - 1) {
+    if (heading[0] == 'V' || heading[0] == 'v') return {heading, ColumnUnit{Unit::volt, 0, false, false}};
+    if (heading[0] == 'I' || heading[0] == 'i') return {heading, ColumnUnit{Unit::ampere, 0, false, false}};
   }
   return {heading, unit_of_ending(heading)};
 }
