@@ -305,6 +305,8 @@ void add_estimates(Measurement& result, const std::vector<InputError>& inputs, c
       line.share = variance > 0 ? line.u * line.u / variance : 0;
       if (spec.reciprocal) line.u /= value * value;
     }
+    // Differences of nearly equal numbers leave traces of rounding; they are no source of uncertainty.
+    std::erase_if(lines, [](const BudgetLine& line) { return line.share < 1e-12; });
     std::stable_sort(lines.begin(), lines.end(), [](const BudgetLine& a, const BudgetLine& b) { return a.u > b.u; });
 
     const std::size_t before = result.estimates.size();

@@ -87,6 +87,9 @@ std::optional<std::size_t> drive_release(std::span<const double> drive) {
   std::size_t edge = drive.size();
   while (edge > 0 && !(std::fabs(drive[edge - 1] - after) > 0.1 * swing)) --edge;
   if (edge == 0 || edge > drive.size() - 16) return std::nullopt;
+  // A drive goes off at once; a channel that itself dies away (the current of the same ringing) tells nothing here.
+  const std::size_t shortly = std::min(edge, std::max<std::size_t>(drive.size() / 100, 8));
+  if (largest_deviation(drive.subspan(edge - shortly, shortly), after) < 0.5 * swing) return std::nullopt;
   return edge;
 }
 

@@ -126,28 +126,33 @@ Result<Decay> without_clipped(CaptureDecay& result, const std::vector<FlatTop>& 
   search.near_omega = result.decay->fit.model.damped_omega();
   Result<Decay> decay = find_decay(masked, search);
   if (decay) {
-    result.resampled = std::move(masked);
-    result.samples = result.resampled;
+    result.own_samples = std::move(masked);
+    result.samples = result.own_samples;
   }
   return decay;
 }
 
 /// Clipped crests of the decay: the window restarts after the last of them where enough of the decay is left; otherwise
 /// the clipped samples alone are left out.
-void leave_out_clipped(CaptureDecay& result, const Channel& channel, DecaySearch& search) {
+void leave_out_clipped(CaptureDecay& result, const std::vector<const Channel*>& channels, DecaySearch& search) {
   const Decay& decay = *result.decay;
   const double w = decay.fit.model.damped_omega();
   const double period = w > 0 ? 2 * std::numbers::pi / w : INFINITY;
   std::vector<FlatTop> tops;
   std::size_t clipped = 0;
-  for (const FlatTop& top : find_flat_tops(channel, search.from.value_or(0), decay.end)) {
-    // A level held longer than half a period is a drive, not a crest.
-    if (static_cast<double>(top.end - top.first) > 0.55 * period) continue;
-    clipped += top.end - top.first;
-    tops.push_back(top);
+  std::string name;
+  for (const Channel* channel : channels) {
+    for (const FlatTop& top : find_flat_tops(*channel, search.from.value_or(0), decay.end)) {
+      // A level held longer than half a period is a drive, not a crest.
+      if (static_cast<double>(top.end - top.first) > 0.55 * period) continue;
+      clipped += top.end - top.first;
+      tops.push_back(top);
+      name = channel->name;
+    }
   }
   if (clipped == 0) return;
-  const std::string what = std::to_string(clipped) + " samples of " + shown(channel.name) + " are clipped";
+  std::sort(tops.begin(), tops.end(), [](const FlatTop& a, const FlatTop& b) { return a.end < b.end; });
+  const std::string what = std::to_string(clipped) + " samples of " + shown(name) + " are clipped";
   std::string how = "; the window begins after the last of them. A coarser range keeps the whole decay";
   const std::size_t last = tops.back().end;
   if (last > decay.first) {
@@ -160,13 +165,13 @@ void leave_out_clipped(CaptureDecay& result, const Channel& channel, DecaySearch
       result.decay.reset();
       result.findings.push_back({"clipped", Severity::refusal,
                                  what + " and what is left without them does not ring: capture again at a coarser range",
-                                 channel.name, static_cast<double>(clipped), Unit::one});
+                                 name, static_cast<double>(clipped), Unit::one});
       return;
     }
     result.decay = std::move(*rest);
   }
   result.findings.push_back(
-      {"clipped", Severity::caution, what + how, channel.name, static_cast<double>(clipped), Unit::one});
+      {"clipped", Severity::caution, what + how, name, static_cast<double>(clipped), Unit::one});
 }
 
 }  // namespace
@@ -179,14 +184,22 @@ Eigen::MatrixXd CaptureDecay::covariance() const {
   return fit.covariance.topLeftCorner(2, 2);
 }
 
-Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequest& request) {
-  const Result<std::size_t> voltage = voltage_channel(capture, request.bench);
-  if (!voltage) return failure(voltage);
-  Result<EvenRecord> record = on_even_steps(capture, *voltage);
-  if (!record) return failure(record);
+namespace {
 
-  CaptureDecay result;
-  const Channel& channel = capture.channels[*voltage];
+/// Samples of the voltage over the coil, the channels they were made of and the step between their codes.
+struct CoilVoltage {
+  std::vector<const Channel*> channels;   // as captured; empty where no sample stands as it was captured
+  std::string name;
+  double resolution = std::nan("");
+};
+
+/// Fills the record's samples and time: the voltage column, less the low column where one is named.
+Result<CoilVoltage> take_voltage(const Capture& capture, const RingDownRequest& request, CaptureDecay& result,
+                                 std::size_t voltage) {
+  const Channel& high = capture.channels[voltage];
+  CoilVoltage coil{{&high}, high.name, high.resolution};
+  Result<EvenRecord> record = on_even_steps(capture, voltage);
+  if (!record) return failure(record);
   result.step_s = record->step_s;
   result.start_s = record->start_s;
   result.findings = capture.findings;
@@ -195,65 +208,104 @@ Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequ
                                    [&](const Finding& other) { return other.code == finding.code; });
     if (!known) result.findings.push_back(std::move(finding));
   }
-  result.resampled = std::move(record->samples);
-  result.samples = result.resampled.empty() ? std::span<const double>(channel.samples) : result.resampled;
+  result.own_samples = std::move(record->samples);
+  if (!result.own_samples.empty()) {
+    coil.channels.clear();
+    coil.resolution = std::nan("");
+  }
+  if (request.bench.voltage.low_column) {
+    const Result<std::size_t> low = find_channel(capture, *request.bench.voltage.low_column, "--voltage-low");
+    if (!low) return failure(low);
+    Result<EvenRecord> other = on_even_steps(capture, *low);
+    if (!other) return failure(other);
+    const Channel& below = capture.channels[*low];
+    const std::vector<double>& subtract = other->samples.empty() ? below.samples : other->samples;
+    std::vector<double> difference = result.own_samples.empty() ? high.samples : std::move(result.own_samples);
+    difference.resize(std::min(difference.size(), subtract.size()));
+    for (std::size_t i = 0; i < difference.size(); ++i) difference[i] -= subtract[i];
+    result.own_samples = std::move(difference);
+    if (!coil.channels.empty()) {
+      coil.channels.push_back(&below);
+      coil.resolution = std::fmax(high.resolution, below.resolution);
+    }
+    coil.name += " - " + below.name;
+  }
+  result.samples = result.own_samples.empty() ? std::span<const double>(high.samples) : result.own_samples;
   if (request.bench.voltage.gain) result.gain = request.bench.voltage.gain->value;
+  return coil;
+}
+
+Finding why_not(const Error& error, const std::string& name, std::size_t samples) {
+  if (error.problem == Problem::too_few_samples) {
+    return {"too_few_samples", Severity::refusal, shown(name) + ": " + error.finding + "; " + error.remedy, name,
+            static_cast<double>(samples), Unit::one};
+  }
+  return {"no_ringing", Severity::refusal,
+          "no ringing stands out of the noise in " + shown(name) +
+              ": check the trigger, the range, the capacitor and that the coil was released",
+          name, 0, Unit::one};
+}
+
+/// Near critical damping: the region of (a, q) itself. Where it is open the natural frequency has only a lower limit, and
+/// the decay is given up with a refusal that says so.
+void take_contour(CaptureDecay& result, std::span<const double> window) {
+  DecayContour contour = decay_contour(window, result.decay->fit);
+  if (!contour.open) {
+    result.contour = std::move(contour.points);
+    return;
+  }
+  double least = INFINITY;
+  for (const DecayPoint& point : contour.points) {
+    const double omega = std::sqrt(std::fmax(point.a * point.a + point.q, 0)) / result.step_s;
+    least = std::fmin(least, omega / (2 * std::numbers::pi));
+  }
+  result.decay.reset();
+  result.findings.push_back({"near_critical", Severity::refusal,
+                             "the record shows one falling exponential: the circuit is damped beyond swinging and its "
+                             "natural frequency is only known to be above " +
+                                 to_text(least, Unit::hertz, Script::utf8, 2) +
+                                 "; use a larger capacitor, less damping across the coil or a quieter capture",
+                             "f_0", least, Unit::hertz});
+}
+
+}  // namespace
+
+Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequest& request) {
+  const Result<std::size_t> voltage = voltage_channel(capture, request.bench);
+  if (!voltage) return failure(voltage);
+  CaptureDecay result;
+  const Result<CoilVoltage> coil = take_voltage(capture, request, result, *voltage);
+  if (!coil) return failure(coil);
 
   DecaySearch search;
-  search.resolution = result.resampled.empty() ? channel.resolution : std::nan("");
-  if (result.resampled.empty()) search.drive = drive_channel(capture, *voltage);
+  search.resolution = coil->resolution;
+  if (!coil->channels.empty() && !request.bench.voltage.low_column) search.drive = drive_channel(capture, *voltage);
   search.from = sample_at(request.from_s, result);
   search.to = sample_at(request.to_s, result);
-
-  const auto refuse = [&](const std::string& code, const std::string& message, double figure) {
-    result.findings.push_back({code, Severity::refusal, message, channel.name, figure, Unit::one});
-  };
   Result<Decay> decay = find_decay(result.samples, search);
   if (!decay) {
-    switch (decay.error().problem) {
-      case Problem::too_few_samples:
-        refuse("too_few_samples", shown(channel.name) + ": " + decay.error().finding + "; " + decay.error().remedy,
-               static_cast<double>(result.samples.size()));
-        break;
-      default:
-        refuse("no_ringing",
-               "no ringing stands out of the noise in " + shown(channel.name) +
-                   ": check the trigger, the range, the capacitor and that the coil was released",
-               0);
-    }
+    result.findings.push_back(why_not(decay.error(), coil->name, result.samples.size()));
     return result;
   }
   result.decay = std::move(*decay);
-  if (result.resampled.empty()) leave_out_clipped(result, channel, search);
+  leave_out_clipped(result, coil->channels, search);
   if (!result.decay) return result;
 
   const auto window = result.samples.subspan(result.decay->first, result.decay->end - result.decay->first);
   result.structure = look_at_structure(window, *result.decay, search.resolution, result.step_s);
   for (const Finding& finding : result.structure.findings) result.findings.push_back(finding);
-  for (Finding& finding : check_range(channel, result.decay->first, result.decay->end)) {
-    result.findings.push_back(std::move(finding));
+  for (const Channel* channel : coil->channels) {
+    for (Finding& finding : check_range(*channel, result.decay->first, result.decay->end)) {
+      result.findings.push_back(std::move(finding));
+    }
   }
   if (!result.structure.modes && result.decay->fit.model.quality() < kCurvedRegion) {
-    DecayContour contour = decay_contour(window, result.decay->fit);
-    if (contour.open) {
-      double least = INFINITY;
-      for (const DecayPoint& point : contour.points) {
-        least = std::fmin(least, std::sqrt(std::fmax(point.a * point.a + point.q, 0)) / (2 * std::numbers::pi * result.step_s));
-      }
-      result.decay.reset();
-      result.findings.push_back({"near_critical", Severity::refusal,
-                                 "the record shows one falling exponential: the circuit is damped beyond swinging and its "
-                                 "natural frequency is only known to be above " +
-                                     to_text(least, Unit::hertz, Script::utf8, 2) +
-                                     "; use a larger capacitor, less damping across the coil or a quieter capture",
-                                 "f_0", least, Unit::hertz});
-      return result;
-    }
-    result.contour = std::move(contour.points);
+    take_contour(result, window);
+    if (!result.decay) return result;
   }
-  note_sampling(result, channel.name);
-  note_drive(result, channel.name, search.from.has_value());
-  if (search.from) warn_of_drive(result, search, channel.name);
+  note_sampling(result, coil->name);
+  note_drive(result, coil->name, search.from.has_value());
+  if (search.from) warn_of_drive(result, search, coil->name);
   return result;
 }
 

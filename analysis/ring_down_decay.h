@@ -18,7 +18,7 @@ struct CaptureDecay {
   double step_s = 0;
   double start_s = 0;                  // time of sample 0
   double gain = 1;                     // volts per unit of the column
-  std::vector<double> resampled;       // owns the samples when the record was uneven
+  std::vector<double> own_samples;     // of a record that was uneven, a difference of columns, or without clipped samples
   std::span<const double> samples;     // of the whole record
   std::optional<Decay> decay;          // absent: no ringing; findings say why
   DecayStructure structure;

@@ -154,6 +154,42 @@ TEST(RingDown, AStartTransientIsSkippedAndNoMoreThanNeeded) {
   EXPECT_LT(result.model->window_s->first, 0.4 * tau);
 }
 
+// An earthed scope over a coil that is not: both ends captured, the coil's voltage is their difference.
+TEST(RingDown, SubtractsTheLowColumn) {
+  synthetic::RingDownBench bench;
+  bench.noise_v = 2e-3;
+  auto record = simulated(bench);
+  Channel low = record.capture.channels[0];
+  low.name = "CH2";
+  low.column = 3;
+  Channel& high = record.capture.channels[0];
+  for (std::size_t i = 0; i < low.samples.size(); ++i) {
+    low.samples[i] = 0.8 * std::sin(0.0002 * static_cast<double>(i));   // hum on both ends
+    high.samples[i] += low.samples[i];
+  }
+  record.capture.channels.push_back(low);
+  RingDownRequest request = exact_request(bench);
+  request.bench.voltage.column = "CH1";
+  request.bench.voltage.low_column = "CH2";
+  const Measurement result = measured(record.capture, request);
+  ASSERT_NE(result.find("L_s"), nullptr);
+  EXPECT_TRUE(covers(*result.find("L_s"), 47e-6));
+  EXPECT_TRUE(covers(*result.find("R_s"), 0.35));
+}
+
+// The current of the same ringing dies away like the voltage: it must not be taken for the drive.
+TEST(RingDown, ASecondRingingChannelIsNoDrive) {
+  synthetic::RingDownBench bench;
+  bench.noise_v = 2e-3;
+  bench.resistance_ohm = 5;
+  auto record = simulated(bench);
+  const Measurement alone = measured(record.capture, exact_request(bench));
+  record.capture.channels.push_back(record.capture.channels[0]);
+  record.capture.channels[1].name = "CH2";
+  const Measurement both = measured(record.capture, exact_request(bench));
+  EXPECT_EQ(both.model->window_s->first, alone.model->window_s->first);
+}
+
 TEST(RingDown, TheStatedWindowIsKept) {
   synthetic::RingDownBench bench;
   bench.noise_v = 2e-3;
