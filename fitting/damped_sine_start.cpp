@@ -66,25 +66,32 @@ StrongestLine line_of(std::span<const double> values, std::size_t decimation) {
   return line;
 }
 
-// Averages of four of `values`, then of the samples that follow them; a NaN makes its average NaN.
+// Average of what is present; NaN when nothing is. For a start it does not matter that its place moves a little.
+double present_average(std::span<const double> values) {
+  const PresentSum present = present_sum(values, 0);
+  return present.count > 0 ? present.sum / static_cast<double>(present.count) : std::nan("");
+}
+
+// Averages of four of `values`, then of the samples that follow them.
 std::vector<double> averages(std::span<const double> y, std::size_t decimation, std::span<const double> values) {
   const std::size_t count = std::min(kStretch, y.size() / decimation), known = std::min(count, values.size() / 4);
   std::vector<double> result(count);
   for (std::size_t i = 0; i < known; ++i) {
     result[i] = (values[4 * i] + values[4 * i + 1] + values[4 * i + 2] + values[4 * i + 3]) / 4;
+    if (!std::isfinite(result[i])) result[i] = present_average(values.subspan(4 * i, 4));
   }
   // Four chains of additions keep pace with memory, and cost nothing to set up for short averages.
-  const double* v = y.data() + known * decimation;
   for (std::size_t i = known; i < count; ++i) {
+    const std::span<const double> block = y.subspan(i * decimation, decimation);
     double s0 = 0, s1 = 0, s2 = 0, s3 = 0;
     for (std::size_t m = 0; m < decimation; m += 4) {
-      s0 += v[m];
-      s1 += v[m + 1];
-      s2 += v[m + 2];
-      s3 += v[m + 3];
+      s0 += block[m];
+      s1 += block[m + 1];
+      s2 += block[m + 2];
+      s3 += block[m + 3];
     }
     result[i] = ((s0 + s1) + (s2 + s3)) / static_cast<double>(decimation);
-    v += decimation;
+    if (!std::isfinite(result[i])) result[i] = present_average(block);
   }
   return result;
 }

@@ -67,11 +67,6 @@ PeerRun run_peer(const std::string& file) {
   return run;
 }
 
-double median_of(std::vector<double> values) {
-  std::sort(values.begin(), values.end());
-  return values.empty() ? std::nan("") : values[values.size() / 2];
-}
-
 bool right(const Ringing& ringing, const Eigen::VectorXd& bound, double a, double w) {
   const double true_w = std::sqrt(ringing.q());
   return std::abs(a - ringing.a) < 6 * bound[0] && std::abs(w - true_w) < 6 * bound[1] / (2 * true_w);
@@ -93,8 +88,8 @@ bool compare(std::size_t samples, double quality) {
       (std::filesystem::temp_directory_path() / ("ring_down_benchmark_" + std::to_string(samples) + ".f64")).string();
   std::ofstream(file, std::ios::binary)
       .write(reinterpret_cast<const char*>(y.data()), static_cast<std::streamsize>(y.size() * sizeof(double)));
-  const int rounds = samples < 100000 ? 7 : samples < 5000000 ? 3 : 1;
-  std::vector<double> peer;
+  const int rounds = samples < 100000 ? 7 : samples < 5000000 ? 5 : 2;
+  double peer = 0;
   double ours = 1e9, compression = 1e9, reading = 1e9, used = 0;
   const double omega = ringing.omega0;
   for (int round = 0; round < rounds; ++round) {
@@ -105,16 +100,16 @@ bool compare(std::size_t samples, double quality) {
           std::min(compression, seconds_of([&] { used += block_sums(y, samples / 512, 512, omega, 0.03).sum[0]; }));
     }
     const PeerRun run = run_peer(file);
-    if (run.ok && right(ringing, bound, run.a, run.w)) peer.push_back(run.seconds);
+    if (run.ok && right(ringing, bound, run.a, run.w) && (peer == 0 || run.seconds < peer)) peer = run.seconds;
   }
   std::filesystem::remove(file);
   std::printf("%9zu  Q %5g  fit %9.3f ms  compression %8.3f ms = %4.1f reads", samples, quality, ours * 1e3,
               compression * 1e3, compression / reading);
-  if (peer.empty()) {
+  if (peer == 0) {
     std::printf("  peer: no right answer\n");
   } else {
-    const double ratio = median_of(peer) / ours;
-    std::printf("  peer %9.1f ms  %6.0f times faster (goal %g: %s)\n", median_of(peer) * 1e3, ratio, goal(samples),
+    const double ratio = peer / ours;
+    std::printf("  peer %9.1f ms  %6.0f times faster (goal %g: %s)\n", peer * 1e3, ratio, goal(samples),
                 ratio >= goal(samples) ? "kept" : "missed");
   }
   if (used == 12345.678) std::printf(" ");  // the work above must not be optimised away
@@ -128,7 +123,7 @@ int main(int argc, char** argv) {
   for (int i = 1; i < argc; ++i) sizes.push_back(static_cast<std::size_t>(std::atoll(argv[i])));
   if (sizes.empty()) sizes = {10000, 1000000, 10000000};
   bool all_right = true;
-  std::printf("ours: best of many; peer: median of runs with a right answer; same session, interleaved\n");
+  std::printf("best of many runs and best of the peer's right answers, interleaved; on a busy machine the peer suffers more\n");
   for (const std::size_t samples : sizes) {
     for (const double quality : {3.0, 10.0, 100.0, 1000.0}) all_right = compare(samples, quality) && all_right;
   }

@@ -109,6 +109,18 @@ TEST(DampedSine, ToleratesScatteredMissingSamplesAndGaps) {
   }
 }
 
+TEST(DampedSine, FindsASlowRingingInALongRecordOfWhichEveryFewSamplesAreMissing) {
+  const Ringing ringing = Ringing::of(1.5, 40, 200000);
+  std::vector<double> y = ringing.record(10);
+  Random random(11);
+  for (double& v : y) {
+    if (random.uniform() < 0.03) v = std::nan("");
+  }
+  const auto fit = fit_damped_sine(y);
+  ASSERT_TRUE(fit) << fit.error().finding;
+  expect_within(*fit, ringing.truth(), 4, "scattered in a long record");
+}
+
 TEST(DampedSine, BeginsAtAGivenFrequencyAndForgivesAWrongOne) {
   const Ringing ringing = Ringing::of(60, 40, 10000);
   const std::vector<double> y = ringing.record(9);
