@@ -47,6 +47,7 @@ Result<BenchSetup> stated_bench(const Arguments& arguments) {
   bench.reading.delimiter = *delimiter;
   bench.reading.decimal = *decimal;
   bench.voltage.column = arguments.text("--voltage");
+  bench.voltage.low_column = arguments.text("--voltage-low");
   bench.voltage.gain = arguments.stated("--voltage-gain");
   if (const auto ratio = arguments.plain("--timebase")) bench.timebase = StatedValue::unstated(*ratio, Unit::one);
   bench.temperature = arguments.stated("--temperature");

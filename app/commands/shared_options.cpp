@@ -29,6 +29,14 @@ Option voltage_column() {
           .example = "CH2"};
 }
 
+Option voltage_low_column() {
+  return {.name = "--voltage-low",
+          .kind = ValueKind::text,
+          .value_name = "COL",
+          .help = "column that is subtracted from the voltage first, for a coil whose low end is not at earth",
+          .example = "CH2"};
+}
+
 Option voltage_gain() {
   return {.name = "--voltage-gain",
           .kind = ValueKind::stated,
@@ -69,6 +77,7 @@ OptionGroup reading_options() {
       .title = "Reading the file",
       .options = {
           voltage_column(),
+          voltage_low_column(),
           voltage_gain(),
           segment(),
           {.name = "--delimiter",

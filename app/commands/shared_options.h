@@ -17,6 +17,7 @@ OptionGroup everywhere_options();  // for all others
 
 // Single options that stand in groups of their own.
 Option voltage_column();
+Option voltage_low_column();
 Option voltage_gain();
 Option bench_file();
 Option segment();

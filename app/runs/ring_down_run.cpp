@@ -37,12 +37,6 @@ Result<Measurement> run_ring_down(const RingDownJob& job, const RunContext& cont
   }
   Result<BenchSetup> bench = bench_of(job);
   if (!bench) return failure(bench);
-  // Taking the difference here would hide the clipping of either column from the measurement.
-  if (bench->voltage.low_column) {
-    return failure(Problem::usage, job.bench_sheet.value_or("--bench"),
-                   "a ring-down is measured on one column, and the sheet names a low_column to be subtracted",
-                   "capture the difference itself, with a differential probe or the instrument's own arithmetic");
-  }
   Result<CapturesRead> read = read_captures(
       {.files = job.files, .segment = job.segment, .reading = bench->reading, .test = "ringdown"}, context);
   if (!read) return failure(read);

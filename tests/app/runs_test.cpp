@@ -207,7 +207,8 @@ TEST(RingDownRun, DoesNotPassOverAColumnThatShouldBeSubtracted) {
   job.bench_sheet = folder.file("bench.toml", "[voltage]\ncolumn = \"CH1\"\nlow_column = \"CH2\"\n");
   const auto measured = run_ring_down(job, {});
   ASSERT_FALSE(measured);
-  EXPECT_THAT(measured.error().finding, HasSubstr("low_column"));
+  EXPECT_EQ(measured.error().problem, Problem::missing_column);
+  EXPECT_THAT(measured.error().finding, HasSubstr("CH2"));
 }
 
 /// Two records in one file: the time starts again.
