@@ -47,7 +47,7 @@ inline bool digit(char c) { return static_cast<unsigned char>(c - '0') < 10; }
 inline std::uint64_t digit_value(char c) { return static_cast<std::uint64_t>(c - '0'); }
 
 /// Whether the eight bytes at p are digits; if so their value. Eight at a time in one register: pairs, fours, eights.
-inline bool eight_digits(const char* p, std::uint64_t& value) {
+[[gnu::always_inline]] inline bool eight_digits(const char* p, std::uint64_t& value) {
   std::uint64_t v = 0;
   std::memcpy(&v, p, 8);
   if (((v & 0xF0F0F0F0F0F0F0F0U) | (((v + 0x0606060606060606U) & 0xF0F0F0F0F0F0F0F0U) >> 4U)) != 0x3333333333333333U) {
@@ -69,7 +69,7 @@ inline bool eight_digits(const char* p, std::uint64_t& value) {
 /// Reads at most 32 bytes beyond the number: the caller's buffer is padded.
 /// @return the first byte behind the number, or nullptr when read_cell must look at the cell.
 template <char decimal>
-inline const char* scan_number(const char* p, int shift, double& value) {
+[[gnu::always_inline]] inline const char* scan_number(const char* p, int shift, double& value) {
   using namespace number_scan_detail;
   const bool negative = *p == '-';
   p += (negative || *p == '+') ? 1 : 0;
