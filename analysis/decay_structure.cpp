@@ -161,6 +161,12 @@ DecayStructure look_at_structure(std::span<const double> window, const Decay& de
       // Two coupled resonators: the stronger mode lies off the lone one by the splitting times share/(1 + share).
       const double w1 = std::sqrt(two.fit->first.q);
       structure.spread_q = 2 * w1 * distance * share * share / (1 + share * share);
+      if (two.residuals.chance < kImprobable) {
+        // Two modes are not the whole story either: what is left may act on either parameter.
+        const double relative = two.residuals.misfit_amplitude / std::fmax(amplitude, 1e-300);
+        structure.spread_a += two.fit->first.a * std::fmin(2 * relative, 1);
+        structure.spread_q += 2 * w1 * two.fit->first.a * relative;
+      }
       structure.modes = std::move(two.fit);
       return structure;
     }

@@ -14,6 +14,8 @@ namespace coilassay {
 namespace {
 
 constexpr double kFewCycles = 3;
+constexpr double kLeastFall = 0.02;      // of the logarithm of the amplitude over the window
+constexpr double kClearDecay = 2.5;      // standard uncertainties
 constexpr double kCurvedRegion = 2;      // Q below: the region of (a, q) is far from an ellipse at moderate noise
 constexpr double kHardlySampled = 2.2;   // samples a period: the fold could be on either side
 constexpr double kThinlySampled = 5;
@@ -268,6 +270,22 @@ void take_contour(CaptureDecay& result, std::span<const double> window) {
                              "f_0", least, Unit::hertz});
 }
 
+/// A sine whose amplitude does not fall is driven: its frequency is the generator's, not the coil's.
+bool refuse_steady(CaptureDecay& result, const std::string& channel) {
+  const double length = static_cast<double>(result.decay->end - result.decay->first);
+  const double u = std::sqrt(std::fmax(result.covariance()(0, 0), 0)) + result.structure.spread_a;
+  const double cycles = result.model().damped_omega() * length / (2 * std::numbers::pi);
+  const double fall = result.a() * length;
+  if (cycles < kFewCycles || (fall > kLeastFall && result.a() > kClearDecay * u)) return false;
+  result.decay.reset();
+  result.findings.push_back({"drive_in_window", Severity::refusal,
+                             "the amplitude in " + shown(channel) + (fall < 0 ? " grows" : " does not fall") +
+                                 " over the window: this is a driven sine, not a free decay, and its frequency says nothing "
+                                 "about the coil. Release the coil and capture what follows, for at least a tenth of its decay",
+                             channel, fall, Unit::one});
+  return true;
+}
+
 }  // namespace
 
 Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequest& request) {
@@ -303,9 +321,10 @@ Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequ
     take_contour(result, window);
     if (!result.decay) return result;
   }
-  note_sampling(result, coil->name);
   note_drive(result, coil->name, search.from.has_value());
   if (search.from) warn_of_drive(result, search, coil->name);
+  if (refuse_steady(result, coil->name)) return result;
+  note_sampling(result, coil->name);
   return result;
 }
 

@@ -144,6 +144,25 @@ TEST(RingDownFindings, NoRingingIsRefusedWithoutANumber) {
   EXPECT_TRUE(result.estimates.empty());
 }
 
+// The frequency of a driven sine is the generator's.
+TEST(RingDownFindings, ASteadyOrGrowingSineIsRefused) {
+  for (const double growth : {0.0, 1e-6, -1e-4}) {
+    Capture capture;
+    capture.source.name = "made";
+    capture.time = {0, 1e-7, {}};
+    Channel channel;
+    channel.name = "CH1";
+    channel.unit = Unit::volt;
+    Random random(2);
+    for (int i = 0; i < 5000; ++i) channel.samples.push_back(std::exp(-growth * i) * std::sin(0.07 * i) + 0.01 * random.normal());
+    capture.channels.push_back(channel);
+    const Measurement result = measured(capture, {});
+    EXPECT_EQ(result.find("f_0"), nullptr) << growth;
+    ASSERT_TRUE(result.has_finding("drive_in_window")) << growth;
+    EXPECT_EQ(finding(result, "drive_in_window")->severity, Severity::refusal) << growth;
+  }
+}
+
 // At most 3 in 300 clean captures raise a caution or a refusal (full size in tests/proof).
 TEST(RingDownFindings, StaySilentOnCleanCaptures) {
   int alarms = 0;
