@@ -153,6 +153,16 @@ CellValue to_value(const Written& written, int shift) {
   return {CellKind::number, value};
 }
 
+/// Long numbers in their plain form, the usual reason why the quick scan gave up.
+bool read_long(std::string_view cell, double& value) {
+  const bool plus = cell.starts_with('+');  // from_chars knows a minus only
+  if (plus) cell.remove_prefix(1);
+  const std::size_t sign = !plus && cell.starts_with('-') ? 1 : 0;
+  if (cell.size() <= sign || !(digit(cell[sign]) || cell[sign] == '.')) return false;  // it takes inf and nan, which are none here
+  const auto [end, problem] = std::from_chars(cell.data(), cell.data() + cell.size(), value);
+  return problem == std::errc() && end == cell.data() + cell.size() && std::fabs(value) < kScpiInfinity;
+}
+
 }  // namespace
 
 CellValue read_cell(std::string_view cell, char decimal, int shift) {
@@ -160,6 +170,8 @@ CellValue read_cell(std::string_view cell, char decimal, int shift) {
   if (cell.size() >= 2 && (cell.front() == '"' || cell.front() == '\'') && cell.back() == cell.front()) {
     cell = trimmed(cell.substr(1, cell.size() - 2));
   }
+  double value = 0;
+  if (decimal == '.' && shift == 0 && read_long(cell, value)) return {CellKind::number, value};
   Written written;
   if (take_number(cell, decimal, written)) return to_value(written, shift);
   return {word_kind(cell), std::nan("")};

@@ -91,13 +91,19 @@ bool is_integer(std::string_view cell) {
 std::optional<std::string> comma_is_both(const std::vector<TableLine>& lines, const TableDialect& dialect) {
   std::map<std::size_t, std::size_t> widths;
   std::size_t fraction_zeros = 0;
+  bool exponents = false;
   std::size_t looked_at = 0;
   for (std::size_t i = dialect.first_row; i < lines.size() && looked_at < kLinesJudged; ++i) {
     const auto cells = cells_of(lines[i].text, ',');
     if (!is_row_of_numbers(cells, '.')) continue;
     // Real decimal points, or a sign on every second cell, and the commas can only separate.
     for (std::size_t c = 0; c < cells.size(); ++c) {
-      if (!is_integer(cells[c]) && !bare_cell(cells[c]).empty()) return std::nullopt;
+      const std::string_view cell = bare_cell(cells[c]);
+      const std::size_t e = cell.find_first_of("eE");
+      const bool fraction_with_exponent = c % 2 == 1 && e != std::string_view::npos && only_digits(cell.substr(0, e));
+      if (!is_integer(cell) && !cell.empty() && !fraction_with_exponent) return std::nullopt;
+      if (c % 2 == 1 && cells.size() % 2 == 0 && (cell.starts_with('-') || cell.starts_with('+'))) return std::nullopt;
+      exponents |= fraction_with_exponent;
     }
     ++looked_at;
     ++widths[cells.size()];
@@ -107,6 +113,7 @@ std::optional<std::string> comma_is_both(const std::vector<TableLine>& lines, co
     }
   }
   if (looked_at == 0) return std::nullopt;
+  if (exponents) return "cells such as '5e-3' beside whole numbers look like digits behind a decimal comma";
   if (fraction_zeros > 0) return "cells such as '05' look like digits behind a decimal comma";
   if (widths.size() > 1) return "the rows have different numbers of cells, as whole numbers written without a comma would";
   if (dialect.first_row > 0 && dialect.width > 1 && dialect.width % 2 == 0) {

@@ -50,12 +50,14 @@ double rising_step(const std::vector<double>& column) {
   return run < 2 ? 0 : (column[run - 1] - column.front()) / static_cast<double>(run - 1);
 }
 
-bool rises_evenly(const std::vector<double>& column) {
+/// Many rows may be rounded to few digits; a handful must rise in exact steps before that alone makes them time.
+bool rises_evenly(const std::vector<double>& column, bool has_name) {
   const double step = rising_step(column);
   const std::size_t run = first_run(column);
-  if (!(step > 0) || run < 3) return false;
+  if (!(step > 0) || run < 3 || (has_name && run < 8)) return false;
+  const double allowed = run >= 20 && !has_name ? 0.6 : 0.02;
   for (std::size_t i = 0; i < run; ++i) {
-    if (std::fabs(column[i] - column.front() - static_cast<double>(i) * step) > 0.6 * step) return false;
+    if (std::fabs(column[i] - column.front() - static_cast<double>(i) * step) > allowed * step) return false;
   }
   return true;
 }
@@ -72,10 +74,17 @@ bool counts_rows(const std::vector<double>& column) {
 class ColumnJudge {
  public:
   ColumnJudge(const std::vector<TableLine>& lines, const TableDialect& dialect, const TableHeader& header)
-      : header_(header), values_(first_rows(lines, dialect)) {}
+      : dialect_(dialect), header_(header), values_(first_rows(lines, dialect)) {}
 
   const std::vector<double>& values(std::size_t c) const { return values_[c]; }
   bool empty(std::size_t c) const { return header_.columns[c].left_out || all_missing(values_[c]); }
+
+  /// Nothing but blanks in the first rows, and no name that promises a channel (settings may be named there).
+  bool left_blank(std::size_t c) const {
+    if (std::find(dialect_.empty_columns.begin(), dialect_.empty_columns.end(), c) == dialect_.empty_columns.end()) return false;
+    const std::string& name = header_.columns[c].name;
+    return dialect_.beside > 0 || name.empty() || header_.settings.contains(name);
+  }
 
   bool is_index(std::size_t c) const {
     const std::string& name = header_.columns[c].name;
@@ -99,13 +108,22 @@ class ColumnJudge {
     // Nothing says it: the first column that is no row number, if it rises evenly.
     for (std::size_t c = 0; c < width; ++c) {
       if (empty(c) || is_index(c)) continue;
-      if (width > 1 && !header_.columns[c].unit && rises_evenly(values_[c])) return c;
+      const bool even = !header_.columns[c].unit && rises_evenly(values_[c], !header_.columns[c].name.empty());
+      if (even && others_hold_samples(c)) return c;
       break;
     }
     return std::nullopt;
   }
 
  private:
+  bool others_hold_samples(std::size_t time) const {
+    for (std::size_t c = 0; c < values_.size(); ++c) {
+      if (c != time && !empty(c) && !is_index(c)) return true;
+    }
+    return false;
+  }
+
+  const TableDialect& dialect_;
   const TableHeader& header_;
   std::vector<std::vector<double>> values_;
 };
@@ -183,7 +201,7 @@ Result<TableMeaning> understand_columns(const std::string& name, const std::vect
     } else if (time == c) {
       meaning.time = meaning.layout.stored();
       plan.shift = time_shift(heading.name, heading, judge.values(c), meaning.interval_s, meaning.findings);
-    } else if (judge.empty(c) || (judge.is_index(c) && !is_sweep)) {
+    } else if (judge.left_blank(c) || (judge.is_index(c) && !is_sweep)) {
       plan.stored = false;
     } else {
       ChannelMeaning channel;

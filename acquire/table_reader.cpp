@@ -40,6 +40,9 @@ class TableRead {
     if (const auto understood = understand(); !understood) return failure(understood);
     if (const auto done = read_rows(); !done) return failure(done);
     std::vector<Capture> list = captures();
+    if (std::all_of(list.begin(), list.end(), [](const Capture& c) { return c.channels.empty(); })) {
+      return failure(Problem::not_a_capture, name_, "no channel holds a single number", "export the waveform again");
+    }
     if (!sweep_plan_) return Recording(std::move(list));
     if (list.size() > 1) {
       return failure(Problem::not_a_capture, name_, fmt::format("it holds {} sweeps one after the other", list.size()),

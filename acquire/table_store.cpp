@@ -135,6 +135,7 @@ Capture TableStore::finish_record(Record& record) const {
     channel.samples = record.columns[c].take();
     channel.missing = static_cast<std::size_t>(
         std::count_if(channel.samples.begin(), channel.samples.end(), [](double v) { return std::isnan(v); }));
+    if (channel.missing == channel.samples.size()) continue;  // a column somebody reserved and nobody filled
     channel.resolution = from.resolution > 0 ? from.resolution : find_resolution(channel.samples);
     if (channel.missing > 0) {
       const std::size_t over = record.over_range[c];
@@ -169,6 +170,10 @@ void TableStore::set_time(const Record& record, Capture& capture) const {
                                   fmt::format("the time stamps have few digits: the time step is known to {:.2g} % only; export with more digits",
                                               100 * story.step_doubt),
                                   "time", story.step_doubt, Unit::one});
+    } else if (story.runs_back) {
+      capture.findings.push_back({"uneven_step", Severity::caution,
+                                  "some time stamps are earlier than those before them: the rows are out of order or a stamp is wrong",
+                                  "time", story.largest_deviation_steps, Unit::one});
     } else if (!story.axis.uniform()) {
       capture.findings.push_back({"uneven_step", Severity::note,
                                   fmt::format("the time steps are not even: stamps lie up to {:.3g} steps beside even ones",

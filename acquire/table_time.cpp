@@ -88,8 +88,13 @@ std::size_t TimeFollower::until_restart(std::span<const double> stamps) const {
   bool falls = stamps.front() < before;
   for (std::size_t i = 1; i < stamps.size(); ++i) falls |= stamps[i] < stamps[i - 1];
   if (!falls) return stamps.size();
+  if (typical_step_ == 0) return stamps.size();  // time that never rises is one record, and told
+  double before_that = count_ > 1 ? previous_to_last_ : before - typical_step_;
   for (std::size_t i = 0; i < stamps.size(); ++i) {
-    if (jumps_back(before, stamps[i])) return i;
+    // One stamp gone wrong (a lost sign, say) jumps ahead and falls back to where time goes on: no other record.
+    const bool goes_on = std::fabs(stamps[i] - before_that - 2 * typical_step_) < 0.6 * typical_step_;
+    if (jumps_back(before, stamps[i]) && !goes_on) return i;
+    before_that = before;
     before = stamps[i];
   }
   return stamps.size();
@@ -112,6 +117,7 @@ std::size_t TimeFollower::follow(std::span<const double> stamps) {
     if (count_ < kKept && kept_.size() >= kKept) try_to_summarise();
   }
   count_ += accepted;
+  previous_to_last_ = stamps.size() > 1 ? stamps[stamps.size() - 2] : last_;
   last_ = stamps.back();
   return accepted;
 }
@@ -311,6 +317,7 @@ TimeStory TimeFollower::finish(std::optional<double> stated_step_s) const {
     return story;
   }
   story.largest_deviation_steps = line.step > 0 ? largest / line.step : 0;
+  story.runs_back = !std::is_sorted(kept_.begin(), kept_.end());
   story.axis.times_s = kept_;
   for (std::size_t n = kept_.size(); n < count_; ++n) story.axis.times_s.push_back(line.at(static_cast<double>(n)));
   return story;

@@ -17,6 +17,7 @@ struct TimeStory {
   bool every_stamp_twice = false;     // minimum and maximum of an interval exported as two samples
   double distinct_step_s = 0;         // step between distinct stamps, when those are even
   double largest_deviation_steps = 0; // from even steps, when they are not
+  bool runs_back = false;             // some stamps are earlier than those before them
   double step_doubt = 0;              // relative: what the rounding of the stamps leaves open of an even step
   bool step_lost = false;             // it leaves the step itself open: the axis has none
 };
