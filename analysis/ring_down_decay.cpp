@@ -266,7 +266,7 @@ void take_contour(CaptureDecay& result, std::span<const double> window) {
                              "the record shows one falling exponential: the circuit is damped beyond swinging and its "
                              "natural frequency is only known to be above " +
                                  to_text(least, Unit::hertz, Script::utf8, 2) +
-                                 "; use a larger capacitor, less damping across the coil or a quieter capture",
+                                 "; use a smaller capacitor, take away what damps the coil, or capture with less noise",
                              "f_0", least, Unit::hertz});
 }
 
