@@ -69,14 +69,15 @@ void compare_codes(const std::vector<SourceFile>& sources, const std::string& pa
   EXPECT_THAT(unknown, IsEmpty()) << "explained in " << page_name << ", but raised nowhere: " << join(unknown);
 }
 
-std::vector<SourceFile> rooms_without(const std::string& left_out) {
-  auto files = source_files({"base", "acquire", "fitting", "analysis", "inspection", "ledger", "report", "app"}, {".h", ".cpp"});
-  std::erase_if(files, [&](const SourceFile& file) { return file.path == left_out; });
+/// Rooms that raise findings; report/ and app/ only show them.
+std::vector<SourceFile> raising_rooms() {
+  auto files = source_files({"base", "acquire", "fitting", "analysis", "inspection", "ledger"}, {".h", ".cpp"});
+  std::erase_if(files, [](const SourceFile& file) { return file.path == "analysis/cautions.cpp"; });
   return files;
 }
 
 TEST(Documents, EveryFindingHasItsParagraphAndEveryParagraphItsFinding) {
-  compare_codes(rooms_without("analysis/cautions.cpp"), "docs/findings.md");
+  compare_codes(raising_rooms(), "docs/findings.md");
 }
 
 TEST(Documents, EveryCautionHasItsParagraphAndEveryParagraphItsCaution) {
@@ -153,7 +154,8 @@ TEST(Documents, EveryLinkLeadsSomewhere) {
 TEST(Documents, PagesNamedInTheCodeExist) {
   static const std::regex page(R"(docs/[a-z0-9_-]+\.md(#[a-z0-9_-]+)?)");
   std::size_t seen = 0;
-  for (const SourceFile& file : rooms_without("")) {
+  const std::vector<std::string> rooms{"base", "acquire", "fitting", "analysis", "inspection", "ledger", "report", "app"};
+  for (const SourceFile& file : source_files(rooms, {".h", ".cpp"})) {
     for (const std::string& line : file.lines) {
       for (auto at = std::sregex_iterator(line.begin(), line.end(), page); at != std::sregex_iterator(); ++at, ++seen) {
         EXPECT_EQ(broken_link(".", at->str()), "") << file.path;
