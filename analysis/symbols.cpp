@@ -22,6 +22,8 @@ constexpr std::array kSymbols = {
     Symbol{"R_par", Unit::ohm, "parallel loss resistance"},
     Symbol{"R_dc", Unit::ohm, "winding resistance"},
     Symbol{"R_dc_20", Unit::ohm, "winding resistance at 20 degC"},
+    Symbol{"T_winding", Unit::degree_celsius, "winding temperature"},
+    Symbol{"T_rise", Unit::kelvin, "rise over the air"},
     Symbol{"R_ac", Unit::ohm, "AC resistance"},
     Symbol{"f_0", Unit::hertz, "natural frequency"},
     Symbol{"f_d", Unit::hertz, "damped frequency"},
