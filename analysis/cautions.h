@@ -1,6 +1,7 @@
 // Cautions about people and equipment, computed from the user's own input (docs/cautions.md).
 #pragma once
 
+#include <cmath>
 #include <vector>
 
 #include "analysis/measurement.h"
@@ -12,5 +13,28 @@ namespace coilassay {
 /// Thresholds: energy note from the first, caution from 50 mJ, stop from 1 J (from memory); 42 V peak is the usual limit
 /// for touchable parts (from memory). The energy is always stated, as a note when it is small.
 std::vector<Caution> ring_down_cautions(double peak_voltage_v, double peak_current_a, double energy_j);
+
+/// What one pulse of a saturation test does.
+struct RampLoad {
+  double peak_a = 0, energy_j = 0, inductance_h = 0;
+  bool fall_seen = false;            // the current was seen to fall through a diode
+  double winding_j = 0;              // heat of one pulse in the winding ...
+  bool winding_assumed = false;      // ... by a resistance nobody stated
+  double shunt_j = std::nan("");     // in the shunt; NaN: none stated
+  double period_s = std::nan("");    // of repeated pulses; NaN: one
+};
+/// Energy at the peak current, flyback without a clamp (I sqrt(L/C) into an assumed 100 pF), heat per pulse and by
+/// repetition.
+std::vector<Caution> ramp_cautions(const RampLoad& load);
+
+/// What a steady sine does to coil and bench; peak values.
+struct SineLoad {
+  double peak_v = 0, peak_a = 0;
+  double energy_j = std::nan("");    // at the crest of the current; NaN: inductance not known
+  double shunt_w = std::nan("");     // mean power in the shunt; NaN: none
+  bool shares_earth = false;         // shunt and coil on inputs of one earth, nothing subtracted
+};
+/// Energy at the crest, voltage, heat of the shunt, and where the shunt must sit on an earthed scope.
+std::vector<Caution> sine_cautions(const SineLoad& load);
 
 }  // namespace coilassay

@@ -106,6 +106,7 @@ struct Point {
   std::optional<double> at_hz, level_a, bias_a, capacitance_f;
   std::vector<Estimate> estimates;
   std::string from;          // "model", "data" or a file name
+  std::optional<std::size_t> index = std::nullopt;   // of a pulse, counted from 1
 };
 
 struct Measurement {
@@ -126,6 +127,7 @@ struct Measurement {
   std::vector<Caution> cautions;
   std::optional<ModelSummary> model;
   std::vector<Point> points;
+  std::vector<Point> pulses;         // of a ramp with several: what each one says
   std::vector<Table> tables;
   std::vector<std::string> advice;   // sentences for people: what to try next
 

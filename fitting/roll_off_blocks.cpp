@@ -47,8 +47,10 @@ RollOffBlocks roll_off_blocks(std::span<const double> x, std::span<const double>
   end = std::min({end, x.size(), y.size()});
   if (first + 3 * kLeastLength > end) return blocks;
   const std::size_t samples = end - first;
-  const std::size_t count = std::min(most, samples / kLeastLength);
-  blocks.length = samples / count;
+  // Whole blocks to the very end: that is where a coil saturates.
+  blocks.length = std::max(kLeastLength, (samples + most - 1) / most);
+  const std::size_t count = samples / blocks.length;
+  first = end - count * blocks.length;
   blocks.x.reserve(count);
   blocks.y.reserve(count);
   double square = 0, run = 0;
@@ -56,6 +58,7 @@ RollOffBlocks roll_off_blocks(std::span<const double> x, std::span<const double>
     const std::size_t at = first + b * blocks.length;
     const Line line = line_of(x.data() + at, y.data() + at, blocks.length);
     if (!std::isfinite(line.mean_x) || !std::isfinite(line.mean_y)) continue;
+    blocks.first.push_back(at);
     blocks.x.push_back(line.mean_x);
     blocks.y.push_back(line.mean_y);
     square += line.square;

@@ -16,13 +16,15 @@ namespace coilassay {
 /// Means of x and y over blocks of samples, and what the samples inside the blocks say about noise.
 struct RollOffBlocks {
   std::vector<double> x, y;
+  std::vector<std::size_t> first;   // first sample of each block
   std::size_t length = 0;        // samples of a block
   double sigma = 0;              // of one sample of y about straight lines through its block
   double sigma_of_mean = 0;      // of a block mean: sigma/sqrt(length), and rounding that the noise does not dither
   double dof = 0;                // of sigma
 };
 
-/// Blocks over [first, end) of two arrays; at least 8 samples each, `most` blocks at most. Blocks with a NaN are left out.
+/// Blocks over [first, end) of two arrays; at least 8 samples each, `most` blocks at most; what does not fill a block is left
+/// out at the beginning. Blocks with a NaN are left out.
 /// Rounding of y to steps of `resolution` (NaN or 0: none) that noise leaves undithered widens sigma_of_mean.
 /// Fewer than 24 samples give no blocks.
 RollOffBlocks roll_off_blocks(std::span<const double> x, std::span<const double> y, std::size_t first, std::size_t end,
