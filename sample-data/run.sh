@@ -23,7 +23,15 @@ measure() {
   name=$1
   shift
   echo
-  echo "\$ coilassay ringdown $*"
+  # As it would be typed: a bracket means something to the shell.
+  typed=
+  for word in "$@"; do
+    case $word in
+      *'('*) typed="$typed '$word'" ;;
+      *) typed="$typed $word" ;;
+    esac
+  done
+  echo "\$ coilassay ringdown$typed"
   "$program" ringdown "$@" --report "$reports/$name.html"
 }
 
