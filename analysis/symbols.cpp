@@ -41,6 +41,7 @@ constexpr std::array kSymbols = {
     Symbol{"P", Unit::watt, "real power"},
     Symbol{"P_winding", Unit::watt, "winding loss"},
     Symbol{"f_r", Unit::hertz, "self-resonance"},
+    Symbol{"skew", Unit::second, "delay of the current channel"},
     Symbol{"L_1", Unit::henry, "primary inductance"},
     Symbol{"L_2", Unit::henry, "secondary inductance"},
     Symbol{"M", Unit::henry, "mutual inductance"},

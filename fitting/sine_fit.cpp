@@ -344,7 +344,7 @@ Result<SineFit> fit_sines(std::span<const SineChannel> inputs, const SineFitOpti
     for (std::size_t c = 0; c < channels.size(); ++c) {
       fitted[c].phasor = channels[c].solution.phasor();
       fitted[c].offset = channels[c].solution.linear[2] + channels[c].reference;
-      looks[c] = look_at_samples(inputs[c].y, settled.omega, centre, fitted[c].phasor, fitted[c].offset);
+      looks[c] = look_at_samples(inputs[c].y, settled.omega, centre, fitted[c].offset);
     }
     if (round == (few ? 6 : 2) || !settled.converged) break;
     if (!take_out_harmonics(channels, looks, taken, settled.omega, centre)) break;
