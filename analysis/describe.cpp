@@ -2,81 +2,52 @@
 
 #include <algorithm>
 #include <cmath>
-#include <numbers>
+#include <span>
 
 #include "analysis/capture_checks.h"
-#include "analysis/decay_window.h"
-#include "analysis/even_steps.h"
+#include "analysis/describe_spectrum.h"
+#include "analysis/describe_suggestion.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
-#include "fitting/spectrum.h"
 
 namespace coilassay {
 
 namespace {
 
-constexpr std::size_t kSpectrumLength = 16384;
-constexpr std::size_t kBands = 12;
-constexpr double kNearNyquist = 0.8;      // of half the sampling rate
+constexpr double kFewCycles = 3;         // as in ring_down_decay.cpp
+constexpr double kThinlySampled = 5;     // samples a period
+constexpr double kHardlySampled = 2.2;
+constexpr double kMostlyHigh = 0.6;      // of the power, above 0.8 of half the sampling rate
+constexpr double kEvenSteps = 1e-3;      // of a step: how far an even step may be off
 
-/// The largest stretch without missing samples among a few, at most kSpectrumLength long, from the end of the record:
-/// there a transient has calmed down.
-std::vector<double> stretch_for_noise(std::span<const double> samples) {
-  const std::size_t length = std::min(samples.size(), kSpectrumLength);
-  std::vector<double> best;
-  std::vector<double> run;
-  for (const double v : samples.last(length)) {
-    if (std::isnan(v)) {
-      if (run.size() > best.size()) best = run;
-      run.clear();
-    } else {
-      run.push_back(v);
-    }
-  }
-  return run.size() > best.size() ? run : best;
+std::string figure_text(double figure) { return to_text(figure, Unit::one, Script::utf8, 2); }
+
+/// The level next to a flat top is far away within an eighth of the top's length: a switch, not a crest.
+bool is_jump(const Channel& channel, const FlatTop& top, double span) {
+  const std::size_t reach = std::max<std::size_t>((top.end - top.first) / 8, 1);
+  const double level = channel.samples[top.first];
+  const auto left = [&](std::size_t i) { return std::fabs(channel.samples[i] - level) > span / 2; };
+  return (top.first >= reach && left(top.first - reach)) ||
+         (top.end + reach <= channel.samples.size() && left(top.end + reach - 1));
 }
 
-/// Hann window times samples less a straight line between the ends: no step where the transform joins them.
-std::vector<double> tapered_power(std::vector<double> v) {
-  const auto n = static_cast<double>(v.size());
-  const double first = v.front(), slope = (v.back() - v.front()) / (n - 1);
-  for (std::size_t i = 0; i < v.size(); ++i) {
-    const auto x = static_cast<double>(i);
-    const double taper = 0.5 - 0.5 * std::cos(2 * std::numbers::pi * (x + 0.5) / n);
-    v[i] = (v[i] - first - slope * x) * taper;
-  }
-  return power_spectrum(v);
-}
-
-/// Strong energy close to half the sampling rate: what is above it folds back unseen.
-bool rises_towards_nyquist(const std::vector<double>& power) {
-  if (power.size() < 64) return false;
-  const std::size_t first = static_cast<std::size_t>(kNearNyquist * static_cast<double>(power.size()));
-  double high = 0, total = 0;
-  for (std::size_t k = 2; k < power.size(); ++k) {
-    total += power[k];
-    if (k >= first) high += power[k];
-  }
-  return total > 0 && high > 0.6 * total;
-}
-
-std::size_t clipped_samples(const Channel& channel) {
-  // A level held for more than a twentieth of the record is a state of the circuit, not a crest cut off.
-  const std::size_t longest = std::max<std::size_t>(channel.samples.size() / 20, 3);
+std::size_t clipped_samples(const Channel& channel, double span) {
+  const std::size_t all = channel.samples.size();
   std::size_t count = 0;
-  for (const FlatTop& top : find_flat_tops(channel, 0, channel.samples.size())) {
-    if (top.end - top.first <= longest) count += top.end - top.first;
+  for (const FlatTop& top : find_flat_tops(channel, 0, all)) {
+    const std::size_t length = top.end - top.first;
+    const bool at_scale = !std::isnan(channel.full_scale) && !std::isnan(channel.resolution) &&
+                          std::fabs(channel.samples[top.first]) >= channel.full_scale - 1.01 * channel.resolution;
+    // A level held for long is a state of the circuit if the record begins or ends in it or something switched it.
+    const bool held = length > std::max<std::size_t>(all / 20, 3) &&
+                      (top.first == 0 || top.end == all || is_jump(channel, top, span));
+    if (at_scale || !held) count += length;
   }
   return count;
 }
 
-ChannelDescription describe_channel(const Channel& channel, std::vector<Finding>& findings) {
-  ChannelDescription d;
-  d.name = channel.name;
-  d.unit = channel.unit;
-  d.missing = channel.missing;
-  d.resolution = channel.resolution;
-  d.first = d.last = d.min = d.max = std::nan("");
+/// Adds one record's channel to what is known of it from the records before.
+void add_samples(ChannelDescription& d, const Channel& channel) {
   for (const double v : channel.samples) {
     if (std::isnan(v)) continue;
     if (std::isnan(d.first)) d.first = v;
@@ -84,123 +55,160 @@ ChannelDescription describe_channel(const Channel& channel, std::vector<Finding>
     d.min = std::fmin(d.min, v);
     d.max = std::fmax(d.max, v);
   }
-  d.noise = noise_of(channel.samples);
+  d.missing += channel.missing;
+  if (std::isnan(d.resolution) || channel.resolution < d.resolution) d.resolution = channel.resolution;
+}
+
+ChannelDescription channel_over(const std::vector<Capture>& captures, std::size_t index) {
+  const Channel& shape = captures.front().channels[index];
+  ChannelDescription d;
+  d.name = shape.name;
+  d.unit = shape.unit;
+  d.unit_stated = shape.unit_stated;
+  d.column = shape.column;
+  for (const Capture& capture : captures) {
+    if (index >= capture.channels.size()) continue;
+    const Channel& channel = capture.channels[index];
+    add_samples(d, channel);
+    d.clipped += clipped_samples(channel, d.max - d.min);
+  }
   const double span = d.max - d.min;
-  const double code = std::isnan(channel.resolution) ? 0 : channel.resolution;
-  const double floor = std::hypot(std::isnan(d.noise) ? 0 : d.noise, code / std::sqrt(12.0));
-  if (span > 0 && floor > 0) d.effective_bits = std::log2(span / (std::sqrt(12.0) * floor));
-  if (!std::isnan(channel.full_scale)) d.range_used = span / (2 * channel.full_scale);
-  d.clipped = clipped_samples(channel);
-  if (d.clipped > 0) {
-    findings.push_back({"clipped", Severity::caution,
-                        std::to_string(d.clipped) + " samples of " + shown(channel.name) +
-                            " stand at a flat top: the range was too small",
-                        channel.name, static_cast<double>(d.clipped), Unit::one});
+  d.noise = noise_of(shape.samples);
+  const double rounding = d.resolution / std::sqrt(12.0);
+  if (span > 0 && rounding > 0 && !(d.noise >= rounding)) {
+    d.noise = rounding;
+    d.noise_is_rounding = true;
   }
-  for (Finding& finding : check_range(channel, 0, channel.samples.size())) findings.push_back(std::move(finding));
-  const std::vector<double> stretch = stretch_for_noise(channel.samples);
-  if (stretch.size() >= 128 && span > 20 * (std::isnan(d.noise) ? 0 : d.noise)) {
-    const std::vector<double> power = tapered_power(stretch);
-    if (rises_towards_nyquist(power)) {
-      findings.push_back({"aliased", Severity::caution,
-                          "most of what moves in " + shown(channel.name) +
-                              " lies close to half the sampling rate: the record may be thinned out or sampled too slowly",
-                          channel.name, kNearNyquist, Unit::one});
-    }
-  }
+  if (span > 0 && d.noise > 0) d.effective_bits = std::log2(span / (std::sqrt(12.0) * d.noise));
+  if (!std::isnan(shape.full_scale)) d.range_used = span / (2 * shape.full_scale);
   return d;
 }
 
-std::string quoted(const std::string& name) {
-  const std::string safe = shown(name);
-  return safe.find_first_of(" '\"()&;|<>*?$`\\#") == std::string::npos ? safe : "'" + safe + "'";
-}
-
-/// A channel that decays while it swings.
-bool rings(const Capture& capture, std::size_t channel) {
-  const auto record = on_even_steps(capture, channel);
-  if (!record) return false;
-  const std::span<const double> samples =
-      record->samples.empty() ? std::span<const double>(capture.channels[channel].samples) : record->samples;
-  DecaySearch search;
-  search.resolution = record->samples.empty() ? capture.channels[channel].resolution : std::nan("");
-  const auto decay = find_decay(samples, search);
-  if (!decay || !(decay->fit.model.q > 0)) return false;
-  const double length = static_cast<double>(decay->end - decay->first);
-  const double cycles = decay->fit.model.damped_omega() * length / (2 * std::numbers::pi);
-  return decay->fit.model.a * length > 0.3 && cycles > 0.8 && decay->fit.model.quality() > 0.5;
-}
-
-Suggestion suggest(const Capture& capture) {
-  for (std::size_t i = 0; i < capture.channels.size(); ++i) {
-    if (capture.channels[i].unit != Unit::volt && capture.channels[i].unit_stated) continue;
-    if (!rings(capture, i)) continue;
-    Suggestion suggestion{"ringdown", "coilassay ringdown " + quoted(capture.source.name)};
-    if (capture.channels.size() > 1) suggestion.command += " --voltage " + quoted(capture.channels[i].name);
-    suggestion.command += " --capacitor 10nF±1%";
-    return suggestion;
+void check_channel(const Channel& channel, const ChannelDescription& d, std::vector<Finding>& findings) {
+  const std::string who = channel.name.empty() ? "column " + std::to_string(channel.column) : shown(channel.name, 60);
+  if (d.clipped > 0) {
+    findings.push_back({"clipped", Severity::caution,
+                        std::to_string(d.clipped) + " samples of " + who + " stand at a flat top: the range was too small",
+                        channel.name, static_cast<double>(d.clipped), Unit::one});
   }
-  return {};
-}
-
-}  // namespace
-
-double noise_of(std::span<const double> samples) {
-  const std::vector<double> stretch = stretch_for_noise(samples);
-  if (stretch.size() < 32) return std::nan("");
-  const std::vector<double> power = tapered_power(stretch);
-  // The median over the exponential law of a noise power is ln 2 times its mean; the quietest band but one of several.
-  std::vector<double> medians;
-  const std::size_t width = std::max<std::size_t>((power.size() - 2) / kBands, 4);
-  for (std::size_t first = 2; first + width <= power.size(); first += width) {
-    std::vector<double> band(power.begin() + static_cast<std::ptrdiff_t>(first),
-                             power.begin() + static_cast<std::ptrdiff_t>(first + width));
-    std::nth_element(band.begin(), band.begin() + static_cast<std::ptrdiff_t>(width / 2), band.end());
-    medians.push_back(band[width / 2]);
+  for (Finding& finding : check_range(channel, 0, channel.samples.size())) findings.push_back(std::move(finding));
+  const SpectralLine line = strongest_line(channel.samples);
+  const bool moves = std::isnan(d.noise) || d.max - d.min > 20 * d.noise;
+  if (moves && line.near_nyquist > kMostlyHigh) {
+    findings.push_back({"aliased", Severity::caution,
+                        "most of what moves in " + who +
+                            " lies close to half the sampling rate: the record may be thinned out or sampled too slowly",
+                        channel.name, 1 / line.cycles_per_sample, Unit::one});
   }
-  if (medians.size() < 2) return std::nan("");
-  std::sort(medians.begin(), medians.end());
-  const double mean_power = medians[1] / std::numbers::ln2;
-  const double taper_square = 3.0 / 8.0;  // mean square of the Hann window
-  return std::sqrt(mean_power / (static_cast<double>(stretch.size()) * taper_square));
 }
 
-Description describe(const Recording& recording) {
+void check_swing(const Capture& capture, const Swing& swing, std::vector<Finding>& findings) {
+  const std::string& about = capture.channels[swing.channel].name;
+  if (swing.cycles < kFewCycles) {
+    findings.push_back({"few_cycles", Severity::note,
+                        std::string(swing.decays ? "the decay" : "the record") + " holds " + figure_text(swing.cycles) +
+                            " periods: a longer record would tell the frequency better",
+                        about, swing.cycles, Unit::one});
+  }
+  const bool said = std::any_of(findings.begin(), findings.end(),
+                                [&](const Finding& f) { return f.code == "aliased" && f.about == about; });
+  if (swing.samples_per_period < kThinlySampled && !said) {
+    findings.push_back({"aliased", swing.samples_per_period < kHardlySampled ? Severity::caution : Severity::note,
+                        "only " + figure_text(swing.samples_per_period) +
+                            " samples a period: the true frequency may be above half the sampling rate; capture faster "
+                            "to be sure",
+                        about, swing.samples_per_period, Unit::one});
+  }
+}
+
+/// The step between distinct times of an uneven axis: a number when that is even (pairs of a peak-detect export).
+double distinct_step(const std::vector<double>& times) {
+  std::vector<double> distinct;
+  for (const double t : times) {
+    if (distinct.empty() || t != distinct.back()) distinct.push_back(t);
+  }
+  if (distinct.size() < 2) return std::nan("");
+  const double step = (distinct.back() - distinct.front()) / static_cast<double>(distinct.size() - 1);
+  for (std::size_t i = 0; i < distinct.size(); ++i) {
+    const double off = distinct[i] - distinct.front() - static_cast<double>(i) * step;
+    if (std::fabs(off) > kEvenSteps * std::fabs(step) * std::sqrt(static_cast<double>(i + 1))) return std::nan("");
+  }
+  return step;
+}
+
+double step_of(const TimeAxis& time) { return time.uniform() ? time.step_s : distinct_step(time.times_s); }
+double start_of(const TimeAxis& time) { return time.uniform() ? time.start_s : time.times_s.front(); }
+
+void describe_time(const std::vector<Capture>& captures, Description& d) {
+  const Capture& first = captures.front();
+  d.start_s = start_of(first.time);
+  d.sample_interval_s = step_of(first.time);
+  for (const Capture& capture : captures) {
+    d.samples += capture.samples();
+    d.segments.push_back({capture.segment, capture.samples(), start_of(capture.time)});
+    const double step = step_of(capture.time);
+    d.uniform = d.uniform && (capture.time.uniform() || !std::isnan(step)) &&
+                !(std::fabs(step - d.sample_interval_s) > kEvenSteps * d.sample_interval_s);
+  }
+  if (!d.uniform) d.sample_interval_s = std::nan("");
+  if (first.samples() < 2) return;
+  d.span_s = first.time.uniform() ? first.time.step_s * static_cast<double>(first.samples() - 1)
+                                  : first.time.times_s.back() - first.time.times_s.front();
+}
+
+/// What every record of a file says again is said once.
+void add_findings(const std::vector<Finding>& more, std::vector<Finding>& findings) {
+  for (const Finding& finding : more) {
+    const bool said = std::any_of(findings.begin(), findings.end(), [&](const Finding& f) {
+      return f.code == finding.code && f.about == finding.about && f.message == finding.message;
+    });
+    if (!said) findings.push_back(finding);
+  }
+}
+
+Description describe_sweep(const Sweep& sweep, const DescribeOptions& options) {
   Description d;
-  if (const auto* sweep = std::get_if<Sweep>(&recording)) {
-    d.kind = "sweep";
-    d.source = sweep->source;
-    d.dialect = sweep->dialect;
-    d.findings = sweep->findings;
-    d.samples = sweep->frequency_hz.size();
-    if (!sweep->frequency_hz.empty()) {
-      const auto [low, high] = std::minmax_element(sweep->frequency_hz.begin(), sweep->frequency_hz.end());
-      d.frequency_first_hz = *low;
-      d.frequency_last_hz = *high;
-    }
-    d.parameter = sweep->as_read;
-    d.ports = sweep->ports;
-    d.reference_ohm = sweep->reference_ohm;
-    return d;
+  d.kind = "sweep";
+  d.source = sweep.source;
+  d.dialect = sweep.dialect;
+  d.findings = sweep.findings;
+  d.samples = sweep.frequency_hz.size();
+  if (!sweep.frequency_hz.empty()) {
+    d.frequency_first_hz = sweep.frequency_hz.front();
+    d.frequency_last_hz = sweep.frequency_hz.back();
   }
-  const auto& captures = std::get<std::vector<Capture>>(recording);
+  d.parameter = sweep.as_read;
+  d.ports = sweep.ports;
+  d.reference_ohm = sweep.reference_ohm;
+  d.bad_points = static_cast<std::size_t>(std::count(sweep.bad.begin(), sweep.bad.end(), true));
+  d.suggestion = likely_test(sweep, options);
+  return d;
+}
+
+Description describe_captures(const std::vector<Capture>& captures, const DescribeOptions& options) {
+  Description d;
   d.kind = "waveform";
   if (captures.empty()) return d;
   const Capture& first = captures.front();
   d.source = first.source;
   d.dialect = first.dialect;
-  d.start_s = first.time.uniform() ? first.time.start_s : first.time.times_s.front();
-  d.sample_interval_s = first.time.step_s;
-  d.uniform = first.time.uniform();
-  d.findings = first.findings;
-  for (const Channel& channel : first.channels) d.channels.push_back(describe_channel(channel, d.findings));
-  for (const Capture& capture : captures) {
-    d.samples += capture.samples();
-    d.segments.push_back({capture.segment, capture.samples(),
-                          capture.time.uniform() ? capture.time.start_s : capture.time.times_s.front()});
+  describe_time(captures, d);
+  for (const Capture& capture : captures) add_findings(capture.findings, d.findings);
+  for (std::size_t i = 0; i < first.channels.size(); ++i) {
+    d.channels.push_back(channel_over(captures, i));
+    check_channel(first.channels[i], d.channels.back(), d.findings);
   }
-  d.suggestion = suggest(first);
+  const Likeness likeness = likely_test(first, options);
+  d.suggestion = likeness.suggestion;
+  if (likeness.swing) check_swing(first, *likeness.swing, d.findings);
   return d;
+}
+
+}  // namespace
+
+Description describe(const Recording& recording, const DescribeOptions& options) {
+  if (const auto* sweep = std::get_if<Sweep>(&recording)) return describe_sweep(*sweep, options);
+  return describe_captures(std::get<std::vector<Capture>>(recording), options);
 }
 
 }  // namespace coilassay

@@ -32,7 +32,7 @@ Result<std::optional<char>> sign_of(const Arguments& arguments, std::string_view
 
 }  // namespace
 
-Result<BenchSetup> stated_bench(const Arguments& arguments) {
+Result<ReadOptions> stated_reading(const Arguments& arguments) {
   const auto delimiter = sign_of(arguments, "--delimiter",
                                  {{",", ','}, {";", ';'}, {"\t", '\t'}, {"tab", '\t'}, {" ", ' '}, {"space", ' '}},
                                  "give ',' or ';' in quotes, tab or space");
@@ -43,9 +43,17 @@ Result<BenchSetup> stated_bench(const Arguments& arguments) {
     return failure(Problem::usage, "--decimal", "the decimal sign and the delimiter are the same",
                    "files with a decimal comma have a semicolon or a tab between their columns");
   }
+  ReadOptions reading;
+  reading.delimiter = *delimiter;
+  reading.decimal = *decimal;
+  return reading;
+}
+
+Result<BenchSetup> stated_bench(const Arguments& arguments) {
+  const Result<ReadOptions> reading = stated_reading(arguments);
+  if (!reading) return failure(reading);
   BenchSetup bench;
-  bench.reading.delimiter = *delimiter;
-  bench.reading.decimal = *decimal;
+  bench.reading = *reading;
   bench.voltage.column = arguments.text("--voltage");
   bench.voltage.low_column = arguments.text("--voltage-low");
   bench.voltage.gain = arguments.stated("--voltage-gain");

@@ -13,6 +13,9 @@
 
 namespace coilassay {
 
+/// The signs of the file: --delimiter and --decimal. usage for one that cannot separate columns or mark decimals.
+Result<ReadOptions> stated_reading(const Arguments& arguments);
+
 /// Reading options and conditions as a set-up that replaces what a bench sheet says. usage for a sign that cannot
 /// separate columns or mark decimals.
 Result<BenchSetup> stated_bench(const Arguments& arguments);

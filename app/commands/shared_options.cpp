@@ -62,6 +62,22 @@ Option segment() {
           .example = "2"};
 }
 
+Option delimiter_sign() {
+  return {.name = "--delimiter",
+          .kind = ValueKind::text,
+          .value_name = "SIGN",
+          .help = "what separates columns, when the file itself leaves it open: a comma, a semicolon, tab or space",
+          .example = ";"};
+}
+
+Option decimal_sign() {
+  return {.name = "--decimal",
+          .kind = ValueKind::text,
+          .value_name = "SIGN",
+          .help = "the decimal sign, when the file itself leaves it open: a point or a comma",
+          .example = ","};
+}
+
 Option timebase() {
   return {.name = "--timebase",
           .kind = ValueKind::plain,
@@ -80,16 +96,8 @@ OptionGroup reading_options() {
           voltage_low_column(),
           voltage_gain(),
           segment(),
-          {.name = "--delimiter",
-           .kind = ValueKind::text,
-           .value_name = "SIGN",
-           .help = "what separates columns, when the file itself leaves it open: a comma, a semicolon, tab or space",
-           .example = ";"},
-          {.name = "--decimal",
-           .kind = ValueKind::text,
-           .value_name = "SIGN",
-           .help = "the decimal sign, when the file itself leaves it open: a point or a comma",
-           .example = ","}}};
+          delimiter_sign(),
+          decimal_sign()}};
 }
 
 OptionGroup ring_down_options() {

@@ -21,6 +21,8 @@ Option voltage_low_column();
 Option voltage_gain();
 Option bench_file();
 Option segment();
+Option delimiter_sign();
+Option decimal_sign();
 Option timebase();
 
 }  // namespace coilassay
