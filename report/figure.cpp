@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/outside_text.h"
+#include "report/figure_sine.h"
 #include "report/wording.h"
 
 namespace coilassay {
@@ -109,6 +110,7 @@ Figure figure_of(const Measurement& m) {
       if (!panel.series.empty()) figure.panels.push_back(std::move(panel));
     }
   }
+  if (m.test == "sine") figure.panels = sine_panels(m);
   return figure;
 }
 

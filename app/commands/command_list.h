@@ -16,7 +16,9 @@ const Command* find_command(std::string_view name);
 // One declaration per command file.
 Command describe_command();
 Command ring_down_command();
+Command sine_command();
 Command simulate_ring_down_command();
+Command simulate_sine_command();
 Command help_command();
 Command man_command();
 Command completion_command();
