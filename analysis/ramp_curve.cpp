@@ -16,7 +16,8 @@ namespace {
 
 constexpr std::size_t kBlocks = 300, kLongBlocks = 1000;
 constexpr std::size_t kLongRise = 100000;     // samples from which more blocks pay
-constexpr double kBendEvidence = 4;           // chi-square that a sixth parameter must gain: 2 standard deviations
+constexpr double kKneeEvidence = 9;           // chi-square that any knee must gain over a straight line
+constexpr double kNoBend = 0.05;              // standard uncertainty of a square term that is known to be absent
 constexpr double kMisfit = 0.01;              // F less likely than this: no curve of the family fits
 constexpr double kSurprise = 4;               // standard deviations of a flux that does not begin where it should
 enum : int { kFitOffset = 4, kFitShift = 5 }; // places among the parameters of RollOffFit
@@ -156,7 +157,8 @@ class PulseFit {
     std::string runner_up;
   };
 
-  /// The straight line, the knee, the knee with the square term: the simplest that the samples do not contradict.
+  /// The straight line unless a knee gains on it; then the knee with the square term, or without it where the samples show
+  /// that there is none. Where they leave it open, leaving it out would move the values by more than they seem uncertain.
   Result<Choice> choose(RollOffKnown known) const {
     Result<RollOffFit> knee = fit_roll_off(blocks_, known);
     if (!knee) return failure(knee);
@@ -169,7 +171,7 @@ class PulseFit {
     double scale = std::fmax(knee->lack_of_fit, 1);
     if (bend_fits) scale = std::fmax(std::fmin(knee->lack_of_fit, bend->lack_of_fit), 1);
     const auto gains = [&](const RollOffFit& simple, const RollOffFit& rich) {
-      return simple.chi_square - rich.chi_square > kBendEvidence * scale;
+      return simple.chi_square - rich.chi_square > kKneeEvidence * scale;
     };
     Choice choice;
     if (straight && !gains(*straight, *knee) && !(bend_fits && gains(*straight, *bend))) {
@@ -177,7 +179,7 @@ class PulseFit {
       choice.straight = true;
       choice.runner_up = words_for(knee->curve, false, false);
       choice.other = std::move(*knee);
-    } else if (bend_fits && gains(*knee, *bend)) {
+    } else if (bend_fits && !without_square(*bend)) {
       choice.fit = std::move(*bend);
       choice.bend = true;
       choice.runner_up = words_for(knee->curve, false, false);
@@ -191,6 +193,11 @@ class PulseFit {
       return failure(Problem::not_converged, "ramp", "no curve of the family settles on the samples", "");
     }
     return choice;
+  }
+
+  static bool without_square(const RollOffFit& bend) {
+    const double u = std::sqrt(bend.fit.covariance(6, 6));
+    return u < kNoBend && std::fabs(bend.curve.bend) < 2 * u;
   }
 
   void take(Choice choice) {

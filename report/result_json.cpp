@@ -208,6 +208,7 @@ Json points(const std::vector<Point>& all) {
   Json list = Json::array();
   for (const Point& each : all) {
     Json item = Json::object();
+    if (each.index) item["index"] = *each.index;
     add_number(item, "at_Hz", each.at_hz);
     add_number(item, "level_A", each.level_a);
     add_number(item, "bias_A", each.bias_a);
@@ -236,6 +237,7 @@ std::string to_json(const Measurement& m, std::string_view program) {
   document["cautions"] = cautions(m.cautions);
   if (m.model) document["model"] = model(*m.model);
   if (!m.points.empty()) document["points"] = points(m.points);
+  if (!m.pulses.empty()) document["pulses"] = points(m.pulses);
   for (const Table& table : m.tables) {
     // Tables for figures: the samples are in the file that was read, what a line goes through stands in the points.
     if (table.name.starts_with("trace") || table.name == "line") continue;

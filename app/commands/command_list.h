@@ -18,6 +18,8 @@ Command describe_command();
 Command ring_down_command();
 Command sine_command();
 Command simulate_ring_down_command();
+Command ramp_command();
+Command simulate_ramp_command();
 Command simulate_sine_command();
 Command help_command();
 Command man_command();
