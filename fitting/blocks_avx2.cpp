@@ -7,8 +7,8 @@ namespace coilassay::kernel {
 
 void plain_avx2(const double* v, std::size_t groups, double reference, Lanes& lanes) {
   const __m256d r = _mm256_set1_pd(reference);
-  __m256d sum0 = _mm256_load_pd(lanes.sum), sum1 = _mm256_load_pd(lanes.sum + 4);
-  __m256d square0 = _mm256_load_pd(lanes.square), square1 = _mm256_load_pd(lanes.square + 4);
+  __m256d sum0 = _mm256_setzero_pd(), sum1 = _mm256_setzero_pd();
+  __m256d square0 = _mm256_setzero_pd(), square1 = _mm256_setzero_pd();
   for (std::size_t g = 0; g < groups; ++g, v += 8) {
     const __m256d x0 = _mm256_sub_pd(_mm256_loadu_pd(v), r);
     const __m256d x1 = _mm256_sub_pd(_mm256_loadu_pd(v + 4), r);
@@ -26,10 +26,10 @@ void plain_avx2(const double* v, std::size_t groups, double reference, Lanes& la
 void demodulating_avx2(const double* v, const double* cosine, const double* minus_sine, std::size_t groups,
                        double reference, Lanes& lanes) {
   const __m256d r = _mm256_set1_pd(reference);
-  __m256d sum0 = _mm256_load_pd(lanes.sum), sum1 = _mm256_load_pd(lanes.sum + 4);
-  __m256d square0 = _mm256_load_pd(lanes.square), square1 = _mm256_load_pd(lanes.square + 4);
-  __m256d re0 = _mm256_load_pd(lanes.re), re1 = _mm256_load_pd(lanes.re + 4);
-  __m256d im0 = _mm256_load_pd(lanes.im), im1 = _mm256_load_pd(lanes.im + 4);
+  __m256d sum0 = _mm256_setzero_pd(), sum1 = _mm256_setzero_pd();
+  __m256d square0 = _mm256_setzero_pd(), square1 = _mm256_setzero_pd();
+  __m256d re0 = _mm256_setzero_pd(), re1 = _mm256_setzero_pd();
+  __m256d im0 = _mm256_setzero_pd(), im1 = _mm256_setzero_pd();
   for (std::size_t g = 0; g < groups; ++g, v += 8, cosine += 8, minus_sine += 8) {
     const __m256d x0 = _mm256_sub_pd(_mm256_loadu_pd(v), r);
     const __m256d x1 = _mm256_sub_pd(_mm256_loadu_pd(v + 4), r);

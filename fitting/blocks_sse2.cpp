@@ -10,8 +10,8 @@ void plain_sse2(const double* v, std::size_t groups, double reference, Lanes& la
   const __m128d r = _mm_set1_pd(reference);
   __m128d sum[4], square[4];
   for (int j = 0; j < 4; ++j) {
-    sum[j] = _mm_load_pd(lanes.sum + 2 * j);
-    square[j] = _mm_load_pd(lanes.square + 2 * j);
+    sum[j] = _mm_setzero_pd();
+    square[j] = _mm_setzero_pd();
   }
   for (std::size_t g = 0; g < groups; ++g, v += 8) {
     for (int j = 0; j < 4; ++j) {
@@ -33,11 +33,10 @@ void demodulate_half(const double* v, const double* cosine, const double* minus_
   const __m128d r = _mm_set1_pd(reference);
   __m128d sum[2], square[2], re[2], im[2];
   for (int j = 0; j < 2; ++j) {
-    const int lane = first + 2 * j;
-    sum[j] = _mm_load_pd(lanes.sum + lane);
-    square[j] = _mm_load_pd(lanes.square + lane);
-    re[j] = _mm_load_pd(lanes.re + lane);
-    im[j] = _mm_load_pd(lanes.im + lane);
+    sum[j] = _mm_setzero_pd();
+    square[j] = _mm_setzero_pd();
+    re[j] = _mm_setzero_pd();
+    im[j] = _mm_setzero_pd();
   }
   for (std::size_t g = 0; g < groups; ++g) {
     const std::size_t at = 8 * g + static_cast<std::size_t>(first);

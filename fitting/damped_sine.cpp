@@ -129,12 +129,12 @@ Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSin
                    "widen the window or sample faster");
   }
   const double reference = head.count > 0 ? head.sum / static_cast<double>(head.count) : 0;
-  const Beginning beginning =
-      options.near_omega > 0 ? beginning_near(y, options.near_omega, reference) : find_beginning(y);
+  Beginning beginning =
+      options.near_omega > 0 ? beginning_near(y, options.near_omega, reference) : find_beginning(y, reference);
   if (!(beginning.line.strength > 0)) return tl::make_unexpected(nothing("all samples are equal"));
   const std::optional<Shape> start = first_shape(y, beginning);
   if (!start) return tl::make_unexpected(nothing("no oscillation stands out of the noise"));
-  Settled settled = settle(y, *start, reference);
+  Settled settled = settle(y, *start, reference, std::move(beginning.sums));
   if (!settled.solution.at.solvable) return tl::make_unexpected(nothing("no oscillation stands out of the noise"));
   NoiseJudgement noise = judge_noise(y, settled.blocks, settled.solution, model_of(settled));
   if (auto other = settle_after_gap(y, settled.blocks, reference)) {

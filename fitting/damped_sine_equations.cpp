@@ -55,13 +55,14 @@ ComplexStep geometric_sum(const Step& one_step, const Jet& q, double omega, std:
   return sum;
 }
 
-Step one_step(const Shape& shape) {
-  const DampedPair at = damped_pair(shape, 1);
+// M^n.
+Step steps(const Shape& shape, double n) {
+  const DampedPair at = damped_pair(shape, n);
   Step step{Jet(at.c), Jet(at.s)};
-  step.alpha.v[0] = -at.c;
-  step.beta.v[0] = -at.s;
-  step.alpha.v[1] = -at.s / 2;
-  step.beta.v[1] = damped_sine_slope(shape, 1, at);
+  step.alpha.v[0] = -n * at.c;
+  step.beta.v[0] = -n * at.s;
+  step.alpha.v[1] = -n * at.s / 2;
+  step.beta.v[1] = damped_sine_slope(shape, n, at);
   return step;
 }
 
@@ -73,11 +74,19 @@ template <int Modes>
 using Responses = std::array<Response, static_cast<std::size_t>(Modes)>;
 
 Response response(const WhiteBlocks& blocks, const Shape& shape) {
-  const Step step = one_step(shape);
+  const Step step = steps(shape, 1);
   const Jet q(shape.q, 1);
   const ComplexStep plain = geometric_sum(step, q, 0, blocks.length);
   ComplexStep turned{{Jet(0.0), Jet(0.0)}, {Jet(0.0), Jet(0.0)}};
-  if (blocks.omega != 0) turned = geometric_sum(step, q, blocks.omega, blocks.length);
+  if (blocks.omega != 0 && blocks.step == 1) {
+    turned = geometric_sum(step, q, blocks.omega, blocks.length);
+  } else if (blocks.omega != 0) {
+    // Short blocks summed plainly, then turned as a whole.
+    const double each = static_cast<double>(blocks.step);
+    const Step within = geometric_sum(step, q, 0, blocks.step).re;
+    turned = geometric_sum(steps(shape, each), q, blocks.omega * each, blocks.length / blocks.step);
+    turned = {product(turned.re, within, q), product(turned.im, within, q)};
+  }
   Response result;
   for (int r = 0; r < blocks.rank; ++r) {
     const double re = blocks.whitening(r, 0), im = blocks.whitening(r, 1), sum = blocks.whitening(r, 2);

@@ -79,4 +79,18 @@ WhiteBlocks compress(std::span<const double> y, Plan& plan, double reference) {
   }
 }
 
+WhiteBlocks compress(std::span<const double> y, Plan& plan, ShortSums& sums, double reference) {
+  const std::size_t each = sums.length;
+  // Where most of the record is still to be read, reading it with longer blocks is quicker.
+  const bool most_read = sums.sum.size() * each * 2 > y.size();
+  const bool serve = each > 1 && (most_read || each >= 1024) && plan.length >= each &&
+                     plan.omega * static_cast<double>(each) < 0.12 && sums.reference == reference && sums.complete(y);
+  if (!serve) return compress(y, plan, reference);
+  const std::size_t span = plan.tail_from < y.size() ? plan.tail_from : y.size();
+  plan.length = each * good_length(span / each, static_cast<double>(plan.length / each));
+  plan.count = span / plan.length;
+  if (plan.tail_from < y.size()) plan.tail_from = plan.length * plan.count;
+  return white_blocks(y, sums, plan.length, plan.count, plan.omega, plan.tail_from);
+}
+
 }  // namespace coilassay

@@ -43,7 +43,7 @@ std::optional<Shape> first_shape(std::span<const double> y, const Beginning& beg
   return Shape{best.shapes[0].a / d, best.shapes[0].q / (d * d)};
 }
 
-Settled settle(std::span<const double> y, const Shape& start, double reference) {
+Settled settle(std::span<const double> y, const Shape& start, double reference, ShortSums sums) {
   Settled settled;
   const ShapeLimits limits = shape_limits(y.size());
   Shape shape = start;
@@ -54,7 +54,7 @@ Settled settle(std::span<const double> y, const Shape& start, double reference) 
       if (inverse.size() > 0) omega_uncertainty = std::sqrt(inverse(1, 1) * settled.solution.variance) / (2 * shape.omega());
     }
     settled.plan = plan_for(shape, omega_uncertainty, y.size());
-    settled.blocks = compress(y, settled.plan, reference);
+    settled.blocks = compress(y, settled.plan, sums, reference);
     settled.solution = refine<1>(settled.blocks, {shape}, limits);
     if (!settled.solution.at.solvable) break;
     shape = settled.solution.shapes[0];

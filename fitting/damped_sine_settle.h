@@ -24,8 +24,8 @@ struct Settled {
 /// A first fit around the strongest line: of some dozen shapes the best, then its least squares. Shape per sample of y.
 std::optional<Shape> first_shape(std::span<const double> y, const Beginning& beginning);
 
-/// Fits again until the blocks suit the solution they lead to.
-Settled settle(std::span<const double> y, const Shape& start, double reference);
+/// Fits again until the blocks suit the solution they lead to. Short sums of y, when there are any, spare reading it.
+Settled settle(std::span<const double> y, const Shape& start, double reference, ShortSums sums = {});
 
 /// The solution begun behind the longest gap, when the record has a long one. A gap soon after the start can leave the
 /// fit a cycle off between its two sides; the longer side alone knows better, and decay and frequency do not depend on

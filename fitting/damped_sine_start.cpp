@@ -72,41 +72,49 @@ double present_average(std::span<const double> values) {
   return present.count > 0 ? present.sum / static_cast<double>(present.count) : std::nan("");
 }
 
-// Averages of four of `values`, then of the samples that follow them.
-std::vector<double> averages(std::span<const double> y, std::size_t decimation, std::span<const double> values) {
-  const std::size_t count = std::min(kStretch, y.size() / decimation), known = std::min(count, values.size() / 4);
-  std::vector<double> result(count);
+// Averages of `decimation` samples, and the squares of what they were made from.
+struct Level {
+  std::size_t decimation = 1;
+  std::vector<double> average;  // of what is present
+  std::vector<double> square;   // sum of (y - reference)^2; NaN where a sample is missing
+};
+
+// The level above: averages of four, then of the samples that follow them.
+Level next_level(std::span<const double> y, double reference, const Level& below) {
+  Level level{.decimation = below.decimation * 4, .average = {}, .square = {}};
+  const std::size_t count = std::min(kStretch, y.size() / level.decimation);
+  const std::size_t known = std::min(count, below.average.size() / 4);
+  level.average.resize(count);
+  level.square.resize(count);
   for (std::size_t i = 0; i < known; ++i) {
-    result[i] = (values[4 * i] + values[4 * i + 1] + values[4 * i + 2] + values[4 * i + 3]) / 4;
-    if (!std::isfinite(result[i])) result[i] = present_average(values.subspan(4 * i, 4));
+    const double* v = below.average.data() + 4 * i;
+    const double* s = below.square.data() + 4 * i;
+    level.average[i] = (v[0] + v[1] + v[2] + v[3]) / 4;
+    level.square[i] = s[0] + s[1] + s[2] + s[3];
+    if (!std::isfinite(level.average[i])) level.average[i] = present_average({v, 4});
   }
-  // Four chains of additions keep pace with memory, and cost nothing to set up for short averages.
+  const BlockSums rest = block_sums(y.subspan(known * level.decimation), level.decimation, count - known, 0, reference);
   for (std::size_t i = known; i < count; ++i) {
-    const std::span<const double> block = y.subspan(i * decimation, decimation);
-    double s0 = 0, s1 = 0, s2 = 0, s3 = 0;
-    for (std::size_t m = 0; m < decimation; m += 4) {
-      s0 += block[m];
-      s1 += block[m + 1];
-      s2 += block[m + 2];
-      s3 += block[m + 3];
+    level.average[i] = reference + rest.sum[i - known] / static_cast<double>(level.decimation);
+    level.square[i] = rest.square[i - known];
+    if (!std::isfinite(level.average[i])) {
+      level.average[i] = present_average(y.subspan(i * level.decimation, level.decimation));
     }
-    result[i] = ((s0 + s1) + (s2 + s3)) / static_cast<double>(decimation);
-    if (!std::isfinite(result[i])) result[i] = present_average(block);
   }
-  return result;
+  return level;
 }
 
 bool clear(const StrongestLine& line) { return line.strength > kClear * line.floor; }
 
 }  // namespace
 
-Beginning find_beginning(std::span<const double> y) {
+Beginning find_beginning(std::span<const double> y, double reference) {
   struct Look {
     StrongestLine line;
     std::size_t level = 0;
   };
   std::vector<Look> looks;
-  std::vector<std::vector<double>> levels;  // averages of 4^(level + 1) samples
+  std::vector<Level> levels;
   const std::size_t n = y.size();
   const auto strongest = [&looks] {
     Look best;
@@ -123,13 +131,18 @@ Beginning find_beginning(std::span<const double> y) {
   }
   looks.push_back({line_of(y.first(std::min(n, kStretch)), 1), 0});
   // Longer stretches while what is seen is slow, or nothing is seen.
-  std::span<const double> values = y.first(std::min(n, kStretch));
   Look best = strongest();
   for (std::size_t decimation = 4; n > kStretch * (decimation / 4); decimation *= 4) {
     if (clear(best.line) && best.line.cycles > kEnoughCycles) break;
-    levels.push_back(averages(y, decimation, values));
-    values = levels.back();
-    looks.push_back({line_of(values, decimation), levels.size()});
+    if (levels.empty()) {
+      Level samples;
+      samples.average.assign(y.begin(), y.begin() + static_cast<std::ptrdiff_t>(kStretch));
+      for (const double v : samples.average) samples.square.push_back((v - reference) * (v - reference));
+      levels.push_back(next_level(y, reference, samples));
+    } else {
+      levels.push_back(next_level(y, reference, levels.back()));
+    }
+    looks.push_back({line_of(levels.back().average, decimation), levels.size()});
     best = strongest();
   }
   if (!clear(best.line) && n > kStretch) {
@@ -138,12 +151,25 @@ Beginning find_beginning(std::span<const double> y) {
     }
     best = strongest();
   }
-  Beginning beginning{.line = best.line, .decimation = 1, .averages = {}};
+  Beginning beginning{.line = best.line, .decimation = 1, .averages = {}, .sums = {}};
+  if (!levels.empty()) {
+    const Level& last = levels.back();
+    ShortSums& sums = beginning.sums;
+    sums.length = last.decimation;
+    sums.reference = reference;
+    sums.square = last.square;
+    sums.sum.resize(last.average.size());
+    for (std::size_t i = 0; i < sums.sum.size(); ++i) {
+      sums.sum[i] = std::isfinite(last.square[i])
+                        ? (last.average[i] - reference) * static_cast<double>(last.decimation)
+                        : std::nan("");
+    }
+  }
   // One level further than the line was seen: four times as long, so that the offset is seen as well.
   const std::size_t level = best.level == 0 ? 0 : std::min(best.level + 1, levels.size());
   if (level > 0) {
-    beginning.decimation = std::size_t{1} << (2 * level);
-    beginning.averages = std::move(levels[level - 1]);
+    beginning.decimation = levels[level - 1].decimation;
+    beginning.averages = std::move(levels[level - 1].average);
   }
   return beginning;
 }
@@ -167,7 +193,7 @@ Beginning beginning_near(std::span<const double> y, double omega, double referen
   line.omega = omega;
   line.omega_error = 0.3 * 2 * std::numbers::pi / static_cast<double>(line.length);
   line.cycles = omega * static_cast<double>(line.length) / (2 * std::numbers::pi);
-  return {.line = line, .decimation = 1, .averages = {}};
+  return {.line = line, .decimation = 1, .averages = {}, .sums = {}};
 }
 
 std::vector<Shape> starting_shapes(const StrongestLine& line) {

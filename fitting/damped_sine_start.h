@@ -6,6 +6,7 @@
 #include <vector>
 
 #include "fitting/damped_sine_equations.h"
+#include "fitting/short_sums.h"
 
 namespace coilassay {
 
@@ -30,11 +31,12 @@ struct Beginning {
   StrongestLine line;
   std::size_t decimation = 1;
   std::vector<double> averages;  // empty when decimation is 1: the samples themselves
+  ShortSums sums;                // what was read on the way, as sums over the longest short blocks
 };
 
 /// Slow lines are looked for on averages of 4, 16, ... samples, which costs one read of the record in all; when nothing
 /// stands out, on up to 2^20 samples at full rate. Missing samples count as the mean.
-Beginning find_beginning(std::span<const double> y);
+Beginning find_beginning(std::span<const double> y, double reference = 0);
 
 /// The same when the frequency is known: only how long it lasts is looked for.
 Beginning beginning_near(std::span<const double> y, double omega, double reference);

@@ -23,7 +23,9 @@ std::complex<double> phase_sum(double omega, std::size_t length) {
 }
 
 // Eigenvectors of the Gram matrix of {cos, -sin, 1} over a block, each divided by the root of its eigenvalue.
-int whiten(double omega, std::size_t length, Eigen::Matrix3d& whitening, Eigen::Vector3d& offset_response) {
+// `step` samples share one phase.
+int whiten(double omega, std::size_t length, std::size_t step, Eigen::Matrix3d& whitening,
+           Eigen::Vector3d& offset_response) {
   const double n = static_cast<double>(length);
   whitening.setZero();
   offset_response.setZero();
@@ -32,7 +34,9 @@ int whiten(double omega, std::size_t length, Eigen::Matrix3d& whitening, Eigen::
     offset_response[0] = std::sqrt(n);
     return 1;
   }
-  const std::complex<double> once = phase_sum(omega, length), twice = phase_sum(2 * omega, length);
+  const double each = static_cast<double>(step);
+  const std::complex<double> once = each * phase_sum(omega * each, length / step);
+  const std::complex<double> twice = each * phase_sum(2 * omega * each, length / step);
   Eigen::Matrix3d gram;
   gram << (n + twice.real()) / 2, twice.imag() / 2, once.real(),  //
       twice.imag() / 2, (n - twice.real()) / 2, once.imag(),      //
@@ -48,30 +52,26 @@ int whiten(double omega, std::size_t length, Eigen::Matrix3d& whitening, Eigen::
   return rank;
 }
 
-}  // namespace
-
-WhiteBlocks white_blocks(std::span<const double> y, std::size_t length, std::size_t count, double omega,
-                         double reference, std::size_t tail_from) {
-  assert(length * count <= tail_from);
-  const BlockSums sums = block_sums(y, length, count, omega, reference);
+WhiteBlocks whitened(std::span<const double> y, const BlockSums& sums, std::size_t step) {
   WhiteBlocks blocks;
-  blocks.length = length;
-  blocks.count = count;
-  blocks.omega = omega;
-  blocks.reference = reference;
-  blocks.rank = whiten(omega, length, blocks.whitening, blocks.offset_response);
+  blocks.length = sums.length;
+  blocks.count = sums.sum.size();
+  blocks.omega = sums.omega;
+  blocks.step = step;
+  blocks.reference = sums.reference;
+  blocks.rank = whiten(blocks.omega, blocks.length, step, blocks.whitening, blocks.offset_response);
   const std::size_t rank = static_cast<std::size_t>(blocks.rank);
-  blocks.values.resize(count * rank);
-  blocks.present.resize(count);
-  for (std::size_t k = 0; k < count; ++k) {
+  blocks.values.resize(blocks.count * rank);
+  blocks.present.resize(blocks.count);
+  for (std::size_t k = 0; k < blocks.count; ++k) {
     if (!std::isfinite(sums.sum[k])) {
-      blocks.lost += present_sum(y.subspan(k * length, length), reference).count;
+      blocks.lost += present_sum(y.subspan(k * blocks.length, blocks.length), blocks.reference).count;
       continue;
     }
     blocks.present[k] = 1;
     ++blocks.present_blocks;
     blocks.square += sums.square[k];
-    const std::complex<double> turned = omega != 0 ? sums.demodulated[k] : 0;
+    const std::complex<double> turned = blocks.omega != 0 ? sums.demodulated[k] : 0;
     for (std::size_t r = 0; r < rank; ++r) {
       const auto row = static_cast<Eigen::Index>(r);
       const double value = blocks.whitening(row, 0) * turned.real() + blocks.whitening(row, 1) * turned.imag() +
@@ -80,12 +80,32 @@ WhiteBlocks white_blocks(std::span<const double> y, std::size_t length, std::siz
       blocks.energy += value * value;
     }
   }
-  if (tail_from < y.size()) {
-    const PresentSum tail = present_sum(y.subspan(tail_from), reference);
-    blocks.tail_sum = tail.sum;
-    blocks.tail_square = tail.square;
-    blocks.tail_count = tail.count;
-  }
+  return blocks;
+}
+
+void take_tail(std::span<const double> y, std::size_t from, WhiteBlocks& blocks) {
+  if (from >= y.size()) return;
+  const PresentSum tail = present_sum(y.subspan(from), blocks.reference);
+  blocks.tail_sum = tail.sum;
+  blocks.tail_square = tail.square;
+  blocks.tail_count = tail.count;
+}
+
+}  // namespace
+
+WhiteBlocks white_blocks(std::span<const double> y, std::size_t length, std::size_t count, double omega,
+                         double reference, std::size_t tail_from) {
+  assert(length * count <= tail_from);
+  WhiteBlocks blocks = whitened(y, block_sums(y, length, count, omega, reference), 1);
+  take_tail(y, tail_from, blocks);
+  return blocks;
+}
+
+WhiteBlocks white_blocks(std::span<const double> y, const ShortSums& sums, std::size_t length, std::size_t count,
+                         double omega, std::size_t tail_from) {
+  assert(length * count <= tail_from);
+  WhiteBlocks blocks = whitened(y, block_sums(sums, length, count, omega), sums.length);
+  take_tail(y, tail_from, blocks);
   return blocks;
 }
 

@@ -6,6 +6,8 @@
 #include <span>
 #include <vector>
 
+#include "fitting/short_sums.h"
+
 namespace coilassay {
 
 /// Block sums made white: noise of variance sigma^2 per sample becomes noise of variance sigma^2 per value.
@@ -18,6 +20,7 @@ struct WhiteBlocks {
   std::size_t count = 0;
   int rank = 1;
   double omega = 0;
+  std::size_t step = 1;                   // samples that share one phase (more than 1: made from short sums)
   double reference = 0;                   // was subtracted from every sample
   Eigen::Matrix3d whitening;              // rank rows; columns act on Re, Im, sum (plain sums: the last column only)
   Eigen::Vector3d offset_response;        // what a constant 1 gives
@@ -40,5 +43,9 @@ struct WhiteBlocks {
 /// Blocks of `length` over y[0, length * count), the samples from `tail_from` on as the tail (y.size(): none).
 WhiteBlocks white_blocks(std::span<const double> y, std::size_t length, std::size_t count, double omega,
                          double reference, std::size_t tail_from);
+
+/// The same from short sums that cover the samples of y; length a multiple of theirs.
+WhiteBlocks white_blocks(std::span<const double> y, const ShortSums& sums, std::size_t length, std::size_t count,
+                         double omega, std::size_t tail_from);
 
 }  // namespace coilassay

@@ -1,6 +1,7 @@
 // Speed of fit_damped_sine against what a practitioner writes with SciPy (ring_down_peer.py), and of the compression
 // against a plain read of the array. Both answers are checked against the truth before anything is timed; runs are
-// interleaved, and ratios of one session are printed. Not part of any verdict: exit 1 only for a wrong answer.
+// interleaved, and ratios of one session are printed, by the clock and by processor time: on a busy machine a run of a
+// second waits for others, one of a millisecond does not, and the second ratio is the fairer one. Not part of any verdict: exit 1 only for a wrong answer.
 //
 // usage (in the source folder): ring_down_benchmark [SAMPLES...]   (default 10000 1000000 10000000)
 #include <emmintrin.h>
@@ -54,7 +55,7 @@ double plain_sum(const std::vector<double>& y) {
 
 struct PeerRun {
   bool ok = false;
-  double seconds = 0, a = 0, w = 0;
+  double seconds = 0, busy = 0, a = 0, w = 0;
 };
 
 PeerRun run_peer(const std::string& file) {
@@ -62,7 +63,7 @@ PeerRun run_peer(const std::string& file) {
   const std::string command = "/usr/bin/python3 tests/benchmarks/ring_down_peer.py '" + file + "' 2>/dev/null";
   std::FILE* pipe = popen(command.c_str(), "r");
   if (pipe == nullptr) return run;
-  run.ok = std::fscanf(pipe, "%lf %lf %lf", &run.seconds, &run.a, &run.w) == 3;
+  run.ok = std::fscanf(pipe, "%lf %lf %lf %lf", &run.seconds, &run.busy, &run.a, &run.w) == 4;
   pclose(pipe);
   return run;
 }
@@ -89,7 +90,7 @@ bool compare(std::size_t samples, double quality) {
   std::ofstream(file, std::ios::binary)
       .write(reinterpret_cast<const char*>(y.data()), static_cast<std::streamsize>(y.size() * sizeof(double)));
   const int rounds = samples < 100000 ? 7 : samples < 5000000 ? 5 : 2;
-  double peer = 0;
+  double peer = 0, peer_busy = 0;
   double ours = 1e9, compression = 1e9, reading = 1e9, used = 0;
   const double omega = ringing.omega0;
   for (int round = 0; round < rounds; ++round) {
@@ -100,7 +101,9 @@ bool compare(std::size_t samples, double quality) {
           std::min(compression, seconds_of([&] { used += block_sums(y, samples / 512, 512, omega, 0.03).sum[0]; }));
     }
     const PeerRun run = run_peer(file);
-    if (run.ok && right(ringing, bound, run.a, run.w) && (peer == 0 || run.seconds < peer)) peer = run.seconds;
+    if (!run.ok || !right(ringing, bound, run.a, run.w)) continue;
+    if (peer == 0 || run.seconds < peer) peer = run.seconds;
+    if (peer_busy == 0 || run.busy < peer_busy) peer_busy = run.busy;
   }
   std::filesystem::remove(file);
   std::printf("%9zu  Q %5g  fit %9.3f ms  compression %8.3f ms = %4.1f reads", samples, quality, ours * 1e3,
@@ -108,9 +111,9 @@ bool compare(std::size_t samples, double quality) {
   if (peer == 0) {
     std::printf("  peer: no right answer\n");
   } else {
-    const double ratio = peer / ours;
-    std::printf("  peer %9.1f ms  %6.0f times faster (goal %g: %s)\n", peer * 1e3, ratio, goal(samples),
-                ratio >= goal(samples) ? "kept" : "missed");
+    const double ratio = std::min(peer, peer_busy) / ours;
+    std::printf("  peer %9.1f ms, busy %9.1f ms  %6.0f, %6.0f times faster (goal %g: %s)\n", peer * 1e3, peer_busy * 1e3,
+                peer / ours, peer_busy / ours, goal(samples), ratio >= goal(samples) ? "kept" : "missed");
   }
   if (used == 12345.678) std::printf(" ");  // the work above must not be optimised away
   return true;
@@ -123,7 +126,7 @@ int main(int argc, char** argv) {
   for (int i = 1; i < argc; ++i) sizes.push_back(static_cast<std::size_t>(std::atoll(argv[i])));
   if (sizes.empty()) sizes = {10000, 1000000, 10000000};
   bool all_right = true;
-  std::printf("best of many runs and best of the peer's right answers, interleaved; on a busy machine the peer suffers more\n");
+  std::printf("best of many runs, and best of the peer's right answers by the clock and by processor time; interleaved\n");
   for (const std::size_t samples : sizes) {
     for (const double quality : {3.0, 10.0, 100.0, 1000.0}) all_right = compare(samples, quality) && all_right;
   }

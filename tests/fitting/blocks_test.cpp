@@ -6,6 +6,7 @@
 
 #include "base/random.h"
 #include "fitting/blocks_kernel.h"
+#include "fitting/short_sums.h"
 
 namespace coilassay {
 namespace {
@@ -60,6 +61,30 @@ TEST(Blocks, AMissingSampleSpoilsItsOwnBlockOnly) {
     EXPECT_EQ(std::isnan(sums.demodulated[k].real()), k == 2) << k;
   }
   EXPECT_EQ(present_sum(y, 0).count, 999U);
+}
+
+TEST(Blocks, LongBlocksMadeOfShortOnesAreTheSumsTheySayTheyAre) {
+  const std::vector<double> y = noise(9600, 12);
+  ShortSums sums{.length = 16, .reference = 0.5, .sum = {}, .square = {}};
+  ASSERT_TRUE(sums.complete(y));
+  ASSERT_EQ(sums.sum.size(), 600U);
+  const BlockSums made = block_sums(sums, 160, 60, 0.004), direct = block_sums(y, 160, 60, 0, 0.5);
+  for (std::size_t k = 0; k < 60; ++k) {
+    EXPECT_NEAR(made.sum[k], direct.sum[k], 1e-11);
+    EXPECT_NEAR(made.square[k], direct.square[k], 1e-11);
+    std::complex<double> turned = 0;
+    for (std::size_t m = 0; m < 160; ++m) {
+      turned += (y[k * 160 + m] - 0.5) * std::polar(1.0, -0.004 * static_cast<double>(m / 16 * 16));
+    }
+    EXPECT_NEAR(std::abs(made.demodulated[k] - turned), 0, 1e-11);
+  }
+}
+
+TEST(Blocks, ShortSumsAreOfNoUseWithAMissingSample) {
+  std::vector<double> y = noise(9600, 13);
+  y[5000] = std::nan("");
+  ShortSums sums{.length = 16, .reference = 0, .sum = {}, .square = {}};
+  EXPECT_FALSE(sums.complete(y));
 }
 
 TEST(Blocks, BothKernelsGiveTheSameBits) {

@@ -73,6 +73,20 @@ TEST(DampedSine, ALongTailOfNoiseCostsNothing) {
   }
 }
 
+// Long enough that slow ringing is fitted from sums that were made on the way, plain and demodulated.
+TEST(DampedSine, MillionsOfSamplesAreFittedAsWellAsThousands) {
+  for (const double quality : {0.6, 2.0, 20.0, 90.0, 400.0}) {
+    const Ringing ringing = Ringing::of(quality, 30, 1500000);
+    const auto fit = fit_damped_sine(ringing.record(13));
+    ASSERT_TRUE(fit) << quality << ": " << fit.error().finding;
+    expect_within(*fit, ringing.truth(), 4.5, "Q " + std::to_string(quality));
+    const auto bound = damped_sine_bound(ringing.truth(), ringing.samples, ringing.sigma);
+    EXPECT_NEAR(fit->fit.standard_uncertainty(0) / bound[0], 1, 0.02) << quality;
+    EXPECT_NEAR(fit->fit.standard_uncertainty(1) / bound[1], 1, 0.02) << quality;
+    EXPECT_NEAR(fit->sigma, ringing.sigma, 0.005 * ringing.sigma) << quality;
+  }
+}
+
 TEST(DampedSine, AWindowOfOneTimeConstantIsEnough) {
   const Ringing ringing = Ringing::of(50, 40, 8000, 1);
   const auto fit = fit_damped_sine(ringing.record(5));
