@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/outside_text.h"
+#include "report/figure_resistance.h"
 #include "report/figure_ramp.h"
 #include "report/figure_sine.h"
 #include "report/wording.h"
@@ -113,6 +114,7 @@ Figure figure_of(const Measurement& m) {
   }
   if (m.test == "sine") figure.panels = sine_panels(m);
   if (m.test == "ramp") figure.panels = ramp_panels(m);
+  if (m.test == "resistance") figure.panels = resistance_panels(m);
   return figure;
 }
 

@@ -57,6 +57,7 @@ std::vector<std::string_view> reading_order(std::string_view test) {
   if (test == "sine") return {"Z", "phi", "L_s", "R_s", "Q"};
   if (test == "sweep") return {"L", "R_dc", "C_par", "R_par", "f_r"};
   if (test == "coupling") return {"k", "M", "L_1", "L_2", "n"};
+  if (test == "resistance") return {"R_dc", "R_dc_20", "T_winding", "T_rise"};
   return {};
 }
 
@@ -212,6 +213,7 @@ std::vector<std::string> main_symbols(const Measurement& m) {
   if (m.test == "sine") list = any_of({"L_s", "R_s", "Q"});
   if (m.test == "sweep") list = any_of({"L", "R_dc", "C_par", "f_r"});
   if (m.test == "coupling") list = any_of({"k", "M", "L_1", "L_2"});
+  if (m.test == "resistance") list = any_of({"R_dc", "R_dc_20", "T_rise"});
   if (list.empty()) {
     for (const auto& [of, lines] : m.budget) list.push_back(of);
   }

@@ -57,9 +57,13 @@ Result<BenchSetup> stated_bench(const Arguments& arguments) {
   bench.voltage.column = arguments.text("--voltage");
   bench.voltage.low_column = arguments.text("--voltage-low");
   bench.voltage.gain = arguments.stated("--voltage-gain");
-  if (const auto ratio = arguments.plain("--timebase")) bench.timebase = StatedValue::unstated(*ratio, Unit::one);
   bench.temperature = arguments.stated("--temperature");
-  bench.level = arguments.stated("--level");
+  // Readings of direct voltage and current have neither a sample clock nor a stimulus.
+  const Command& command = arguments.command();
+  if (command.find("--timebase") != nullptr) {
+    if (const auto ratio = arguments.plain("--timebase")) bench.timebase = StatedValue::unstated(*ratio, Unit::one);
+  }
+  if (command.find("--level") != nullptr) bench.level = arguments.stated("--level");
   return bench;
 }
 

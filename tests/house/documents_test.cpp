@@ -8,6 +8,7 @@
 #include <set>
 #include <string>
 
+#include "analysis/resistance.h"
 #include "analysis/ring_down.h"
 #include "base/number_text.h"
 #include "tests/house/source_tree.h"
@@ -191,6 +192,12 @@ TEST(Documents, DefaultTolerancesAreThoseOfTheCode) {
       {"probe resistance, not given", to_text(1 / d::kProbeConductance_s, Unit::ohm, Script::utf8, 1) + " to infinity"},
       {"probe or stray capacitance, given without tolerance", "±" + percent(d::kStatedCapacitanceRatio)},
       {"resistance of probe or across, given without tolerance", "±" + percent(d::kStatedResistanceRatio)},
+      {"gain of a voltmeter, readings of a winding", "±" + to_shortest(100 * resistance_defaults::kMeterVoltageRatio) + " %"},
+      {"gain of an ammeter, readings of a winding", "±" + percent(resistance_defaults::kMeterCurrentRatio)},
+      {"thermal offset, one polarity only", "±" + to_text(resistance_defaults::kThermalOffset_v, Unit::volt, Script::utf8, 2)},
+      {"temperature of a winding or of the air", "±" + to_text(resistance_defaults::kTemperature_k, Unit::kelvin, Script::utf8, 1)},
+      {"temperature coefficient of the wire", "±" + percent(resistance_defaults::kCoefficientRatio)},
+      {"cold resistance of a winding", "±" + percent(resistance_defaults::kColdRatio)},
       {"time base", "±" + std::to_string(static_cast<int>(d::kTimebaseRatio * 1e6 + 0.5)) + " ppm"},
   };
   for (const auto& [what, value] : rows) {
