@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <cstring>
+#include <new>
 
 namespace coilassay {
 namespace {
@@ -31,8 +32,7 @@ void DigestedBytes::read_ahead() {
       if (stop_) return;
     }
     std::vector<char>& block = ring_[n % kRing];
-    block.resize(kBlock);
-    const auto got = inner_.read(block);
+    const auto got = fill(block);
     block.resize(got ? *got : 0);
     const bool more = got && *got > 0;
     {
@@ -44,6 +44,16 @@ void DigestedBytes::read_ahead() {
     changed_.notify_all();
     if (!more) return;
     sha256_.add(block);  // beside the reading of the same bytes
+  }
+}
+
+/// An exception must not leave the reading thread.
+Result<std::size_t> DigestedBytes::fill(std::vector<char>& block) {
+  try {
+    block.resize(kBlock);
+    return inner_.read(block);
+  } catch (const std::bad_alloc&) {
+    return failure(Problem::unreadable, name(), "there is not enough memory to read it", "close other programs and try again");
   }
 }
 

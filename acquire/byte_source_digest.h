@@ -35,6 +35,7 @@ class DigestedBytes final : public ByteSource {
  private:
   static constexpr std::size_t kRing = 6;
   void read_ahead();
+  Result<std::size_t> fill(std::vector<char>& block);
   /// Waits for the block that is being passed on; false at the end of the stream.
   Result<bool> block_is_there();
 

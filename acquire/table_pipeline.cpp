@@ -3,6 +3,7 @@
 #include <algorithm>
 #include <condition_variable>
 #include <deque>
+#include <exception>
 #include <memory>
 #include <mutex>
 #include <system_error>
@@ -19,6 +20,7 @@ struct Slot {
   std::size_t from = 0;
   BlockColumns columns;
   State state = State::waiting;
+  std::exception_ptr exception;  // of a helper, passed on by the calling thread
 };
 
 /// The calling thread reads and joins, and parses too when there is nothing else to do; helpers parse.
@@ -58,6 +60,7 @@ class Pipeline {
       }
       if (in_order_.empty()) break;
       finish_front();
+      if (in_order_.front()->exception) std::rethrow_exception(in_order_.front()->exception);
       if (const auto joined = join(in_order_.front()->columns); !joined) return failure(joined);
       spare_.push_back(std::move(in_order_.front()));
       in_order_.pop_front();
@@ -116,7 +119,11 @@ class Pipeline {
     waiting_.pop_front();
     slot.state = Slot::State::parsing;
     hold.unlock();
-    read_block(slot.block, slot.from, layout_, slot.columns);
+    try {
+      read_block(slot.block, slot.from, layout_, slot.columns);
+    } catch (...) {
+      slot.exception = std::current_exception();  // memory has run out
+    }
     hold.lock();
     slot.state = Slot::State::parsed;
     changed_.notify_all();

@@ -7,6 +7,7 @@
 #include <algorithm>
 #include <cmath>
 #include <cstdint>
+#include <new>
 
 #include "acquire/table_resolution.h"
 #include "base/outside_text.h"
@@ -25,7 +26,12 @@ void give_back(const double* begin, const double* end) {
 }  // namespace
 
 void GrowingColumn::expect(std::size_t total) {
-  if (total > values_.capacity()) grow_to(total);
+  if (total <= values_.capacity()) return;
+  try {
+    grow_to(total);
+  } catch (const std::bad_alloc&) {
+    // So much address space is not to be had at once: the column grows as it is read.
+  }
 }
 
 void GrowingColumn::append(std::span<const double> values) {
