@@ -9,7 +9,7 @@ cd "$(dirname "$0")/.."
 need_packages $packages_to_build $packages_to_run
 
 if [ ! -f build/build.ninja ]; then
-  cmake --preset default -DCOILASSAY_TESTS=OFF
+  cmake --preset default -DCOILASSAY_TESTS=OFF --log-level=WARNING
 fi
 cmake --build --preset default --target coilassay
 

@@ -9,7 +9,7 @@ cd "$(dirname "$0")/.."
 # shellcheck disable=SC2086
 need_packages $packages_to_build $packages_to_run $packages_to_test
 if [ ! -f build/build.ninja ] || ! grep -q '^COILASSAY_TESTS:BOOL=ON' build/CMakeCache.txt; then
-  cmake --preset default -DCOILASSAY_TESTS=ON
+  cmake --preset default -DCOILASSAY_TESTS=ON --log-level=WARNING
 fi
 
 names=$(sed -n 's/^coilassay_proof(\([a-z0-9_]*\).*/\1/p' tests/proof/CMakeLists.txt | grep -- "${1:-}") || {

@@ -10,7 +10,7 @@ need_packages $packages_to_build $packages_to_run $packages_to_test
 
 # sample-data/run.sh configures without tests; later changes of CMake files are noticed by the build itself.
 if [ ! -f build/build.ninja ] || ! grep -q '^COILASSAY_TESTS:BOOL=ON' build/CMakeCache.txt; then
-  cmake --preset default -DCOILASSAY_TESTS=ON
+  cmake --preset default -DCOILASSAY_TESTS=ON --log-level=WARNING
 fi
 cmake --build --preset default --target all all_verify_interface_header_sets
 
