@@ -156,13 +156,17 @@ void describe_time(const std::vector<Capture>& captures, Description& d) {
                                   : first.time.times_s.back() - first.time.times_s.front();
 }
 
-/// What every record of a file says again is said once.
+/// What every record of a file says again is said once, by the largest figure; missing samples are counted in each.
 void add_findings(const std::vector<Finding>& more, std::vector<Finding>& findings) {
   for (const Finding& finding : more) {
-    const bool said = std::any_of(findings.begin(), findings.end(), [&](const Finding& f) {
-      return f.code == finding.code && f.about == finding.about && f.message == finding.message;
+    const auto said = std::find_if(findings.begin(), findings.end(), [&](const Finding& f) {
+      return f.code == finding.code && f.about == finding.about && f.code != "missing_samples";
     });
-    if (!said) findings.push_back(finding);
+    if (said == findings.end()) {
+      findings.push_back(finding);
+    } else if (finding.figure > said->figure) {
+      *said = finding;
+    }
   }
 }
 

@@ -51,7 +51,7 @@ bool time_is_known(const Capture& capture) {
 
 std::string note_on_time(const Capture& capture) {
   return time_is_known(capture) ? ""
-                                : "The file gives no time: state sample_interval under [file] in a bench sheet and add "
+                                : "The time step is not known: state sample_interval under [file] in a bench sheet and add "
                                   "--bench with its name.";
 }
 
@@ -118,11 +118,12 @@ std::optional<Swing> swing_of(const Capture& capture, std::size_t index) {
     const DampedSine& model = decay->fit.model;
     const std::span<const double> window = samples.subspan(decay->first, decay->end - decay->first);
     const auto length = static_cast<double>(window.size());
-    if (model.q > 0 && model.a * length > 0.3 && model.quality() > 0.5 && describes(decay->fit, window, samples)) {
-      const double per_period = 2 * std::numbers::pi / model.damped_omega();
-      if (length > 0.8 * per_period) {
-        return Swing{.channel = index, .decays = true, .cycles = length / per_period, .samples_per_period = per_period};
-      }
+    // Down to half critical damping and below it is still a release; only what is described well counts.
+    const double omega = model.q > 0 ? model.damped_omega() : model.natural_omega();
+    const double per_period = 2 * std::numbers::pi / omega;
+    if (model.a * length > 0.3 && model.quality() > 0.35 && length > 0.8 * per_period &&
+        describes(decay->fit, window, samples)) {
+      return Swing{.channel = index, .decays = true, .cycles = length / per_period, .samples_per_period = per_period};
     }
   }
   return steady_sine(samples, search.resolution, index);
@@ -175,7 +176,7 @@ std::optional<Likeness> ringing(const Capture& capture, const DescribeOptions& o
   }
   if (!steady) return std::nullopt;
   Likeness alone{steady, {}};
-  alone.suggestion.looks_like = "a steady sine in one channel; a test needs the current beside the voltage";
+  alone.suggestion.looks_like = "a steady sine; a test needs voltage and current at the same frequency";
   return alone;
 }
 

@@ -16,7 +16,7 @@ namespace {
 
 using Rows = std::vector<std::vector<std::string>>;
 constexpr std::string_view kIndent = "  ";
-constexpr std::size_t kChannelsAbreast = 4;
+constexpr std::size_t kChannelsAbreast = 3;
 constexpr std::size_t kRecordsShown = 6;
 constexpr std::size_t kNameWidth = 20;
 
@@ -62,7 +62,7 @@ std::string delimiter_in_words(const std::string& delimiter) {
 std::string time_in_words(const Description& d, Script script) {
   const std::string start = std::isnan(d.start_s) ? "origin not known" : "from " + duration(d.start_s, script);
   if (!d.uniform) return start + " in uneven steps";
-  if (std::isnan(d.sample_interval_s)) return "not in the file";
+  if (std::isnan(d.sample_interval_s)) return "the step is not known";
   return start + " in even steps of " + duration(d.sample_interval_s, script);
 }
 
@@ -76,10 +76,18 @@ std::string records_in_words(const Description& d, const TextStyle& style) {
   for (std::size_t i = 0; i < std::min(d.segments.size(), most); ++i) {
     const SegmentDescription& s = d.segments[i];
     text += fmt::format("{} {}{} samples", i == 0 ? "" : ",",
-                        s.label.empty() ? "" : "'" + shown(s.label, kNameWidth) + "' ", s.samples);
+                        s.label.empty() ? "" : "'" + shown(s.label, 2 * kNameWidth) + "' ", s.samples);
     if (!std::isnan(s.start_s)) text += " from " + duration(s.start_s, style.script);
   }
   return d.segments.size() > most ? text + ", and more with --verbose" : text;
+}
+
+std::string samples_in_words(const Description& d, Script script) {
+  std::string text = std::to_string(d.samples);
+  if (d.segments.size() > 1) text += fmt::format(" in {} records", d.segments.size());
+  if (!std::isnan(d.sample_interval_s)) text += " every " + duration(d.sample_interval_s, script);
+  if (std::isnan(d.span_s)) return text;
+  return text + (d.segments.size() > 1 ? ", the first over " : ", over ") + to_text(d.span_s, Unit::second, script);
 }
 
 void add_reading(const Description& d, const TextStyle& style, std::string& page) {
@@ -91,6 +99,7 @@ void add_reading(const Description& d, const TextStyle& style, std::string& page
                                     (d.dialect.decimal == "," ? "comma" : "point")});
   }
   if (d.dialect.first_data_line > 0) facts.push_back({"numbers", fmt::format("from line {}", d.dialect.first_data_line)});
+  if (d.kind == "waveform") facts.push_back({"samples", samples_in_words(d, style.script)});
   if (d.kind == "waveform") facts.push_back({"time", time_in_words(d, style.script)});
   if (d.segments.size() > 1) facts.push_back({"records", records_in_words(d, style)});
   const auto& settings = d.dialect.settings;
@@ -200,24 +209,20 @@ void add_suggestion(const Description& d, const TextStyle& style, std::string& p
   }
 }
 
-std::string head_of(const Description& d, Script script) {
+std::string head_of(const Description& d) {
   const std::string name = shown(d.source.name);
   if (d.kind == "sweep") {
     return fmt::format("{}: sweep of {}", name, counted(d.samples, "point", "points"));
   }
-  std::string text = fmt::format("{}: waveform, {}, {}", name, counted(d.channels.size(), "channel", "channels"),
-                                 counted(d.samples, "sample", "samples"));
-  if (d.segments.size() > 1) text += fmt::format(" in {} records", d.segments.size());
-  if (!std::isnan(d.sample_interval_s)) text += " every " + duration(d.sample_interval_s, script);
-  if (!std::isnan(d.span_s)) text += (d.segments.size() > 1 ? ", the first over " : ", over ") + to_text(d.span_s, Unit::second, script);
-  return text;
+  return fmt::format("{}: waveform, {}", name, counted(d.channels.size(), "channel", "channels"));
 }
 
 std::string findings_in_short(const std::vector<Finding>& findings) {
   const auto grave = std::count_if(findings.begin(), findings.end(),
                                    [](const Finding& f) { return f.severity != Severity::note; });
   if (findings.empty()) return "none";
-  return grave == 0 ? std::to_string(findings.size()) : fmt::format("{} ({} grave)", findings.size(), grave);
+  if (grave == 0) return std::to_string(findings.size());
+  return fmt::format("{} ({})", findings.size(), counted(static_cast<std::size_t>(grave), "caution", "cautions"));
 }
 
 std::vector<std::string> row_of(const Description& d, Script script) {
@@ -238,7 +243,7 @@ std::vector<std::string> row_of(const Description& d, Script script) {
 
 std::string to_text(const Description& d, const TextStyle& style) {
   std::string page;
-  add_heading(head_of(d, style.script), style, page);
+  add_heading(head_of(d), style, page);
   add_reading(d, style, page);
   d.kind == "sweep" ? add_sweep(d, style, page) : add_channels(d, style, page);
   add_findings(d, style, page);
@@ -275,7 +280,7 @@ std::string to_text(std::span<const DescribedFile> files, const TextStyle& style
     const Error& error = each.description.error();
     // The place begins with the file; what follows it is the line.
     const bool further = error.place.starts_with(each.file + ":");
-    const std::string line = further ? " line " + shown(error.place.substr(each.file.size() + 1), 30) : "";
+    const std::string line = further ? ", line " + shown(error.place.substr(each.file.size() + 1), 30) : "";
     page += script_of("not read" + line + ": " + shown(error.finding, 300)) + '\n';
   }
   return page;
