@@ -48,6 +48,8 @@ BenchSetup overridden(BenchSetup base, const BenchSetup& over) {
   if (!reading.delimiter) reading.delimiter = base.reading.delimiter;
   if (!reading.decimal) reading.decimal = base.reading.decimal;
   if (!reading.sample_interval_s) reading.sample_interval_s = base.reading.sample_interval_s;
+  if (reading.columns.empty()) reading.columns = base.reading.columns;
+  if (reading.skip == 0) reading.skip = base.reading.skip;
   base.reading = reading;
   return base;
 }

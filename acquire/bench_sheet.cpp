@@ -63,6 +63,20 @@ class Section {
   }
   std::optional<StatedValue> value(std::string_view key, Unit unit, Sense sense) { return value(key, {unit}, sense); }
 
+  std::optional<std::vector<std::string>> texts(std::string_view key) {
+    const auto read = table_.texts(key);
+    if (read) return *read;
+    note(read.error());
+    return std::nullopt;
+  }
+
+  std::optional<long long> integer(std::string_view key) {
+    const auto read = table_.integer(key);
+    if (read) return *read;
+    note(read.error());
+    return std::nullopt;
+  }
+
   /// Text that is not empty.
   std::optional<std::string> text(std::string_view key) {
     const auto read = table_.text(key);
@@ -262,6 +276,14 @@ void read_file(Section& section, ReadOptions& reading) {
     if (interval->law == Law::rectangular || interval->law == Law::normal) {
       section.refuse(Problem::bad_sheet, "sample_interval", "the error of the sampling clock is stated elsewhere",
                      "write it as the tolerance of [timebase]");
+    }
+  }
+  reading.columns = section.texts("columns").value_or(std::vector<std::string>{});
+  if (const auto skip = section.integer("skip")) {
+    if (*skip < 0) {
+      section.refuse(Problem::bad_number, "skip", "'file.skip' cannot be negative", "give the number of lines to pass over");
+    } else {
+      reading.skip = static_cast<std::size_t>(*skip);
     }
   }
   if (reading.delimiter && reading.delimiter == reading.decimal) {

@@ -87,6 +87,8 @@ set = "fixtures/tweezers.toml"
 delimiter = ";"
 decimal = ","
 sample_interval = "20 ns"
+columns = ["time [us]", "CH1 [V]", "-"]
+skip = 3
 [[equipment]]
 id = "DMM-3"
 certificate = "SBW-114"
@@ -135,6 +137,8 @@ TEST_F(BenchSheet, EveryKeyArrivesInSI) {
   EXPECT_EQ(setup.reading.delimiter, ';');
   EXPECT_EQ(setup.reading.decimal, ',');
   EXPECT_EQ(setup.reading.sample_interval_s, 20e-9);
+  EXPECT_EQ(setup.reading.columns, (std::vector<std::string>{"time [us]", "CH1 [V]", "-"}));
+  EXPECT_EQ(setup.reading.skip, 3U);
   ASSERT_EQ(setup.equipment.size(), 2U);
   EXPECT_EQ(setup.equipment[0].certificate, "SBW-114");
   EXPECT_EQ(setup.equipment[0].calibrated, "2026-05-01");
@@ -229,6 +233,7 @@ TEST_F(BenchSheet, TheReadingKeyTakesSingleCharactersAndTheirNames) {
   EXPECT_EQ(good("[file]\ndelimiter = \"\\t\"\n").reading.delimiter, '\t');
   EXPECT_EQ(good("[file]\ndelimiter = \"space\"\n").reading.delimiter, ' ');
   EXPECT_EQ(good("[file]\ndelimiter = \"|\"\n").reading.delimiter, '|');
+  refuses("[file]\nskip = -1\n", Problem::bad_number, 2, "negative");
   refuses("[file]\nsample_interval = \"0 s\"\n", Problem::bad_number, 2, "zero");
   refuses("[file]\nsample_interval = \"1 us ± 1 %\"\n", Problem::bad_sheet, 2, "clock");
   refuses("[file]\ndelimiter = \";;\"\n", Problem::bad_sheet, 2, "';;'");
