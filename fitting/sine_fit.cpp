@@ -27,6 +27,7 @@ constexpr std::size_t kFewest = 16;
 constexpr double kFewCycles = 8;        // below: frequencies are tried one by one on plain sums
 constexpr double kLeastCycles = 0.7;
 constexpr double kUndithered = 0.45;    // scatter in steps; as for damped sines
+constexpr double kPlain = 1e4;          // strength of a line over its floor at which no other channel need be asked
 constexpr double kClearHarmonic = 5;    // in standard uncertainties: taken out before the fundamental is fitted
 
 struct Start {
@@ -46,7 +47,7 @@ double mean_of(std::span<const double> y) {
   return head.count > 0 ? head.sum / static_cast<double>(head.count) : 0;
 }
 
-/// The line of the channel in which it stands out most.
+/// The line of the first channel in which it is plain, else of the one in which it stands out most.
 Start strongest_line(std::span<const SineChannel> channels) {
   Start best;
   double most = 0;
@@ -56,6 +57,7 @@ Start strongest_line(std::span<const SineChannel> channels) {
     if (!(clearness > most)) continue;
     most = clearness;
     best = {line.omega, std::max(line.omega_error, 0.3 * kTwoPi / static_cast<double>(line.length))};
+    if (clearness > kPlain) break;
   }
   return best;
 }
@@ -112,7 +114,7 @@ std::vector<Channel> compressed(std::span<const SineChannel> inputs, double omeg
   for (const SineChannel& input : inputs) {
     Channel c;
     c.reference = mean_of(input.y);
-    const double most = few ? n / 512 : std::min(n / 256, 0.6 / error);
+    const double most = few ? n / 512 : std::min(n / 128, 1.2 / error);
     Plan plan = plan_with_length(input.y.size(), input.y.size(), most, few ? 0 : omega);
     c.blocks = compress(input.y, plan, c.reference);
     channels.push_back(std::move(c));
@@ -148,7 +150,7 @@ Settled settle(std::vector<Channel>& channels, double omega, double centre) {
     if (!(s.omega > 0.2 * bin) || !(s.omega < std::numbers::pi)) return s;
     if (!std::isfinite(solve_all(channels, s.omega, centre, true))) return s;
     for (Channel& c : channels) weigh(c);
-    if (std::fabs(step) * std::sqrt(down) < 1e-4 || std::fabs(step) < 1e-15 * s.omega) {
+    if (std::fabs(step) * std::sqrt(down) < 1e-3 || std::fabs(step) < 1e-15 * s.omega) {
       s.converged = true;
       return s;
     }
