@@ -18,6 +18,7 @@ constexpr double kFewCycles = 3;         // as in ring_down_decay.cpp
 constexpr double kThinlySampled = 5;     // samples a period
 constexpr double kHardlySampled = 2.2;
 constexpr double kMostlyHigh = 0.6;      // of the power, above 0.8 of half the sampling rate
+constexpr double kMostlyRounding = 1.2;   // noise up to here is rounding with less than 0.2 steps of its own
 constexpr double kEvenSteps = 1e-3;      // of a step: how far an even step may be off
 
 std::string figure_text(double figure) { return to_text(figure, Unit::one, Script::utf8, 2); }
@@ -75,9 +76,9 @@ ChannelDescription channel_over(const std::vector<Capture>& captures, std::size_
   const double span = d.max - d.min;
   d.noise = noise_of(shape.samples);
   const double rounding = d.resolution / std::sqrt(12.0);
-  if (span > 0 && rounding > 0 && !(d.noise >= rounding)) {
-    d.noise = rounding;
-    d.noise_is_rounding = true;
+  if (span > 0 && rounding > 0) {
+    d.noise_is_rounding = !(d.noise > kMostlyRounding * rounding);
+    d.noise = std::fmax(d.noise, rounding);
   }
   if (span > 0 && d.noise > 0) d.effective_bits = std::log2(span / (std::sqrt(12.0) * d.noise));
   if (!std::isnan(shape.full_scale)) d.range_used = span / (2 * shape.full_scale);

@@ -23,7 +23,7 @@ struct ChannelDescription {
   std::size_t missing = 0;
   double noise = std::nan("");           // standard deviation of one sample; never below resolution/sqrt(12); NaN: too
                                          // short to tell, or nothing changes
-  bool noise_is_rounding = false;        // the converter's steps hide what noise there is: `noise` is their error
+  bool noise_is_rounding = false;        // `noise` is mostly the error of rounding to the converter's steps
   double effective_bits = std::nan("");  // of the span that was used: log2((max - min)/(sqrt(12) noise))
   double range_used = std::nan("");      // share of the full scale, when that is known
   std::size_t clipped = 0;

@@ -89,7 +89,7 @@ std::string likely_columns(const Description& d) {
 
 Result<std::string> reading_key(const Description& description, const ReadOptions& reading) {
   const Dialect& dialect = description.dialect;
-  if (dialect.delimiter.empty() || dialect.decimal.empty()) {
+  if (dialect.format != "table" || dialect.delimiter.empty() || dialect.decimal.empty()) {
     return failure(Problem::usage, "--bench-out",
                    "the file says itself how it is to be read (" + shown(dialect.format) + "): there is no key to keep",
                    "leave it out; only tables of text have a reading key");
@@ -97,6 +97,12 @@ Result<std::string> reading_key(const Description& description, const ReadOption
   std::string text = "# How files like " + shown(description.source.name) + " are read.\n[file]\n";
   text += "delimiter = " + toml_text(delimiter_text(dialect.delimiter.front())) + "\n";
   text += "decimal = " + toml_text(dialect.decimal) + "\n";
+  if (reading.skip > 0) text += "skip = " + std::to_string(reading.skip) + "\n";
+  if (!reading.columns.empty()) {
+    std::string columns;
+    for (const std::string& heading : reading.columns) columns += (columns.empty() ? "" : ", ") + toml_text(heading);
+    text += "columns = [" + columns + "]\n";
+  }
   if (reading.sample_interval_s) {
     text += "sample_interval = " + toml_text(to_shortest(*reading.sample_interval_s) + " s") + "\n";
   } else if (description.kind == "waveform" && description.uniform && std::isnan(description.sample_interval_s)) {

@@ -40,7 +40,7 @@ TEST(DescribeProgram, TellsOfASimulatedRingDownWhatTheSimulatorWasTold) {
   EXPECT_EQ(channel["unit"], "V");
   EXPECT_NEAR(channel["resolution"].get<double>(), 8.0 / 256, 1e-9);
   EXPECT_EQ(channel["noise_is_rounding"], true);
-  EXPECT_NEAR(channel["noise"].get<double>(), 8.0 / 256 / std::sqrt(12.0), 1e-6);
+  EXPECT_NEAR(channel["noise"].get<double>(), std::hypot(2e-3, 8.0 / 256 / std::sqrt(12.0)), 1e-3);
   EXPECT_EQ(channel["clipped"], 0);
   EXPECT_EQ(d["suggestion"]["test"], "ringdown");
 }
