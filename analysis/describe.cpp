@@ -19,7 +19,8 @@ constexpr double kThinlySampled = 5;     // samples a period
 constexpr double kHardlySampled = 2.2;
 constexpr double kMostlyHigh = 0.6;      // of the power, above 0.8 of half the sampling rate
 constexpr double kMostlyRounding = 1.2;   // noise up to here is rounding with less than 0.2 steps of its own
-constexpr double kEvenSteps = 1e-3;      // of a step: how far an even step may be off
+constexpr double kEvenSteps = 1e-3;      // of a step: how far steps of several records may differ
+constexpr double kEvenStamps = 0.1;      // of a step: how far a rounded stamp may be off
 
 std::string figure_text(double figure) { return to_text(figure, Unit::one, Script::utf8, 2); }
 
@@ -122,22 +123,23 @@ void check_swing(const Capture& capture, const Swing& swing, std::vector<Finding
   }
 }
 
-/// The step between distinct times of an uneven axis: a number when that is even (pairs of a peak-detect export).
-double distinct_step(const std::vector<double>& times) {
+/// The step between the distinct times of an axis on which every stamp occurs twice (peak detection); NaN for any other
+/// uneven axis.
+double step_of_pairs(const std::vector<double>& times) {
   std::vector<double> distinct;
   for (const double t : times) {
     if (distinct.empty() || t != distinct.back()) distinct.push_back(t);
   }
-  if (distinct.size() < 2) return std::nan("");
+  if (distinct.size() < 2 || (times.size() + 1) / 2 != distinct.size()) return std::nan("");
   const double step = (distinct.back() - distinct.front()) / static_cast<double>(distinct.size() - 1);
   for (std::size_t i = 0; i < distinct.size(); ++i) {
     const double off = distinct[i] - distinct.front() - static_cast<double>(i) * step;
-    if (std::fabs(off) > kEvenSteps * std::fabs(step) * std::sqrt(static_cast<double>(i + 1))) return std::nan("");
+    if (!(std::fabs(off) < kEvenStamps * step)) return std::nan("");
   }
   return step;
 }
 
-double step_of(const TimeAxis& time) { return time.uniform() ? time.step_s : distinct_step(time.times_s); }
+double step_of(const TimeAxis& time) { return time.uniform() ? time.step_s : step_of_pairs(time.times_s); }
 double start_of(const TimeAxis& time) { return time.uniform() ? time.start_s : time.times_s.front(); }
 
 void describe_time(const std::vector<Capture>& captures, Description& d) {

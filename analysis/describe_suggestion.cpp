@@ -34,7 +34,10 @@ Suggestion suggestion_of(const Source& source, const std::string& test, const st
                          std::vector<std::string> words, const std::string& note, const DescribeOptions& options) {
   Suggestion suggestion;
   suggestion.looks_like = looks_like;
-  if (!has_test(options, test)) return suggestion;
+  if (!has_test(options, test)) {
+    suggestion.note = "This program has no command for it.";
+    return suggestion;
+  }
   suggestion.test = test;
   suggestion.note = note;
   // A name that begins with a dash would be taken for an option.

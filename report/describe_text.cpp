@@ -199,7 +199,7 @@ void add_findings(const Description& d, const TextStyle& style, std::string& pag
 void add_suggestion(const Description& d, const TextStyle& style, std::string& page) {
   add_heading("What to do next", style, page);
   const Suggestion& s = d.suggestion;
-  const std::string looks = s.looks_like.empty() ? "It looks like none of the tests this program has."
+  const std::string looks = s.looks_like.empty() ? "It looks like nothing this program has a test for."
                                                  : "It looks like " + s.looks_like + ".";
   page += wrapped(in_script(looks, style.script), kIndent, style.width);
   // Never broken or respelt: it is to be copied.

@@ -82,7 +82,7 @@ TEST(DescribeText, ManyChannelsFitTheWidth) {
 TEST(DescribeText, AFileOfNoKnownKindSaysSo) {
   Description d = made_up_page();
   d.suggestion = {};
-  EXPECT_TRUE(contains(to_text(d, {}), "none of the tests this program has"));
+  EXPECT_TRUE(contains(to_text(d, {}), "nothing this program has a test for"));
 }
 
 TEST(DescribeText, ASweepSaysItsFrequenciesAndQuantities) {
