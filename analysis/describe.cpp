@@ -14,15 +14,17 @@ namespace coilassay {
 
 namespace {
 
-constexpr double kFewCycles = 3;         // as in ring_down_decay.cpp
-constexpr double kThinlySampled = 5;     // samples a period
+constexpr double kFewCycles = 3;      // as in ring_down_decay.cpp
+constexpr double kThinlySampled = 5;  // samples a period
 constexpr double kHardlySampled = 2.2;
 constexpr double kMostlyHigh = 0.6;      // of the power, above 0.8 of half the sampling rate
-constexpr double kMostlyRounding = 1.2;   // noise up to here is rounding with less than 0.2 steps of its own
+constexpr double kMostlyRounding = 1.2;  // noise up to here is rounding with less than 0.2 steps of its own
 constexpr double kEvenSteps = 1e-3;      // of a step: how far steps of several records may differ
 constexpr double kEvenStamps = 0.1;      // of a step: how far a rounded stamp may be off
 
-std::string figure_text(double figure) { return to_text(figure, Unit::one, Script::utf8, 2); }
+std::string figure_text(double figure) {
+  return to_text(figure, Unit::one, Script::utf8, 2);
+}
 
 /// The level next to a flat top is far away within an eighth of the top's length: a switch, not a crest.
 bool is_jump(const Channel& channel, const FlatTop& top, double span) {
@@ -89,18 +91,20 @@ ChannelDescription channel_over(const std::vector<Capture>& captures, std::size_
 void check_channel(const Channel& channel, const ChannelDescription& d, std::vector<Finding>& findings) {
   const std::string who = channel.name.empty() ? "column " + std::to_string(channel.column) : shown(channel.name, 60);
   if (d.clipped > 0) {
-    findings.push_back({"clipped", Severity::caution,
-                        std::to_string(d.clipped) + " samples of " + who + " stand at a flat top: the range was too small",
-                        channel.name, static_cast<double>(d.clipped), Unit::one});
+    findings.push_back(
+        {"clipped", Severity::caution,
+         std::to_string(d.clipped) + " samples of " + who + " stand at a flat top: the range was too small",
+         channel.name, static_cast<double>(d.clipped), Unit::one});
   }
   for (Finding& finding : check_range(channel, 0, channel.samples.size())) findings.push_back(std::move(finding));
   const SpectralLine line = strongest_line(channel.samples);
   const bool moves = std::isnan(d.noise) || d.max - d.min > 20 * d.noise;
   if (moves && line.near_nyquist > kMostlyHigh) {
-    findings.push_back({"aliased", Severity::caution,
-                        "most of what moves in " + who +
-                            " lies close to half the sampling rate: the record may be thinned out or sampled too slowly",
-                        channel.name, 1 / line.cycles_per_sample, Unit::one});
+    findings.push_back(
+        {"aliased", Severity::caution,
+         "most of what moves in " + who +
+             " lies close to half the sampling rate: the record may be thinned out or sampled too slowly",
+         channel.name, 1 / line.cycles_per_sample, Unit::one});
   }
 }
 
@@ -139,8 +143,12 @@ double step_of_pairs(const std::vector<double>& times) {
   return step;
 }
 
-double step_of(const TimeAxis& time) { return time.uniform() ? time.step_s : step_of_pairs(time.times_s); }
-double start_of(const TimeAxis& time) { return time.uniform() ? time.start_s : time.times_s.front(); }
+double step_of(const TimeAxis& time) {
+  return time.uniform() ? time.step_s : step_of_pairs(time.times_s);
+}
+double start_of(const TimeAxis& time) {
+  return time.uniform() ? time.start_s : time.times_s.front();
+}
 
 void describe_time(const std::vector<Capture>& captures, Description& d) {
   const Capture& first = captures.front();

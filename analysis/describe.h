@@ -14,11 +14,11 @@ namespace coilassay {
 
 /// One channel over all records of the file.
 struct ChannelDescription {
-  std::string name;                                       // outside text
+  std::string name;  // outside text
   Unit unit = Unit::one;
   bool unit_stated = false;
-  std::size_t column = 0;                                 // position in the file counted from 1
-  double first = std::nan(""), last = std::nan("");       // of the samples that are there; NaN when all are missing
+  std::size_t column = 0;                            // position in the file counted from 1
+  double first = std::nan(""), last = std::nan("");  // of the samples that are there; NaN when all are missing
   double min = std::nan(""), max = std::nan("");
   std::size_t missing = 0;
   double noise = std::nan("");           // standard deviation of one sample; never below resolution/sqrt(12); NaN: too
@@ -27,11 +27,11 @@ struct ChannelDescription {
   double effective_bits = std::nan("");  // of the span that was used: log2((max - min)/(sqrt(12) noise))
   double range_used = std::nan("");      // share of the full scale, when that is known
   std::size_t clipped = 0;
-  double resolution = std::nan("");      // step between codes
+  double resolution = std::nan("");  // step between codes
 };
 
 struct SegmentDescription {
-  std::string label;                     // outside text
+  std::string label;  // outside text
   std::size_t samples = 0;
   double start_s = std::nan("");
 };

@@ -9,8 +9,8 @@ namespace coilassay {
 namespace {
 
 constexpr std::size_t kBlocks = 256;
-constexpr std::size_t kLeastRise = 8;    // blocks a ramp must last
-constexpr std::size_t kFewReadings = 64; // a list of readings, even when it has time stamps at even steps
+constexpr std::size_t kLeastRise = 8;     // blocks a ramp must last
+constexpr std::size_t kFewReadings = 64;  // a list of readings, even when it has time stamps at even steps
 constexpr std::size_t kMostReadings = 1000;
 
 double root_mean_square(std::span<const double> samples) {
@@ -76,9 +76,8 @@ bool current_ramps(const Capture& capture, DrivenPair pair) {
   const std::vector<double> amps = block_means(capture.channels[pair.current].samples);
   const std::vector<double> volts = block_means(capture.channels[pair.voltage].samples);
   if (amps.size() < 2 * kLeastRise) return false;
-  const auto peak = std::max_element(amps.begin(), amps.end(), [](double a, double b) {
-    return std::fabs(a) < std::fabs(b);
-  });
+  const auto peak =
+      std::max_element(amps.begin(), amps.end(), [](double a, double b) { return std::fabs(a) < std::fabs(b); });
   const double sign = *peak < 0 ? -1 : 1, top = std::fabs(*peak);
   const auto last = static_cast<std::size_t>(peak - amps.begin());
   std::size_t first = last;
@@ -98,8 +97,8 @@ bool current_ramps(const Capture& capture, DrivenPair pair) {
   const std::vector<double> under(volts.begin() + static_cast<std::ptrdiff_t>(first + 1),
                                   volts.begin() + static_cast<std::ptrdiff_t>(last));
   const double level = median(under);
-  const auto steady = static_cast<std::size_t>(
-      std::count_if(under.begin(), under.end(), [&](double v) { return v * level > 0 && std::fabs(v) > 0.4 * std::fabs(level); }));
+  const auto steady = static_cast<std::size_t>(std::count_if(
+      under.begin(), under.end(), [&](double v) { return v * level > 0 && std::fabs(v) > 0.4 * std::fabs(level); }));
   return falls * 20 <= last - first && jump < 0.4 * rise && late > 0.12 * rise && level != 0 &&
          steady * 10 >= under.size() * 9;
 }

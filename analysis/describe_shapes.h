@@ -13,8 +13,8 @@ struct DrivenPair {
   std::size_t voltage = 0, current = 0;
 };
 
-/// The current rises steadily from (nearly) zero to its peak, or from peak to peak through zero, while the voltage keeps
-/// its sign. Averages over up to 256 blocks are looked at, so noise and a knee do not matter.
+/// The current rises steadily from (nearly) zero to its peak, or from peak to peak through zero, while the voltage
+/// keeps its sign. Averages over up to 256 blocks are looked at, so noise and a knee do not matter.
 bool current_ramps(const Capture& capture, DrivenPair pair);
 
 /// A list of readings in which the voltage is proportional to the current, but for an offset: 2 to 1000 rows, no even

@@ -10,24 +10,23 @@ namespace coilassay {
 
 namespace {
 
-constexpr std::size_t kLeast = 32;          // samples a spectrum needs
-constexpr std::size_t kShortest = 512;      // stretches are not made shorter than this
+constexpr std::size_t kLeast = 32;      // samples a spectrum needs
+constexpr std::size_t kShortest = 512;  // stretches are not made shorter than this
 constexpr std::size_t kLongest = 4096;
 constexpr std::size_t kStretches = 8;
 constexpr std::size_t kBands = 12;
-constexpr std::size_t kLeastBand = 16;      // bins: a median of fewer scatters, and the quietest band is then too quiet
-constexpr std::size_t kFirstBin = 5;        // the taper spreads what does not change over the bins below
-constexpr double kAgrees = 2.5;             // times the low level: a band of 16 powers scatters by a third
+constexpr std::size_t kLeastBand = 16;  // bins: a median of fewer scatters, and the quietest band is then too quiet
+constexpr std::size_t kFirstBin = 5;    // the taper spreads what does not change over the bins below
+constexpr double kAgrees = 2.5;         // times the low level: a band of 16 powers scatters by a third
 constexpr double kNearNyquist = 0.8;
 
-/// Four cosines, first derivative zero at the ends: side lobes of -93 dB that fall by 18 dB an octave. Nuttall's family,
-/// IEEE Trans. ASSP 29 (1981), from memory; that it and its slope vanish at the ends is checked by the sums of the
-/// coefficients.
+/// Four cosines, first derivative zero at the ends: side lobes of -93 dB that fall by 18 dB an octave. Nuttall's
+/// family, IEEE Trans. ASSP 29 (1981), from memory; that it and its slope vanish at the ends is checked by the sums of
+/// the coefficients.
 constexpr double kTaper[] = {0.355768, 0.487396, 0.144232, 0.012604};
 
 double mean_square_of_taper() {
-  return kTaper[0] * kTaper[0] +
-         (kTaper[1] * kTaper[1] + kTaper[2] * kTaper[2] + kTaper[3] * kTaper[3]) / 2;
+  return kTaper[0] * kTaper[0] + (kTaper[1] * kTaper[1] + kTaper[2] * kTaper[2] + kTaper[3] * kTaper[3]) / 2;
 }
 
 /// The longest run without missing samples.
@@ -89,8 +88,8 @@ double low_one(std::vector<double> values, std::size_t share) {
   return values[(values.size() - 1) / share];
 }
 
-/// Noise is the same everywhere, a signal is not: the quieter bands of the quieter stretches set the level, and all that
-/// agree with it by chance are averaged, so that choosing low ones does not lower the result.
+/// Noise is the same everywhere, a signal is not: the quieter bands of the quieter stretches set the level, and all
+/// that agree with it by chance are averaged, so that choosing low ones does not lower the result.
 double noise_by_levels(const std::vector<std::vector<double>>& stretches) {
   std::vector<double> lows;
   for (const auto& levels : stretches) lows.push_back(low_one(levels, 3));
@@ -111,7 +110,8 @@ struct Differences {
 
 Differences third_differences(std::span<const double> v) {
   std::vector<double> all;
-  for (std::size_t i = 0; i + 3 < v.size(); ++i) all.push_back(std::fabs(v[i + 3] - 3 * v[i + 2] + 3 * v[i + 1] - v[i]));
+  for (std::size_t i = 0; i + 3 < v.size(); ++i)
+    all.push_back(std::fabs(v[i + 3] - 3 * v[i + 2] + 3 * v[i + 1] - v[i]));
   const double largest = *std::max_element(all.begin(), all.end());
   const auto middle = all.begin() + static_cast<std::ptrdiff_t>(all.size() / 2);
   std::nth_element(all.begin(), middle, all.end());

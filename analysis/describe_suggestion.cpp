@@ -5,8 +5,8 @@
 #include <numbers>
 
 #include "analysis/decay_window.h"
-#include "analysis/describe_spectrum.h"
 #include "analysis/describe_shapes.h"
+#include "analysis/describe_spectrum.h"
 #include "analysis/even_steps.h"
 #include "base/outside_text.h"
 
@@ -53,9 +53,10 @@ bool time_is_known(const Capture& capture) {
 }
 
 std::string note_on_time(const Capture& capture) {
-  return time_is_known(capture) ? ""
-                                : "The time step is not known: state sample_interval under [file] in a bench sheet and add "
-                                  "--bench with its name.";
+  return time_is_known(capture)
+             ? ""
+             : "The time step is not known: state sample_interval under [file] in a bench sheet and add "
+               "--bench with its name.";
 }
 
 std::string joined(const std::string& a, const std::string& b) {
@@ -147,9 +148,8 @@ std::optional<Likeness> driven(const Capture& capture, const DescribeOptions& op
   const Source& source = capture.source;
   const std::string note = joined(note_on_current(capture, pair), note_on_time(capture));
   if (time_is_known(capture) && current_ramps(capture, pair)) {
-    return Likeness{std::nullopt,
-                    suggestion_of(source, "ramp", "a current that ramps up under a steady voltage",
-                                  pair_words(capture, pair), note, options)};
+    return Likeness{std::nullopt, suggestion_of(source, "ramp", "a current that ramps up under a steady voltage",
+                                                pair_words(capture, pair), note, options)};
   }
   const auto voltage = swing_of(capture, pair.voltage);
   if (!voltage || voltage->decays) return std::nullopt;
@@ -192,8 +192,8 @@ std::vector<DrivenPair> pairs_of(const Capture& capture, bool in_ampere) {
   for (auto current = channels.begin(); current != channels.end(); ++current) {
     const bool fits = in_ampere ? current->unit == Unit::ampere : may_be_voltage(*current);
     if (current == voltage || !fits) continue;
-    pairs.push_back({static_cast<std::size_t>(voltage - channels.begin()),
-                     static_cast<std::size_t>(current - channels.begin())});
+    pairs.push_back(
+        {static_cast<std::size_t>(voltage - channels.begin()), static_cast<std::size_t>(current - channels.begin())});
     break;
   }
   return pairs;

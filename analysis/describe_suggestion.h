@@ -13,13 +13,13 @@ namespace coilassay {
 struct Swing {
   std::size_t channel = 0;
   bool decays = false;
-  double cycles = 0;              // in the window of the decay, or in the record
+  double cycles = 0;  // in the window of the decay, or in the record
   double samples_per_period = 0;
 };
 
 /// What was recognised in a capture.
 struct Likeness {
-  std::optional<Swing> swing;     // that the suggestion rests on, or the first that swings
+  std::optional<Swing> swing;  // that the suggestion rests on, or the first that swings
   Suggestion suggestion;
 };
 

@@ -11,8 +11,12 @@ namespace {
 
 using Json = nlohmann::ordered_json;
 
-Json number(double value) { return std::isfinite(value) ? Json(value) : Json(nullptr); }
-Json text_or_null(const std::string& outside) { return outside.empty() ? Json(nullptr) : Json(json_safe(outside)); }
+Json number(double value) {
+  return std::isfinite(value) ? Json(value) : Json(nullptr);
+}
+Json text_or_null(const std::string& outside) {
+  return outside.empty() ? Json(nullptr) : Json(json_safe(outside));
+}
 
 Json dialect(const Dialect& read) {
   Json object = {{"format", json_safe(read.format)}, {"encoding", json_safe(read.encoding)}};
@@ -112,7 +116,9 @@ Json document_of(const Error& error) {
 
 }  // namespace
 
-std::string to_json(const Description& description) { return json_text(document_of(description)); }
+std::string to_json(const Description& description) {
+  return json_text(document_of(description));
+}
 
 std::string to_json(std::span<const DescribedFile> files) {
   Json list = Json::array();

@@ -24,7 +24,9 @@ std::string counted(std::size_t n, const std::string& one, const std::string& ma
   return n == 1 ? "1 " + one : fmt::format("{} {}", n, many);
 }
 
-std::string duration(double seconds, Script script) { return setting_in_words(seconds, Unit::second, script); }
+std::string duration(double seconds, Script script) {
+  return setting_in_words(seconds, Unit::second, script);
+}
 
 /// Paints a heading; what is shown has gone through the script.
 void add_heading(std::string text, const TextStyle& style, std::string& page) {
@@ -93,12 +95,14 @@ std::string samples_in_words(const Description& d, Script script) {
 void add_reading(const Description& d, const TextStyle& style, std::string& page) {
   add_heading("How it was read", style, page);
   Rows facts;
-  facts.push_back({"format", shown(d.dialect.format) + (d.dialect.encoding.empty() ? "" : ", " + shown(d.dialect.encoding))});
+  facts.push_back(
+      {"format", shown(d.dialect.format) + (d.dialect.encoding.empty() ? "" : ", " + shown(d.dialect.encoding))});
   if (!d.dialect.delimiter.empty()) {
     facts.push_back({"columns", "between " + delimiter_in_words(d.dialect.delimiter) + ", decimal " +
                                     (d.dialect.decimal == "," ? "comma" : "point")});
   }
-  if (d.dialect.first_data_line > 0) facts.push_back({"numbers", fmt::format("from line {}", d.dialect.first_data_line)});
+  if (d.dialect.first_data_line > 0)
+    facts.push_back({"numbers", fmt::format("from line {}", d.dialect.first_data_line)});
   if (d.kind == "waveform") facts.push_back({"samples", samples_in_words(d, style.script)});
   if (d.kind == "waveform") facts.push_back({"time", time_in_words(d, style.script)});
   if (d.segments.size() > 1) facts.push_back({"records", records_in_words(d, style)});
@@ -126,23 +130,25 @@ std::string with_unit(double value, const ChannelDescription& c, Script script) 
 const std::vector<Property>& properties() {
   static const std::vector<Property> all = {
       {"column", [](const auto& c, Script) { return std::to_string(c.column); }},
-      {"unit",
-       [](const auto& c, Script) {
-         return c.unit_stated ? std::string(display_symbol(c.unit)) : std::string("not stated");
-       }},
+      {"unit", [](const auto& c,
+                  Script) { return c.unit_stated ? std::string(display_symbol(c.unit)) : std::string("not stated"); }},
       {"first sample", [](const auto& c, Script s) { return with_unit(c.first, c, s); }},
       {"last sample", [](const auto& c, Script s) { return with_unit(c.last, c, s); }},
       {"least", [](const auto& c, Script s) { return with_unit(c.min, c, s); }},
       {"largest", [](const auto& c, Script s) { return with_unit(c.max, c, s); }},
-      {"range used", [](const auto& c, Script s) { return std::isnan(c.range_used) ? "" : to_percent_text(c.range_used, s); }},
-      {"step", [](const auto& c, Script s) { return std::isnan(c.resolution) ? "" : to_text(c.resolution, c.unit, s, 3); }},
+      {"range used",
+       [](const auto& c, Script s) { return std::isnan(c.range_used) ? "" : to_percent_text(c.range_used, s); }},
+      {"step",
+       [](const auto& c, Script s) { return std::isnan(c.resolution) ? "" : to_text(c.resolution, c.unit, s, 3); }},
       {"noise",
        [](const auto& c, Script s) {
          if (std::isnan(c.noise)) return std::string("-");
          return to_text(c.noise, c.unit, s, 2) + (c.noise_is_rounding ? " (rounding)" : "");
        }},
       {"effective bits",
-       [](const auto& c, Script) { return std::isnan(c.effective_bits) ? "-" : fmt::format("{:.1f}", c.effective_bits); }},
+       [](const auto& c, Script) {
+         return std::isnan(c.effective_bits) ? "-" : fmt::format("{:.1f}", c.effective_bits);
+       }},
       {"clipped", [](const auto& c, Script) { return c.clipped == 0 ? "none" : std::to_string(c.clipped); }},
       {"missing", [](const auto& c, Script) { return c.missing == 0 ? "none" : std::to_string(c.missing); }},
   };
@@ -205,7 +211,8 @@ void add_suggestion(const Description& d, const TextStyle& style, std::string& p
   // Never broken or respelt: it is to be copied.
   if (!s.command.empty()) page += "\n    " + s.command + "\n";
   if (!s.note.empty()) {
-    page += (s.command.empty() ? "" : "\n") + wrapped(in_script(shown(s.note, 1000), style.script), kIndent, style.width);
+    page +=
+        (s.command.empty() ? "" : "\n") + wrapped(in_script(shown(s.note, 1000), style.script), kIndent, style.width);
   }
 }
 
@@ -218,8 +225,8 @@ std::string head_of(const Description& d) {
 }
 
 std::string findings_in_short(const std::vector<Finding>& findings) {
-  const auto grave = std::count_if(findings.begin(), findings.end(),
-                                   [](const Finding& f) { return f.severity != Severity::note; });
+  const auto grave =
+      std::count_if(findings.begin(), findings.end(), [](const Finding& f) { return f.severity != Severity::note; });
   if (findings.empty()) return "none";
   if (grave == 0) return std::to_string(findings.size());
   return fmt::format("{} ({})", findings.size(), counted(static_cast<std::size_t>(grave), "caution", "cautions"));
@@ -235,8 +242,8 @@ std::vector<std::string> row_of(const Description& d, Script script) {
     for (const ChannelDescription& each : d.channels) channels += (channels.empty() ? "" : " ") + shown(each.name, 8);
     if (d.channels.size() > 3) channels = std::to_string(d.channels.size());
   }
-  return {d.kind, std::to_string(d.samples), steps, channels, findings_in_short(d.findings),
-          d.suggestion.test.empty() ? "-" : d.suggestion.test};
+  return {d.kind,   std::to_string(d.samples),     steps,
+          channels, findings_in_short(d.findings), d.suggestion.test.empty() ? "-" : d.suggestion.test};
 }
 
 }  // namespace

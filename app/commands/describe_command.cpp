@@ -80,7 +80,8 @@ Command describe_command() {
                               {.name = "--bench-out",
                                .kind = ValueKind::file,
                                .value_name = "FILE.toml",
-                               .help = "keeps how the file was read in a new bench sheet; an existing file is not touched",
+                               .help =
+                                   "keeps how the file was read in a new bench sheet; an existing file is not touched",
                                .example = "scope.toml"}}},
                  measuring_options()},
       .examples = {{"describe ring.csv", "what is in the file, and what to run next"},

@@ -26,7 +26,8 @@ Result<void> check_job(const DescribeJob& job) {
   }
   if (!job.bench_out) return {};
   if (job.files.size() > 1) {
-    return failure(Problem::usage, "--bench-out", "a reading key is that of one file", "describe one typical file with it");
+    return failure(Problem::usage, "--bench-out", "a reading key is that of one file",
+                   "describe one typical file with it");
   }
   if (*job.bench_out == "-") {
     return failure(Problem::usage, "--bench-out", "a bench sheet is written to a file", "give the name of a new file");
@@ -66,10 +67,10 @@ std::string column_text(const Description& d, const ChannelDescription& channel)
 /// The columns this could be about, commented out: what they mean is for people to say.
 std::string likely_columns(const Description& d) {
   const auto& all = d.channels;
-  const auto voltage = std::find_if(all.begin(), all.end(), [](const ChannelDescription& c) {
-    return c.unit == Unit::volt || !c.unit_stated;
-  });
-  auto current = std::find_if(all.begin(), all.end(), [](const ChannelDescription& c) { return c.unit == Unit::ampere; });
+  const auto voltage = std::find_if(all.begin(), all.end(),
+                                    [](const ChannelDescription& c) { return c.unit == Unit::volt || !c.unit_stated; });
+  auto current =
+      std::find_if(all.begin(), all.end(), [](const ChannelDescription& c) { return c.unit == Unit::ampere; });
   const bool in_ampere = current != all.end();
   for (auto c = all.begin(); !in_ampere && c != all.end(); ++c) {
     if (c == voltage || (c->unit != Unit::volt && c->unit_stated)) continue;
@@ -122,7 +123,8 @@ Result<std::vector<DescribedFile>> run_describe(const DescribeJob& job, const Ru
   for (const std::string& file : job.files) {
     const Result<Recording> recording = read_recording(file, *reading);
     if (!recording && recording.error().problem == Problem::interrupted) return failure(recording);
-    described.push_back({file, recording ? Result<Description>(describe(*recording, job.options)) : failure(recording)});
+    described.push_back(
+        {file, recording ? Result<Description>(describe(*recording, job.options)) : failure(recording)});
   }
   if (job.bench_out && described.front().description) {
     const Result<std::string> key = reading_key(*described.front().description, *reading);

@@ -17,7 +17,7 @@ struct DescribeJob {
   std::optional<std::string> bench_sheet;  // path; its reading key is used
   ReadOptions stated;                      // replaces what the sheet says
   DescribeOptions options;
-  std::optional<std::string> bench_out;    // path of a new bench sheet
+  std::optional<std::string> bench_out;  // path of a new bench sheet
 };
 
 /// Every file, in order; one that cannot be read is an error in its place. usage: standard input twice, a sheet to be

@@ -63,7 +63,9 @@ const Finding* finding(const Description& d, std::string_view code) {
 }
 
 const Shape kSine = [](double i) { return std::sin(kTurn * i / 37.3); };
-const Shape kRing = [](double i) { return i < 300 ? 0 : std::exp(-(i - 300) / 900) * std::cos(kTurn * (i - 300) / 40); };
+const Shape kRing = [](double i) {
+  return i < 300 ? 0 : std::exp(-(i - 300) / 900) * std::cos(kTurn * (i - 300) / 40);
+};
 const Shape kSquare = [](double i) { return std::fmod(i, 200) < 100 ? 1.0 : -1.0; };
 const Shape kOneStep = [](double i) { return i < 2600 ? 0.0 : 1.0; };
 const Shape kSlowSquare = [](double i) { return std::fmod(i, 1900) < 900 ? 1.0 : -1.0; };
@@ -127,12 +129,14 @@ TEST(DescribeNoise, SkipsMissingSamples) {
 // A rounded sine has an error of a step over the square root of 12 at least, whatever its spectrum looks like.
 TEST(Describe, NoiseUnderTheConvertersStepIsThatOfRoundingAndSaysSo) {
   const double step = 2.0 / 256;
-  const auto quiet = described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, kSine, step / 20, 1, step), step)}));
+  const auto quiet =
+      described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, kSine, step / 20, 1, step), step)}));
   EXPECT_TRUE(quiet.channels[0].noise_is_rounding);
   EXPECT_DOUBLE_EQ(quiet.channels[0].noise, step / std::sqrt(12.0));
   EXPECT_NEAR(quiet.channels[0].effective_bits, 8, 0.1);  // 256 codes
 
-  const auto loud = described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, kSine, 3 * step, 1, step), step)}));
+  const auto loud =
+      described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, kSine, 3 * step, 1, step), step)}));
   EXPECT_FALSE(loud.channels[0].noise_is_rounding);
   EXPECT_NEAR(loud.channels[0].noise, std::hypot(3 * step, step / std::sqrt(12.0)), 0.3 * step);
 }
@@ -206,7 +210,8 @@ TEST(Describe, CutCrestsAreClippedAndPlateausAreNot) {
   EXPECT_EQ(finding(cut, "clipped")->about, "CH1");
   // Few, wide crests: each flat top is a tenth of the record.
   const Shape wide = [](double i) { return std::clamp(std::sin(kTurn * i / 400), -0.6, 0.6); };
-  EXPECT_GT(described(capture_of({channel_of("CH1", Unit::volt, record_of(1400, wide, 0, 1))})).channels[0].clipped, 500u);
+  EXPECT_GT(described(capture_of({channel_of("CH1", Unit::volt, record_of(1400, wide, 0, 1))})).channels[0].clipped,
+            500u);
   for (const Shape* plateau : {&kOneStep, &kSlowSquare}) {
     const auto d = described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, *plateau, 0, 1))}));
     EXPECT_EQ(d.channels[0].clipped, 0u);
@@ -238,7 +243,9 @@ TEST(Describe, SignsOfAliasingAreNamed) {
     const auto d = described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, *fine, 1e-3, 1))}));
     EXPECT_EQ(finding(d, "aliased"), nullptr);
   }
-  EXPECT_EQ(finding(described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, [](double) { return 0.0; }, 1, 1))})),
+  EXPECT_EQ(finding(described(capture_of({channel_of("CH1", Unit::volt,
+                                                     record_of(
+                                                         5000, [](double) { return 0.0; }, 1, 1))})),
                     "aliased"),
             nullptr);
 }
@@ -263,7 +270,9 @@ TEST(DescribeSuggestion, ARingingChannelIsMeasuredByItsDecay) {
   const auto alone = described(capture_of({ring})).suggestion;
   EXPECT_EQ(alone.test, "ringdown");
   EXPECT_EQ(alone.command, "coilassay ringdown coil.csv");
-  const auto drive = channel_of("CH1", Unit::volt, record_of(5000, [](double i) { return i < 300 ? 1.0 : 0.0; }, 1e-3, 2));
+  const auto drive = channel_of("CH1", Unit::volt,
+                                record_of(
+                                    5000, [](double i) { return i < 300 ? 1.0 : 0.0; }, 1e-3, 2));
   EXPECT_EQ(described(capture_of({drive, ring})).suggestion.command, "coilassay ringdown coil.csv --voltage CH2");
 }
 

@@ -25,11 +25,13 @@ Json described_json(std::vector<std::string> files, int exit_code = 0) {
   return document.is_discarded() ? Json::object() : document;
 }
 
-// What the simulator was told is the truth: 8 bits over 1.2 times the largest voltage, 2 mV of noise under a step of 32 mV.
+// What the simulator was told is the truth: 8 bits over 1.2 times the largest voltage, 2 mV of noise under a step of 32
+// mV.
 TEST(DescribeProgram, TellsOfASimulatedRingDownWhatTheSimulatorWasTold) {
   const TemporaryFolder folder;
   const std::string file = folder / "ring.csv";
-  simulate_into(file, {"--noise", "2mV", "--bits", "8", "--full-scale", "4V", "--interval", "20ns", "--samples", "8000"});
+  simulate_into(file,
+                {"--noise", "2mV", "--bits", "8", "--full-scale", "4V", "--interval", "20ns", "--samples", "8000"});
   const Json d = described_json({file});
   EXPECT_EQ(d["kind"], "waveform");
   EXPECT_EQ(d["samples"], 8000);
@@ -93,7 +95,8 @@ TEST(DescribeProgram, OneFileThatCannotBeReadIsAnError) {
 TEST(DescribeProgram, ReadsStandardInputOnce) {
   const TemporaryFolder folder;
   simulate_into(folder / "ring.csv");
-  const ProgramEnd end = run_program_process({.arguments = {"describe", "-", "--json"}, .input = contents_of(folder / "ring.csv")});
+  const ProgramEnd end =
+      run_program_process({.arguments = {"describe", "-", "--json"}, .input = contents_of(folder / "ring.csv")});
   EXPECT_EQ(end.exit_code, 0) << end.error;
   EXPECT_EQ(Json::parse(end.out)["suggestion"]["command"], "coilassay ringdown -");
   EXPECT_EQ(run_program_process({"describe", "-", "-"}).exit_code, 2);
@@ -129,7 +132,8 @@ TEST(DescribeProgram, AReadingKeyIsForOneTableOnly) {
   const TemporaryFolder folder;
   simulate_into(folder / "ring.csv");
   const std::string sheet = folder / "scope.toml";
-  EXPECT_EQ(run_program_process({"describe", folder / "ring.csv", folder / "ring.csv", "--bench-out", sheet}).exit_code, 2);
+  EXPECT_EQ(run_program_process({"describe", folder / "ring.csv", folder / "ring.csv", "--bench-out", sheet}).exit_code,
+            2);
   EXPECT_EQ(run_program_process({"describe", folder / "ring.csv", "--bench-out", "-"}).exit_code, 2);
   const std::string touchstone = folder.file("z.s1p", "# MHz Z RI R 1\n1 0.1 6.28\n2 0.1 12.57\n");
   EXPECT_EQ(run_program_process({"describe", touchstone, "--bench-out", sheet}).exit_code, 2);

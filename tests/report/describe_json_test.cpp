@@ -16,7 +16,11 @@ Description made_up_waveform() {
   Description d;
   d.kind = "waveform";
   d.source = {.name = "ring.csv", .sha256 = std::string(64, 'a'), .bytes = 1234, .identity = ""};
-  d.dialect = {.format = "table", .encoding = "utf-8", .delimiter = ";", .decimal = ",", .first_data_line = 4,
+  d.dialect = {.format = "table",
+               .encoding = "utf-8",
+               .delimiter = ";",
+               .decimal = ",",
+               .first_data_line = 4,
                .settings = {{"Model", "bench scope"}}};
   d.samples = 48;
   d.start_s = -1.6e-6;
@@ -50,7 +54,8 @@ Description made_up_sweep() {
 }
 
 TEST(DescribeJson, KeepsToItsSchema) {
-  for (const Description& d : {made_up_waveform(), made_up_sweep()}) EXPECT_EQ(schema_trouble(to_json(d), "describe"), "");
+  for (const Description& d : {made_up_waveform(), made_up_sweep()})
+    EXPECT_EQ(schema_trouble(to_json(d), "describe"), "");
 }
 
 TEST(DescribeJson, SaysWhatWasRead) {
@@ -81,7 +86,8 @@ TEST(DescribeJson, WhatIsNotKnownIsNullAndNeverLeftOut) {
   const std::string text = to_json(d);
   EXPECT_EQ(schema_trouble(text, "describe"), "");
   const Json document = Json::parse(text);
-  for (const char* key : {"first", "last", "min", "max", "noise", "effective_bits", "range_used", "resolution", "unit"}) {
+  for (const char* key :
+       {"first", "last", "min", "max", "noise", "effective_bits", "range_used", "resolution", "unit"}) {
     ASSERT_TRUE(document["channels"][0].contains(key)) << key;
     EXPECT_TRUE(document["channels"][0][key].is_null()) << key;
   }

@@ -11,13 +11,19 @@
 namespace coilassay::test {
 namespace {
 
-bool contains(const std::string& text, const std::string& part) { return text.find(part) != std::string::npos; }
+bool contains(const std::string& text, const std::string& part) {
+  return text.find(part) != std::string::npos;
+}
 
 Description made_up_page() {
   Description d;
   d.kind = "waveform";
   d.source.name = "my ring.csv";
-  d.dialect = {.format = "table", .encoding = "utf-8", .delimiter = ";", .decimal = ",", .first_data_line = 4,
+  d.dialect = {.format = "table",
+               .encoding = "utf-8",
+               .delimiter = ";",
+               .decimal = ",",
+               .first_data_line = 4,
                .settings = {{"Model", "bench scope"}}};
   d.samples = 20000;
   d.start_s = -2e-5;
@@ -42,9 +48,10 @@ Description made_up_page() {
 
 TEST(DescribeText, SaysHowTheFileWasReadAndWhatIsInIt) {
   const std::string page = to_text(made_up_page(), {});
-  for (const char* part : {"my ring.csv: waveform, 2 channels", "table, utf-8", "between semicolons, decimal comma", "from line 4",
-                           "20000 every 20 ns, over 400.0 µs", "from -20 µs in even steps of 20 ns", "4.800 V", "62 %", "7.8",
-                           "(rounding)", "12 samples stand at a flat top", "It looks like a free decay."}) {
+  for (const char* part :
+       {"my ring.csv: waveform, 2 channels", "table, utf-8", "between semicolons, decimal comma", "from line 4",
+        "20000 every 20 ns, over 400.0 µs", "from -20 µs in even steps of 20 ns", "4.800 V", "62 %", "7.8",
+        "(rounding)", "12 samples stand at a flat top", "It looks like a free decay."}) {
     EXPECT_TRUE(contains(page, part)) << part << "\n" << page;
   }
   EXPECT_LT(page.find("caution"), page.find("a note first"));
@@ -69,7 +76,8 @@ TEST(DescribeText, WhatStandsInTheHeadAndTheDigestComeWithVerbose) {
 
 TEST(DescribeText, IsPlainAsciiWhereUtf8IsNotKnown) {
   const std::string page = to_text(made_up_page(), {.script = Script::ascii});
-  EXPECT_TRUE(std::all_of(page.begin(), page.end(), [](char c) { return static_cast<unsigned char>(c) < 0x80; })) << page;
+  EXPECT_TRUE(std::all_of(page.begin(), page.end(), [](char c) { return static_cast<unsigned char>(c) < 0x80; }))
+      << page;
 }
 
 TEST(DescribeText, ManyChannelsFitTheWidth) {
@@ -97,7 +105,8 @@ TEST(DescribeText, ASweepSaysItsFrequenciesAndQuantities) {
   d.reference_ohm = {50, 75};
   d.suggestion.looks_like = "impedance against frequency";
   const std::string page = to_text(d, {});
-  for (const char* part : {"z.s2p: sweep of 201 points", "10.0000 kHz to 10.0000 MHz", "50 Ω, 75 Ω", "impedance against frequency"}) {
+  for (const char* part :
+       {"z.s2p: sweep of 201 points", "10.0000 kHz to 10.0000 MHz", "50 Ω, 75 Ω", "impedance against frequency"}) {
     EXPECT_TRUE(contains(page, part)) << part << "\n" << page;
   }
 }
@@ -125,7 +134,8 @@ TEST(DescribeText, OutsideTextIsMadeVisible) {
   const std::string page = to_text(d, {.verbose = true});
   EXPECT_EQ(page.find('\x1b'), std::string::npos);
   EXPECT_EQ(page.find('\r'), std::string::npos);
-  const std::vector<DescribedFile> files = {{hostile, d}, {hostile, failure(Problem::damaged, hostile + ":2", hostile, "")}};
+  const std::vector<DescribedFile> files = {{hostile, d},
+                                            {hostile, failure(Problem::damaged, hostile + ":2", hostile, "")}};
   EXPECT_EQ(to_text(files, {}).find('\x1b'), std::string::npos);
 }
 
