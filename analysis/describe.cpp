@@ -17,7 +17,9 @@ namespace {
 constexpr double kFewCycles = 3;      // as in ring_down_decay.cpp
 constexpr double kThinlySampled = 5;  // samples a period
 constexpr double kHardlySampled = 2.2;
-constexpr double kMostlyHigh = 0.6;      // of the power, above 0.8 of half the sampling rate
+constexpr double kMostlyHigh = 0.6;  // of the power, above 0.8 of half the sampling rate
+// Of the span: what is smaller may be side lobes of a swing of computed numbers; no converter is that quiet.
+constexpr double kQuietest = 1e-7;
 constexpr double kMostlyRounding = 1.2;  // noise up to here is rounding with less than 0.2 steps of its own
 constexpr double kEvenSteps = 1e-3;      // of a step: how far steps of several records may differ
 constexpr double kEvenStamps = 0.1;      // of a step: how far a rounded stamp may be off
@@ -78,6 +80,7 @@ ChannelDescription channel_over(const std::vector<Capture>& captures, std::size_
   }
   const double span = d.max - d.min;
   d.noise = noise_of(shape.samples);
+  if (!(d.noise > kQuietest * span)) d.noise = std::nan("");
   const double rounding = d.resolution / std::sqrt(12.0);
   if (span > 0 && rounding > 0) {
     d.noise_is_rounding = !(d.noise > kMostlyRounding * rounding);

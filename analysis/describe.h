@@ -22,7 +22,7 @@ struct ChannelDescription {
   double min = std::nan(""), max = std::nan("");
   std::size_t missing = 0;
   double noise = std::nan("");           // standard deviation of one sample; never below resolution/sqrt(12); NaN: too
-                                         // short to tell, or nothing changes
+                                         // short to tell, nothing changes, or less than 1e-7 of the span
   bool noise_is_rounding = false;        // `noise` is mostly the error of rounding to the converter's steps
   double effective_bits = std::nan("");  // of the span that was used: log2((max - min)/(sqrt(12) noise))
   double range_used = std::nan("");      // share of the full scale, when that is known

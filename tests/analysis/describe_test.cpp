@@ -141,6 +141,13 @@ TEST(Describe, NoiseUnderTheConvertersStepIsThatOfRoundingAndSaysSo) {
   EXPECT_NEAR(loud.channels[0].noise, std::hypot(3 * step, step / std::sqrt(12.0)), 0.3 * step);
 }
 
+// What a simulator writes in full has no noise; the limit of the method is not shown for it.
+TEST(Describe, ComputedSamplesHaveNoNoiseToBeShown) {
+  const auto d = described(capture_of({channel_of("v", Unit::volt, record_of(5000, kSine, 0, 1))}));
+  EXPECT_TRUE(std::isnan(d.channels[0].noise));
+  EXPECT_TRUE(std::isnan(d.channels[0].effective_bits));
+}
+
 TEST(Describe, EffectiveBitsFollowFromSpanAndNoise) {
   for (const double noise : {1e-4, 1e-3, 1e-2}) {
     const auto d = described(capture_of({channel_of("CH1", Unit::volt, record_of(20000, kSine, noise, 5))}));
