@@ -151,7 +151,9 @@ int main(int argc, char** argv) {
     for (const char* s : symbols) {
       Tally& t = outcomes[i].tallies[s];
       const double cover = t.coverage(), width = t.width_ratio();
-      const bool low = (dithered && cover < 0.88) || (cell.drawn && dithered && width > 1.6);
+      // Where R_s is hardly resolved the interval of Q is open towards infinity: its width says nothing there.
+      const bool open = s[0] == 'Q' && cell.q >= 100 && cell.snr_db < 30;
+      const bool low = (dithered && cover < 0.88) || (cell.drawn && dithered && !open && width > 1.6);
       good = good && !low;
       std::printf("  %s %5.1f%c %4.2f", s, 100 * cover, low ? '!' : ' ', width);
       Pool& pool = pools[std::string(cell.drawn ? "(b) " : undithered ? "(a) undithered " : "(a) ") + s];
