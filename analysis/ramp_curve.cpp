@@ -228,8 +228,24 @@ class PulseFit {
     // The flux at the peak carries the errors itself; a change of it is worth its current in energy.
     out_.sensitivity.row(ramp_output::kEnergy) += out_.high_a * peak_flux_shifts().transpose();
     out_.spread = Eigen::VectorXd::Zero(ramp_output::kCount);
+    keep_what_is_reached();
     if (other != nullptr) add_family_spread(*other, other_is_richer_than_straight);
-    if (fit.f_probability < kMisfit) add_spline_spread();
+    if (fit.f_probability < kMisfit || smooth_misfit()) add_spline_spread();
+  }
+
+  /// A drop counts as reached when the inductance at the peak is below it beyond doubt.
+  void keep_what_is_reached() {
+    using namespace ramp_output;
+    const auto u = [&](int g) { return std::sqrt(std::fmax(out_.covariance(kGrid + g, kGrid + g), 0)); };
+    for (int d = 0; d < 3; ++d) {
+      const double level = (1 - 0.1 * (d + 1)) * out_.values[kL0];
+      double& sure = out_.sure_a[static_cast<std::size_t>(d)];
+      for (int g = 0; g < kGridPoints && out_.values[kGrid + g] - 2 * u(g) > level; ++g) {
+        sure = out_.grid_a[static_cast<std::size_t>(g)];
+      }
+      const int last = kGridPoints - 1;
+      if (out_.values[kGrid + last] + 2 * u(last) > level) out_.values[kSat + d] = std::nan("");
+    }
   }
 
   /// By central differences over a fraction of each standard uncertainty.
@@ -313,6 +329,23 @@ class PulseFit {
       const double beyond = difference * difference - (from_straight ? 1 : 2) * freedom;
       if (beyond > 0) out_.spread[o] = std::sqrt(beyond);
     }
+  }
+
+  /// Residuals that hang together along the curve: their means over twentieths show a smooth misfit long before the scatter
+  /// of single blocks does.
+  bool smooth_misfit() const {
+    constexpr std::size_t kParts = 20;
+    const std::size_t n = blocks_.x.size();
+    double chi = 0;
+    for (std::size_t part = 0; part < kParts; ++part) {
+      const std::size_t a = part * n / kParts, b = (part + 1) * n / kParts;
+      double sum = 0;
+      for (std::size_t i = a; i < b; ++i) sum += blocks_.y[i] - out_.fit.predicted[i];
+      chi += sum * sum * out_.fit.weight / static_cast<double>(b - a);
+    }
+    // Most of what the parameters take, they take from these means.
+    const double free = straight_ ? 2 : 6;
+    return chi > chi_square_quantile(1 - kMisfit, static_cast<double>(kParts) - free);
   }
 
   /// No curve of the family fits: the spline, which has no model, shows how far they may be off.

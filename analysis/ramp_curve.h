@@ -2,6 +2,7 @@
 #pragma once
 
 #include <Eigen/Core>
+#include <array>
 #include <optional>
 #include <string>
 #include <vector>
@@ -40,6 +41,7 @@ struct RampCurve {
   double low_a = 0, high_a = 0;          // currents that the rise holds
   double reference_a = 0;                // of L_0; 0 when the rise begins at no current
   std::vector<double> grid_a;            // kGridPoints currents
+  std::array<double, 3> sure_a{};        // up to here the inductance has not dropped by 10, 20, 30 %, noise allowed for
   Eigen::VectorXd values;                // kCount outputs
   Eigen::MatrixXd covariance;            // of the outputs, from the fit
   Eigen::MatrixXd sensitivity;           // outputs x inputs

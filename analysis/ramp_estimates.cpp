@@ -63,9 +63,14 @@ void add_bounds(Measurement& result, const RampStory& story, const Combined& all
   const std::array laws = {ErrorLaw{story.inputs.errors[1].law.kind, gain_u * lowest, 0},
                            ErrorLaw{ErrorLaw::Kind::normal, noise_u, 0}};
   const double u = std::hypot(gain_u * lowest, noise_u);
-  const double seen = lowest - coverage_factor(laws) * u;
+  const double highest = lowest - coverage_factor(laws) * u;
   for (int o = kSat; o < kEnergy; ++o) {
     if (!std::isfinite(all.values[o])) {
+      // The mean inductance falls later than the incremental one.
+      double seen = highest;
+      for (std::size_t p = story.first_counted(); p < story.curves.size() && o < kSecant; ++p) {
+        seen = std::fmin(seen, story.curves[p].sure_a[static_cast<std::size_t>(o - kSat)]);
+      }
       result.bounds.push_back({kSymbolOf[static_cast<std::size_t>(o)], Unit::ampere, seen, std::nullopt, 0.95});
     }
   }
@@ -119,6 +124,12 @@ void add_ramp_estimates(Measurement& result, const RampStory& story) {
                        {ErrorLaw::Kind::student_t, all.pulse_u[o], static_cast<double>(all.pulses - 1)}, 'A', false, "data"});
     }
   }
+  // The drive may have lasted up to a sample longer than its last sample.
+  const RampCurve& shown = story.shown();
+  extra.push_back({"E_max", "sampling of the edges",
+                   {ErrorLaw::Kind::rectangular,
+                    shown.high_a * shown.late_inner_v * story.layout.step_s / std::sqrt(3.0), 0},
+                   'A', false, "data"});
   const auto count = static_cast<Eigen::Index>(reported.size());
   FittedInputs fitted;
   fitted.values.resize(count);

@@ -17,7 +17,7 @@ constexpr std::size_t kLeastQuiet = 6;       // samples that show a zero line
 constexpr double kRegion = 0.25;             // of the peak current: certainly inside a pulse
 constexpr double kDriveOn = 0.3;             // of the drive's voltage
 constexpr double kReturned = 0.02;           // of the peak current: back at zero
-constexpr double kJump = 0.03;               // of the pulse: a current that rises faster than this jumps
+constexpr double kJump = 0.01;               // of the record: a current that rises faster than this jumps
 constexpr double kClippedShare = 0.02;       // of the drive's samples at the end of the range
 
 /// Noise of single samples by the median of second differences.
@@ -109,6 +109,7 @@ class Finder {
     slow_amps_ = smoothed(out_.amps, 2 * width + 1);
     slow_volts_ = smoothed(out_.volts, 2 * width + 1);
     out_.peak_a = largest(slow_amps_, 0, slow_amps_.size());
+    if (looks_swapped()) return;
     std::size_t at = 0;
     while (at < slow_amps_.size()) {
       while (at < slow_amps_.size() && slow_amps_[at] < kRegion * out_.peak_a) ++at;
@@ -141,12 +142,17 @@ class Finder {
     const double begin = median(std::span(v).first(std::min(first, n)));
     double span = 0;
     for (double x : v) span = std::fmax(span, std::fabs(x - begin));
-    // Quiet as long as the voltage stays near where it began.
+    const double begin_a = median(std::span(out_.amps).first(std::min(first, n)));
+    double span_a = 0;
+    for (double x : out_.amps) span_a = std::fmax(span_a, std::fabs(x - begin_a));
+    // Quiet as long as both stay near where they began.
     std::size_t quiet = 0;
-    while (quiet < n && std::fabs(v[quiet] - begin) < 0.1 * span + 4 * out_.volt_noise) ++quiet;
+    while (quiet < n && std::fabs(v[quiet] - begin) < 0.1 * span + 4 * out_.volt_noise &&
+           std::fabs(out_.amps[quiet] - begin_a) < 0.1 * span_a + 4 * out_.amp_noise) {
+      ++quiet;
+    }
     if (quiet == n) return;
-    const double later = begin + (v[quiet] - begin);
-    const bool in_drive = std::fabs(begin) > 0.5 * std::fmax(largest(v, 0, n), std::fabs(later));
+    const bool in_drive = std::fabs(begin) > 0.5 * largest(v, 0, n);
     // The last samples before the edge belong to the edge where a scope filters, or the channels are skewed.
     const std::size_t end = quiet - std::min(quiet, quiet / 20 + 1);
     if (in_drive || end < kLeastQuiet) return;
@@ -218,12 +224,16 @@ class Finder {
     // What little is left falls on; the flux of a closed pulse counts all of it.
     const double nothing = std::fmax(0.002 * out_.peak_a, 2 * out_.amp_noise / std::sqrt(2.0 * width_ + 1));
     while (end < out_.amps.size() && slow_amps_[end] > nothing && slow_volts_[end] < kDriveOn * pulse.drive_v) ++end;
+    if (pulse.returns && end > peak) {
+      // A lossy core carries eddy currents the other way: it is at rest when the diode's voltage is gone.
+      const double fall_v = median(std::span(out_.volts).subspan(peak, end - peak));
+      while (end < out_.volts.size() && slow_volts_[end] < 0.3 * fall_v) ++end;
+    }
     const std::size_t after_peak = pulse.returns ? end : peak;
     pulse.start = start;
     pulse.peak = peak;
     pulse.end = after_peak;
     if (peak < start + kLeastRise) return;
-    if (looks_swapped(start, peak)) return;
     note_plateau(pulse, region_end);
     cut_clipped(pulse);
     if (out_.refused() || pulse.peak < pulse.start + kLeastRise) return;
@@ -239,20 +249,20 @@ class Finder {
   }
 
   /// A coil's current cannot jump, and the voltage of a drive does not creep up.
-  bool looks_swapped(std::size_t start, std::size_t peak) {
-    const auto time_between = [&](const std::vector<double>& v) {
-      const double most = largest(v, start, peak);
-      std::size_t low = start, high = start;
-      while (low < peak && v[low] < 0.1 * most) ++low;
-      high = low;
-      while (high < peak && v[high] < 0.8 * most) ++high;
-      return static_cast<double>(high - low) / static_cast<double>(peak - start);
+  bool looks_swapped() {
+    const auto rise = [](const std::vector<double>& v) {
+      const double most = largest(v, 0, v.size());
+      std::size_t low = 0;
+      while (low + 1 < v.size() && v[low] < 0.1 * most) ++low;
+      std::size_t high = low;
+      while (high + 1 < v.size() && v[high] < 0.8 * most) ++high;
+      return static_cast<double>(high - low) / static_cast<double>(v.size());
     };
-    const double of_current = time_between(slow_amps_), of_voltage = time_between(slow_volts_);
-    if (of_current > kJump || of_voltage < 10 * kJump) return false;
+    const double of_current = rise(slow_amps_), of_voltage = rise(slow_volts_);
+    if (of_current > kJump || of_voltage < 10 * of_current + kJump) return false;
     refuse("scale_suspect",
            "the current jumps to its height within " + to_percent_text(of_current) +
-               " of the pulse while the voltage creeps up: the channels look swapped; exchange --voltage and --current",
+               " of the record while the voltage creeps up: the channels look swapped; exchange --voltage and --current",
            of_current, Unit::one);
     return true;
   }

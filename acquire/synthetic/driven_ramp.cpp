@@ -108,12 +108,15 @@ class Circuit {
   }
   bool limited(const State& s) const { return b_.current_limit_a > 0 && s.current >= b_.current_limit_a; }
 
-  double current_slope(const State& s, Phase phase) const {
-    return (coil_voltage(s, phase) - b_.resistance_ohm * s.current) / inductance(s.current);
+  /// Less what the winding takes of the currents through the inductance and through the core's loss.
+  double inner_voltage(const State& s, Phase phase) const {
+    const double v = coil_voltage(s, phase) - b_.resistance_ohm * s.current;
+    return b_.core_loss_ohm > 0 ? v / (1 + b_.resistance_ohm / b_.core_loss_ohm) : v;
   }
+  double current_slope(const State& s, Phase phase) const { return inner_voltage(s, phase) / inductance(s.current); }
   /// What the sense element carries.
   double sensed(const State& s, Phase phase) const {
-    return s.current + (b_.core_loss_ohm > 0 ? (coil_voltage(s, phase) - b_.resistance_ohm * s.current) / b_.core_loss_ohm : 0);
+    return s.current + (b_.core_loss_ohm > 0 && phase != Phase::rest ? inner_voltage(s, phase) / b_.core_loss_ohm : 0);
   }
 
   State step(const State& s, Phase phase, double h) const {
@@ -137,7 +140,7 @@ class Circuit {
     if (phase == Phase::drive && b_.bank_capacitance_f > 0) d.bank = -s.current / b_.bank_capacitance_f;
     d.droop = corner_ * (s.current - s.droop);
     if (b_.core_loss_ohm > 0 && phase != Phase::rest) {
-      const double v = coil_voltage(s, phase) - b_.resistance_ohm * s.current;
+      const double v = inner_voltage(s, phase);
       d.loss = v * v / b_.core_loss_ohm;
     }
     return d;

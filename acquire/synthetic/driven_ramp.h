@@ -17,14 +17,15 @@ namespace coilassay::synthetic {
 ///
 /// A switch at its limit lets no more than `current_limit_a` through and takes the rest of the voltage. At the end of the
 /// drive the current flows on through a diode (u = -V_diode - R_shunt i) until it reaches zero. Before the drive and after
-/// that everything is at rest. An eddy-current loss is a resistance across the coil; the current channel sees both.
+/// that everything is at rest. An eddy-current loss is a resistance across the inductance; the winding and the current
+/// channel carry both currents.
 ///
 /// Current channel: ampere, or with a shunt volts (R_shunt i + L_shunt di/dt); behind the voltage channel by the skew; a
 /// current probe's droop is a one-pole high-pass.
 struct DrivenRampBench {
   CoreLaw core;
   double resistance_ohm = 0.05;
-  double core_loss_ohm = 0;               // across the coil; 0: none
+  double core_loss_ohm = 0;               // across the inductance; 0: none
   double first_pulse_ratio = 1;           // inductance of the first pulse over that of the later ones (remanence)
   // drive
   double supply_v = 10;
