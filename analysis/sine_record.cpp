@@ -178,7 +178,10 @@ Result<SineRecord> sine_of_capture(const Capture& capture, const SineRequest& re
     return sine;
   }
   if (!sine.fit) {
-    const std::string code = fit ? "no_signal" : std::string(name(fit.error().problem));
+    const Problem problem = fit ? Problem::no_signal : fit.error().problem;
+    const std::string code = problem == Problem::too_few_samples ? "too_few_samples"
+                             : problem == Problem::not_converged ? "not_steady"
+                                                                 : "no_signal";
     const std::string why = fit ? "the record does not determine a sine" : fit.error().finding + "; " + fit.error().remedy;
     sine.findings.push_back({code, Severity::refusal, why, sine.record.volt_name,
                              static_cast<double>(sine.end - sine.first), Unit::one});
