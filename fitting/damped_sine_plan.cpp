@@ -84,7 +84,7 @@ WhiteBlocks compress(std::span<const double> y, Plan& plan, ShortSums& sums, dou
   // Where most of the record is still to be read, reading it with longer blocks is quicker.
   const bool most_read = sums.sum.size() * each * 2 > y.size();
   const bool serve = each > 1 && (most_read || each >= 1024) && plan.length >= each &&
-                     plan.omega * static_cast<double>(each) < 0.12 && sums.reference == reference && sums.complete(y);
+                     plan.omega * static_cast<double>(each) < 0.15 && sums.reference == reference && sums.complete(y);
   if (!serve) return compress(y, plan, reference);
   const std::size_t span = plan.tail_from < y.size() ? plan.tail_from : y.size();
   plan.length = each * good_length(span / each, static_cast<double>(plan.length / each));

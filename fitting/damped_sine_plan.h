@@ -30,8 +30,8 @@ bool plan_fits(const Plan& plan, const Shape& shape, std::size_t samples);
 /// made shorter, down to single samples.
 WhiteBlocks compress(std::span<const double> y, Plan& plan, double reference);
 
-/// The same from short sums of all of y where they serve: without missing samples and with less than 0.12 rad per short
-/// block (a thousandth of the variance is lost). Blocks are then whole numbers of short ones. Otherwise as above.
+/// The same from short sums of all of y where they serve: without missing samples and with less than 0.15 rad per short
+/// block (two thousandths of the variance are lost). Blocks are then whole numbers of short ones. Otherwise as above.
 WhiteBlocks compress(std::span<const double> y, Plan& plan, ShortSums& sums, double reference);
 
 }  // namespace coilassay
