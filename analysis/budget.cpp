@@ -145,8 +145,9 @@ struct Interval {
 
 /// JCGM 101, 8.1: two results agree when both ends differ by less than half a unit in the second digit of u.
 bool agree_to_two_digits(const Interval& first, const Interval& second) {
-  if (!(first.u > 0)) return true;
-  const double digit = std::pow(10.0, std::floor(std::log10(first.u)) - 1);
+  const double u = first.u > 0 ? first.u : second.u;  // first order finds none where the slopes vanish
+  if (!(u > 0)) return true;
+  const double digit = std::pow(10.0, std::floor(std::log10(u)) - 1);
   return std::fabs(first.low - second.low) <= 0.5 * digit && std::fabs(first.high - second.high) <= 0.5 * digit;
 }
 

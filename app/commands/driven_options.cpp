@@ -64,10 +64,14 @@ Result<void> take_current(const Arguments& arguments, BenchSetup& bench) {
   current.column = arguments.text("--current");
   current.low_column = arguments.text("--current-low");
   current.shunt = arguments.stated("--shunt");
-  current.shunt_inductance = arguments.stated("--shunt-inductance");
-  current.skew = arguments.stated("--skew");
-  current.probe_corner = arguments.stated("--current-probe-corner");
-  bench.winding_resistance = arguments.stated("--dcr");
+  // A command that measures at direct current leaves out what only matters over time.
+  const auto if_declared = [&](std::string_view option) {
+    return arguments.command().find(option) != nullptr ? arguments.stated(option) : std::nullopt;
+  };
+  current.shunt_inductance = if_declared("--shunt-inductance");
+  current.skew = if_declared("--skew");
+  current.probe_corner = if_declared("--current-probe-corner");
+  bench.winding_resistance = if_declared("--dcr");
   if (const auto typed = arguments.text("--current-gain")) {
     // Two kinds of factor: the unit tells which.
     const Unit unit = typed->find('V') != std::string::npos ? Unit::ampere_per_volt : Unit::one;

@@ -2,6 +2,7 @@
 #include "app/runs/resistance_run.h"
 
 #include "app/commands/command_list.h"
+#include "app/commands/driven_options.h"
 #include "app/commands/measuring.h"
 #include "app/commands/shared_options.h"
 #include "base/number_text.h"
@@ -9,20 +10,6 @@
 namespace coilassay {
 
 namespace {
-
-/// A factor in A/V or a plain one: the unit that was typed tells which.
-Result<std::optional<StatedValue>> current_gain_of(const Arguments& arguments) {
-  const std::optional<std::string> typed = arguments.text("--current-gain");
-  if (!typed) return std::nullopt;
-  const Unit unit = typed->find('V') != std::string::npos ? Unit::ampere_per_volt : Unit::one;
-  const Result<StatedValue> gain = parse_value(*typed, unit, "--current-gain");
-  if (!gain) return failure(gain);
-  if (gain->value == 0) {
-    return failure(Problem::bad_number, "--current-gain", "a factor of zero leaves no current",
-                   "give it as 10A/V, or as a plain number");
-  }
-  return *gain;
-}
 
 Result<ResistanceJob> job_of(const Arguments& arguments) {
   ResistanceJob job;
@@ -32,12 +19,7 @@ Result<ResistanceJob> job_of(const Arguments& arguments) {
   Result<BenchSetup> stated = stated_bench(arguments);
   if (!stated) return failure(stated);
   job.stated = std::move(*stated);
-  job.stated.current.column = arguments.text("--current");
-  job.stated.current.low_column = arguments.text("--current-low");
-  job.stated.current.shunt = arguments.stated("--shunt");
-  Result<std::optional<StatedValue>> gain = current_gain_of(arguments);
-  if (!gain) return failure(gain);
-  job.stated.current.gain = *gain;
+  if (const Result<void> taken = take_current(arguments, job.stated); !taken) return failure(taken);
   job.material = arguments.text("--material");
   job.temperature_coefficient = arguments.stated("--temperature-coefficient");
   job.cold_resistance = arguments.stated("--cold");
@@ -61,31 +43,14 @@ Result<ExitCode> run(const Arguments& arguments, Console& console) {
   return finish_measuring(*measured, arguments, console, session.context());
 }
 
-OptionGroup current() {
-  return {.title = "Current",
-          .options = {{.name = "--current",
-                       .kind = ValueKind::text,
-                       .value_name = "COL",
-                       .help = "column with the current, or with the voltage of the shunt that shows it",
-                       .example = "I"},
-                      {.name = "--current-low",
-                       .kind = ValueKind::text,
-                       .value_name = "COL",
-                       .help = "column that is subtracted from it first",
-                       .example = "CH3"},
-                      {.name = "--shunt",
-                       .kind = ValueKind::stated,
-                       .value_name = "VALUE",
-                       .help = "sense resistor; the current column is then in volts",
-                       .example = "0.1ohm±1%",
-                       .unit = Unit::ohm,
-                       .range = Range::positive},
-                      {.name = "--current-gain",
-                       .kind = ValueKind::text,
-                       .value_name = "VALUE",
-                       .help = "factor the file has not applied yet: in A/V for a probe in volts, a plain number for a "
-                               "column in A or beside a shunt; with its tolerance also the accuracy of the meter",
-                       .example = "1±0.2%"}}};
+/// What is said of a current channel at direct current: nothing about time, and the resistance is what is asked.
+OptionGroup direct_current() {
+  OptionGroup group = current_options();
+  std::erase_if(group.options, [](const Option& option) {
+    return option.name == "--shunt-inductance" || option.name == "--skew" || option.name == "--current-probe-corner" ||
+           option.name == "--dcr";
+  });
+  return group;
 }
 
 OptionGroup winding() {
@@ -149,7 +114,7 @@ Command resistance_command() {
                      .help = "readings as text tables; '-' is standard input",
                      .least = 1,
                      .most = 1000},
-      .groups = {current(), winding(), reading_options(),
+      .groups = {direct_current(), winding(), reading_options(),
                  {.title = "Bench", .options = {bench_file()}}, uncertainty_options(), output_options(), measuring_options()},
       .examples = {{"resistance readings.csv --temperature 23±1degC --voltage-gain 1±0.05% --current-gain 1±0.2%",
                     "R_dc and R_dc_20 from readings of two meters, their accuracy stated as that of a factor of one"},
