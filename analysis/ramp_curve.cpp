@@ -19,6 +19,7 @@ constexpr std::size_t kLongRise = 100000;     // samples from which more blocks 
 constexpr double kKneeEvidence = 9;           // chi-square that any knee must gain over a straight line
 constexpr double kNoBend = 0.05;              // standard uncertainty of a square term that is known to be absent
 constexpr double kMisfit = 0.01;              // F less likely than this: no curve of the family fits
+constexpr double kSplineDoubt = 2;            // a spline with ten knots errs by about as much as it differs from the curve
 constexpr double kSurprise = 4;               // standard deviations of a flux that does not begin where it should
 enum : int { kFitOffset = 4, kFitShift = 5 }; // places among the parameters of RollOffFit
 
@@ -357,7 +358,7 @@ class PulseFit {
     const RollOff& curve = out_.fit.curve;
     const double shift = out_.fit.shift;
     const auto widen = [&](Eigen::Index o, double difference) {
-      if (std::isfinite(difference)) out_.spread[o] = std::fmax(out_.spread[o], std::fabs(difference));
+      if (std::isfinite(difference)) out_.spread[o] = std::fmax(out_.spread[o], kSplineDoubt * std::fabs(difference));
     };
     const auto slope_at = [&](double current) {
       return spline->slope(std::clamp(curve.integral(current) - shift, spline->low(), spline->high()));
