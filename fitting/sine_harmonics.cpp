@@ -14,7 +14,7 @@ namespace {
 
 using Complex = std::complex<double>;
 
-constexpr std::size_t kMost = 1U << 15;
+constexpr std::size_t kMost = 1U << 14;
 constexpr std::size_t kStretches = 16;
 constexpr double kManyCycles = 60;
 constexpr int kHighest = 5;

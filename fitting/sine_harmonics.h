@@ -17,7 +17,7 @@ struct SampleLook {
 };
 
 /// Fundamental, harmonics and offset at a known frequency by linear least squares: on all samples of a record that is short
-/// or has few cycles (there harmonics lean on the fundamental, and must be known as well), otherwise on 32768 in stretches
+/// or has few cycles (there harmonics lean on the fundamental, and must be known as well), otherwise on 16384 in stretches
 /// spread over it. With fewer than 1.5 cycles no harmonics are told apart.
 /// @param reference  about the offset
 SampleLook look_at_samples(std::span<const double> y, double omega, double centre, double reference);
