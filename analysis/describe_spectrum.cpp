@@ -144,7 +144,9 @@ double noise_of(std::span<const double> samples) {
   if (4 * free.size() >= count) return noise_by_levels(free);
   free.insert(free.end(), with_edges.begin(), with_edges.end());
   const double spectral = noise_by_levels(free);
-  return differences.empty() ? spectral : std::min(spectral, low_one(std::move(differences), 4));
+  // Steps and nothing else: all that changes is signal.
+  if (differences.empty()) return std::nan("");
+  return std::min(spectral, low_one(std::move(differences), 4));
 }
 
 SpectralLine strongest_line(std::span<const double> samples) {

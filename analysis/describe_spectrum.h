@@ -12,7 +12,7 @@ namespace coilassay {
 /// between the signal's lines, and the quieter bands of the quieter stretches count, so that lines, slow shapes and a
 /// transient do not. Edges fill a whole spectrum: where few stretches are free of them, the median of third differences
 /// decides, if it is smaller. Noise that a filter has taken away from the top of the spectrum is underestimated.
-/// @return NaN for fewer than 32 samples in a row, or when nothing changes.
+/// @return NaN for fewer than 32 samples in a row, or when nothing but steps changes.
 double noise_of(std::span<const double> samples);
 
 /// The strongest line of the last stretch of a record.

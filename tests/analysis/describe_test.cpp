@@ -118,6 +118,7 @@ TEST(DescribeNoise, IsNotKnownWhereNothingChanges) {
   EXPECT_TRUE(std::isnan(noise_of(std::vector<double>(1000, 1.5))));
   EXPECT_TRUE(std::isnan(noise_of(std::vector<double>(1000, std::nan("")))));
   EXPECT_TRUE(std::isnan(noise_of({})));
+  EXPECT_TRUE(std::isnan(noise_of(record_of(5000, kOneStep, 0, 1))));
 }
 
 TEST(DescribeNoise, SkipsMissingSamples) {

@@ -59,6 +59,20 @@ TEST(DescribeProgram, TheSuggestedCommandRunsAsItIs) {
   EXPECT_TRUE(Json::parse(contents_of(out))["quantities"].contains("f_0"));
 }
 
+TEST(DescribeProgram, WhatIsSimulatedForATestIsSuggestedForIt) {
+  const TemporaryFolder folder;
+  for (const std::string test : {"sine", "ramp", "resistance"}) {
+    const std::string file = folder / (test + ".csv");
+    ASSERT_EQ(run_program_process({"simulate", test, "-o", file, "--truth", file + ".json"}).exit_code, 0);
+    const Json suggestion = described_json({file})["suggestion"];
+    EXPECT_EQ(suggestion["test"], test);
+    const std::string command = suggestion["command"].is_null() ? "" : suggestion["command"].get<std::string>();
+    ASSERT_TRUE(command.starts_with("coilassay " + test + " ")) << command;
+    const std::string line = "'" + program() + "'" + command.substr(9) + " > '" + file + ".txt'";
+    EXPECT_EQ(std::system(line.c_str()), 0) << line;
+  }
+}
+
 TEST(DescribeProgram, APageForPeopleNamesTheCommandToRunNext) {
   const TemporaryFolder folder;
   const std::string file = folder / "ring.csv";
