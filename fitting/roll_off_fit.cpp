@@ -332,7 +332,8 @@ Result<RollOffFit> fit_roll_off(const RollOffBlocks& blocks, const RollOffKnown&
   if (!start.allFinite()) return failure(Problem::no_signal, "roll-off", "y does not rise with x", "");
   Settled best = descend(problem, start);
   const auto count = static_cast<double>(blocks.x.size());
-  if (!known.straight && (best.stop != FitStop::converged || best.chi > 3 * count)) {
+  // Without the square term a large misfit is usually the family's own, and another start would only cost time.
+  if (!known.straight && (best.stop != FitStop::converged || (known.bend && best.chi > 3 * count))) {
     for (double exponent : {2.5, 10.0}) {   // a second opinion when the first start led nowhere
       Vector other = start;
       other[kExponent] = std::log(exponent);

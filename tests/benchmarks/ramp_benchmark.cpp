@@ -23,7 +23,7 @@ namespace {
 
 constexpr double kOhm = 0.05;
 
-/// Flux, blocks, fit and three currents from raw samples, as the peer has them.
+/// Flux, blocks, fit and three currents from raw samples, as the peer has them. One family is the knee with its square term.
 std::array<double, 3> ours(const std::vector<double>& v, const std::vector<double>& i, double dt, bool choice) {
   std::vector<double> flux(v.size(), 0.0);
   for (std::size_t k = 1; k < v.size(); ++k) {
@@ -32,6 +32,7 @@ std::array<double, 3> ours(const std::vector<double>& v, const std::vector<doubl
   const RollOffBlocks blocks = roll_off_blocks(flux, i, 0, i.size(), 300, 0);
   RollOffKnown known;
   known.shift_sigma = 10 * dt / std::sqrt(12.0);
+  known.bend = !choice;
   Result<RollOffFit> fit = fit_roll_off(blocks, known);
   if (choice) {
     known.bend = true;
