@@ -35,7 +35,7 @@ Channel channel_of(std::string name, Unit unit, std::vector<double> samples, dou
   channel.unit_stated = true;
   channel.samples = std::move(samples);
   channel.resolution = step;
-  for (const double v : channel.samples) channel.missing += std::isnan(v) ? 1 : 0;
+  for (const double v : channel.samples) channel.missing += std::isnan(v) ? std::size_t{1} : std::size_t{0};
   return channel;
 }
 
@@ -102,7 +102,7 @@ INSTANTIATE_TEST_SUITE_P(
                     NoiseCase{"one_step", 5000, &kOneStep, 1e-3}, NoiseCase{"slow_square", 5000, &kSlowSquare, 1e-3},
                     NoiseCase{"ramp", 5000, &kRamp, 1e-3}, NoiseCase{"hardly_sampled", 5000, &kHardlySampled, 1e-3},
                     NoiseCase{"short_sine", 600, &kSine, 1e-2}),
-    [](const auto& info) { return std::string(info.param.name); });
+    [](const auto& one) { return std::string(one.param.name); });
 
 // 64 and 128 samples leave some twenty to sixty powers: a factor, not percents.
 TEST(DescribeNoise, OfShortRecordsIsRightWithinHalf) {
