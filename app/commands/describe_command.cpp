@@ -66,7 +66,7 @@ Result<ExitCode> run(const Arguments& arguments, Console& console) {
 Command describe_command() {
   return {
       .name = "describe",
-      .summary = "what a capture or sweep holds, how it was read, and what to do with it",
+      .summary = "how a file was read, what it holds, and what to run next",
       .description =
           "Reads files and says how each was understood: format, signs, time, channels with their first and last "
           "samples, the range and resolution that were used, noise, clipping, missing samples, what to watch out for, "
