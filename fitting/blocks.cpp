@@ -18,9 +18,8 @@ struct Kernels {
 };
 
 const Kernels& kernels() {
-  static const Kernels chosen = __builtin_cpu_supports("avx2")
-                                    ? Kernels{kernel::plain_avx2, kernel::demodulating_avx2}
-                                    : Kernels{kernel::plain_sse2, kernel::demodulating_sse2};
+  static const Kernels chosen = __builtin_cpu_supports("avx2") ? Kernels{kernel::plain_avx2, kernel::demodulating_avx2}
+                                                               : Kernels{kernel::plain_sse2, kernel::demodulating_sse2};
   return chosen;
 }
 
@@ -47,11 +46,14 @@ struct PhaseTable {
 
 }  // namespace
 
-BlockSums block_sums(std::span<const double> y, std::size_t length, std::size_t count, double omega,
-                     double reference) {
+BlockSums block_sums(std::span<const double> y, std::size_t length, std::size_t count, double omega, double reference) {
   assert(length > 0 && length * count <= y.size());
-  BlockSums sums{.length = length, .omega = omega, .reference = reference, .sum = std::vector<double>(count),
-                 .square = std::vector<double>(count), .demodulated = {}};
+  BlockSums sums{.length = length,
+                 .omega = omega,
+                 .reference = reference,
+                 .sum = std::vector<double>(count),
+                 .square = std::vector<double>(count),
+                 .demodulated = {}};
   const bool demodulate = omega != 0;
   if (demodulate) sums.demodulated.resize(count);
   const PhaseTable table(omega, demodulate ? std::min(length, kTable) : 0);

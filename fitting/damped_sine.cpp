@@ -16,8 +16,8 @@
 namespace coilassay {
 namespace {
 
-// Scatter of single samples, in steps, below which rounding errs by the signal and not by chance: 0.29 is rounding alone,
-// 0.45 comes from noise of 0.34 steps before rounding.
+// Scatter of single samples, in steps, below which rounding errs by the signal and not by chance: 0.29 is rounding
+// alone, 0.45 comes from noise of 0.34 steps before rounding.
 constexpr double kUndithered = 0.45;
 // Of what a slow shape explains, what it may leave over in one piece.
 constexpr double kMostStructure = 0.004;
@@ -75,7 +75,8 @@ std::optional<Error> refusal(const Settled& settled, const DampedSine& model, co
         (4 * model.a * model.a * inverse(0, 0) + 4 * model.a * inverse(0, 1) + inverse(1, 1)) * variance;
     told = model.a > 2 * std::sqrt(inverse(0, 0) * variance) && product > 3 * std::sqrt(product_variance);
   }
-  if (!told) return nothing("what is there may be one exponential or part of a swing: frequency and decay cannot be told");
+  if (!told)
+    return nothing("what is there may be one exponential or part of a swing: frequency and decay cannot be told");
   return std::nullopt;
 }
 
@@ -150,10 +151,10 @@ Result<DampedSineFit> fit_damped_sine(std::span<const double> y, const DampedSin
     return tl::make_unexpected(*error);
   }
   if (!settled.solution.converged) {
-    return failure(Problem::not_converged, "",
-                   fmt::format("the fit of a damped oscillation did not settle after {} steps",
-                               settled.solution.iterations),
-                   "narrow the window to the free decay");
+    return failure(
+        Problem::not_converged, "",
+        fmt::format("the fit of a damped oscillation did not settle after {} steps", settled.solution.iterations),
+        "narrow the window to the free decay");
   }
   const double step = options.resolution;
   const bool undithered = step > 0 && noise.per_sample < kUndithered * step;

@@ -180,8 +180,8 @@ struct Design {
 };
 
 template <int Modes, int PerMode>
-Design<Modes, PerMode> linear_design(const Responses<Modes>& responses,
-                                     const Shapes<Modes>& shapes, double offset, std::size_t r) {
+Design<Modes, PerMode> linear_design(const Responses<Modes>& responses, const Shapes<Modes>& shapes, double offset,
+                                     std::size_t r) {
   Design<Modes, PerMode> design;
   for (std::size_t mode = 0; mode < shapes.size(); ++mode) {
     const Step& w = responses[mode].of[r];
@@ -218,7 +218,8 @@ Equations<Modes> equations_with(const WhiteBlocks& blocks, const Shapes<Modes>& 
   Eigen::Matrix<double, kLinear, kLinear> normal = Eigen::Matrix<double, kLinear, kLinear>::Zero();
   Eigen::Matrix<double, kLinear, 1> right = Eigen::Matrix<double, kLinear, 1>::Zero();
   for (std::size_t r = 0; r < static_cast<std::size_t>(blocks.rank); ++r) {
-    designs[r] = linear_design<Modes, PerMode>(responses, shapes, blocks.offset_response[static_cast<Eigen::Index>(r)], r);
+    designs[r] =
+        linear_design<Modes, PerMode>(responses, shapes, blocks.offset_response[static_cast<Eigen::Index>(r)], r);
     normal += designs[r].linear * products.gram * designs[r].linear.transpose();
     right += designs[r].linear * products.data.col(static_cast<Eigen::Index>(r));
   }
@@ -228,8 +229,8 @@ Equations<Modes> equations_with(const WhiteBlocks& blocks, const Shapes<Modes>& 
   result.offset_only = yy - right[kLinear - 1] * right[kLinear - 1] / normal(kLinear - 1, kLinear - 1);
   const Eigen::Matrix<double, kLinear, 1> scale = normal.diagonal().cwiseSqrt();
   if (!(scale.array() > 0).all() || !scale.allFinite()) return result;
-  const Eigen::Matrix<double, kLinear, kLinear> scaled = scale.cwiseInverse().asDiagonal() * normal *
-                                                         scale.cwiseInverse().asDiagonal();
+  const Eigen::Matrix<double, kLinear, kLinear> scaled =
+      scale.cwiseInverse().asDiagonal() * normal * scale.cwiseInverse().asDiagonal();
   const Eigen::LDLT<Eigen::Matrix<double, kLinear, kLinear>> solver(scaled);
   if (solver.info() != Eigen::Success || solver.vectorD().minCoeff() < 1e-14) return result;
   result.linear = solver.solve(right.cwiseQuotient(scale)).cwiseQuotient(scale);
@@ -282,9 +283,15 @@ Equations<Modes> equations_with(const WhiteBlocks& blocks, const Shapes<Modes>& 
 
 }  // namespace
 
-double Shape::slow_decay() const { return q < 0 ? a - std::sqrt(-q) : a; }
-double Shape::fast_decay() const { return q < 0 ? a + std::sqrt(-q) : a; }
-double Shape::omega() const { return q > 0 ? std::sqrt(q) : 0; }
+double Shape::slow_decay() const {
+  return q < 0 ? a - std::sqrt(-q) : a;
+}
+double Shape::fast_decay() const {
+  return q < 0 ? a + std::sqrt(-q) : a;
+}
+double Shape::omega() const {
+  return q > 0 ? std::sqrt(q) : 0;
+}
 
 DampedPair damped_pair(const Shape& shape, double n) {
   const double x = shape.q * n * n;
@@ -326,8 +333,7 @@ template Equations<1> equations<1>(const WhiteBlocks&, const Shapes<1>&, bool);
 template Equations<2> equations<2>(const WhiteBlocks&, const Shapes<2>&, bool);
 
 template <int Modes>
-double model_square(const WhiteBlocks& blocks, const Shapes<Modes>& shapes,
-                    const Linear<Modes>& linear) {
+double model_square(const WhiteBlocks& blocks, const Shapes<Modes>& shapes, const Linear<Modes>& linear) {
   // State of all modes and the constant; the model is linear.state and its square over a block a quadratic form.
   using Square = Eigen::Matrix<double, 2 * Modes + 1, 2 * Modes + 1>;
   Square one = Square::Identity();
@@ -379,16 +385,14 @@ std::vector<double> white_residuals(const WhiteBlocks& blocks, const Shapes<Mode
       const DampedPair u = walk.now();
       for (std::size_t r = 0; r < rank; ++r) {
         const Step& w = responses[mode].of[r];
-        residuals[k * rank + r] -= p * (w.alpha.a * u.c - shapes[mode].q * w.beta.a * u.s) +
-                                   s * (w.alpha.a * u.s + w.beta.a * u.c);
+        residuals[k * rank + r] -=
+            p * (w.alpha.a * u.c - shapes[mode].q * w.beta.a * u.s) + s * (w.alpha.a * u.s + w.beta.a * u.c);
       }
     }
   }
   return residuals;
 }
-template std::vector<double> white_residuals<1>(const WhiteBlocks&, const Shapes<1>&,
-                                                const Linear<1>&);
-template std::vector<double> white_residuals<2>(const WhiteBlocks&, const Shapes<2>&,
-                                                const Linear<2>&);
+template std::vector<double> white_residuals<1>(const WhiteBlocks&, const Shapes<1>&, const Linear<1>&);
+template std::vector<double> white_residuals<2>(const WhiteBlocks&, const Shapes<2>&, const Linear<2>&);
 
 }  // namespace coilassay

@@ -40,12 +40,12 @@ struct Equations {
   static constexpr int kAll = 4 * Modes + 1;  // a, q, p, s of each mode, then c (relative to the reference)
 
   bool solvable = false;
-  double chi_square = 0;                       // of the white values
-  double offset_only = 0;                      // chi-square with c alone
+  double chi_square = 0;   // of the white values
+  double offset_only = 0;  // chi-square with c alone
   Linear<Modes> linear;
-  Eigen::Matrix<double, kAll, kAll> normal;    // J^T J
-  Eigen::Matrix<double, kAll, 1> gradient;     // J^T residual
-  double model_energy = 0;                     // sum of the white model^2
+  Eigen::Matrix<double, kAll, kAll> normal;  // J^T J
+  Eigen::Matrix<double, kAll, 1> gradient;   // J^T residual
+  double model_energy = 0;                   // sum of the white model^2
 };
 
 /// With `derivatives` false only chi_square, offset_only and linear are filled (cheap: for searching starts).
@@ -54,8 +54,7 @@ Equations<Modes> equations(const WhiteBlocks& blocks, const Shapes<Modes>& shape
 
 /// Sum of model^2 over the samples of the present blocks and the tail, model relative to the reference.
 template <int Modes>
-double model_square(const WhiteBlocks& blocks, const Shapes<Modes>& shapes,
-                    const Linear<Modes>& linear);
+double model_square(const WhiteBlocks& blocks, const Shapes<Modes>& shapes, const Linear<Modes>& linear);
 
 /// White residuals (count x rank; 0 for a missing block).
 template <int Modes>

@@ -75,8 +75,7 @@ NoiseJudgement judge_noise(std::span<const double> y, const WhiteBlocks& blocks,
   const double total = blocks.square + blocks.tail_square;
   const double tail = static_cast<double>(blocks.tail_count);
   const double band = blocks.energy + (tail > 0 ? blocks.tail_sum * blocks.tail_sum / tail : 0);
-  const double model_outside =
-      model_square<1>(blocks, solution.shapes, solution.at.linear) - solution.at.model_energy;
+  const double model_outside = model_square<1>(blocks, solution.shapes, solution.at.linear) - solution.at.model_energy;
   double squares = std::max(0.0, total - band - model_outside) + chi_square;
   // That difference leaves out the product of noise and model outside the band, and rounds: where either counts, every
   // sample is looked at.

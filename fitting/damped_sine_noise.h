@@ -21,7 +21,8 @@ struct NoiseJudgement {
 NoiseJudgement judge_noise(std::span<const double> y, const WhiteBlocks& blocks, const Solution<1>& solution,
                            const DampedSine& model);
 
-/// Chi-square of the best cubic through the white values: what a slow drift would explain. Only for plain sums without a tail.
+/// Chi-square of the best cubic through the white values: what a slow drift would explain. Only for plain sums without
+/// a tail.
 double cubic_chi_square(const WhiteBlocks& blocks);
 
 }  // namespace coilassay

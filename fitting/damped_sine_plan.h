@@ -19,8 +19,8 @@ struct Plan {
 /// Blocks of at most `most_length` over y[0, span) of `samples`; omega 0 for plain sums.
 Plan plan_with_length(std::size_t samples, std::size_t span, double most_length, double omega);
 
-/// The plan for a known shape. Variance lost against a fit of every sample, with B the length of a block: (aB)^2 / 3 when
-/// demodulated, which is taken for more than 25 cycles, (decay B)^2 / 12 and (omega B)^2 / 12 for plain sums.
+/// The plan for a known shape. Variance lost against a fit of every sample, with B the length of a block: (aB)^2 / 3
+/// when demodulated, which is taken for more than 25 cycles, (decay B)^2 / 12 and (omega B)^2 / 12 for plain sums.
 Plan plan_for(const Shape& shape, double omega_uncertainty, std::size_t samples);
 
 /// Whether a solution found with a plan has the shape the plan was made for.

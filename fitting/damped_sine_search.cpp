@@ -11,7 +11,9 @@ bool ShapeLimits::allow(const Shape& shape) const {
          shape.fast_decay() < greatest_fast_decay && shape.q < std::numbers::pi * std::numbers::pi;
 }
 
-ShapeLimits shape_limits(std::size_t samples) { return {-1.0 / static_cast<double>(samples), 3.0}; }
+ShapeLimits shape_limits(std::size_t samples) {
+  return {-1.0 / static_cast<double>(samples), 3.0};
+}
 
 namespace {
 
@@ -58,7 +60,8 @@ constexpr double kRounding = 1e-14;
 template <int Modes>
 Solution<Modes> refine(const WhiteBlocks& blocks, const Shapes<Modes>& start, const ShapeLimits& limits) {
   constexpr int kMostIterations = 100;
-  Solution<Modes> best{.shapes = start, .at = equations<Modes>(blocks, start), .variance = 0, .iterations = 0, .converged = false};
+  Solution<Modes> best{
+      .shapes = start, .at = equations<Modes>(blocks, start), .variance = 0, .iterations = 0, .converged = false};
   if (!best.at.solvable) return best;
   const double dof = std::max(1.0, static_cast<double>(blocks.values_used()) - Equations<Modes>::kAll);
   double left = decrement<Modes>(best.at, best.shapes);

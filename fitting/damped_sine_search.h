@@ -20,11 +20,13 @@ ShapeLimits shape_limits(std::size_t samples);
 template <int Modes>
 struct Solution {
   Shapes<Modes> shapes;
-  Equations<Modes> at;      // at.solvable is false when there is no solution
-  double variance = 0;      // of one white value, from chi-square
+  Equations<Modes> at;  // at.solvable is false when there is no solution
+  double variance = 0;  // of one white value, from chi-square
   int iterations = 0;
   bool converged = false;
-  double gain() const { return at.solvable ? at.offset_only - at.chi_square : -std::numeric_limits<double>::infinity(); }
+  double gain() const {
+    return at.solvable ? at.offset_only - at.chi_square : -std::numeric_limits<double>::infinity();
+  }
 };
 
 /// Levenberg-Marquardt on the shapes with the linear parameters always at their best (variable projection); steps are

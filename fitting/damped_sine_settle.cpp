@@ -51,7 +51,8 @@ Settled settle(std::span<const double> y, const Shape& start, double reference, 
     double omega_uncertainty = 0;
     if (settled.solution.at.solvable && shape.q > 0) {
       const Eigen::MatrixXd inverse = inverse_normal<1>(settled.solution.at);
-      if (inverse.size() > 0) omega_uncertainty = std::sqrt(inverse(1, 1) * settled.solution.variance) / (2 * shape.omega());
+      if (inverse.size() > 0)
+        omega_uncertainty = std::sqrt(inverse(1, 1) * settled.solution.variance) / (2 * shape.omega());
     }
     settled.plan = plan_for(shape, omega_uncertainty, y.size());
     settled.blocks = compress(y, settled.plan, sums, reference);

@@ -18,7 +18,8 @@ constexpr double kEnoughCycles = 24;        // a line above this bin is not the 
 constexpr double kClear = 200;              // strength over floor that noise never reaches
 constexpr double kNearlyAsGood = 0.6;       // of the greatest strength
 
-// The line of values that are averages of `decimation` samples, by a transform of at least `padding` times their number.
+// The line of values that are averages of `decimation` samples, by a transform of at least `padding` times their
+// number.
 StrongestLine line_by(std::span<const double> values, std::size_t decimation, std::size_t padding) {
   const std::size_t n = values.size();
   double mean = 0;
@@ -45,7 +46,8 @@ StrongestLine line_by(std::span<const double> values, std::size_t decimation, st
   const auto peak = std::max_element(power.begin() + first, power.end() - 1);
   if (*peak <= 0) return line;
   // Parabola through the logarithm of three bins.
-  const double l = std::log(std::max(*(peak - 1), 1e-300)), m = std::log(*peak), r = std::log(std::max(*(peak + 1), 1e-300));
+  const double l = std::log(std::max(*(peak - 1), 1e-300)), m = std::log(*peak),
+               r = std::log(std::max(*(peak + 1), 1e-300));
   const double bend = l - 2 * m + r;
   const double shift = bend < 0 ? std::clamp((l - r) / (2 * bend), -0.5, 0.5) : 0.0;
   const double bin = static_cast<double>(peak - power.begin()) + shift;
@@ -65,7 +67,9 @@ StrongestLine line_by(std::span<const double> values, std::size_t decimation, st
   return line;
 }
 
-bool clear(const StrongestLine& line) { return line.strength > kClear * line.floor; }
+bool clear(const StrongestLine& line) {
+  return line.strength > kClear * line.floor;
+}
 
 // A line between two bins loses up to 4 dB; only where it is not clear anyway the finer transform is worth its time.
 StrongestLine line_of(std::span<const double> values, std::size_t decimation) {
@@ -165,9 +169,8 @@ Beginning find_beginning(std::span<const double> y, double reference) {
     sums.square = last.square;
     sums.sum.resize(last.average.size());
     for (std::size_t i = 0; i < sums.sum.size(); ++i) {
-      sums.sum[i] = std::isfinite(last.square[i])
-                        ? (last.average[i] - reference) * static_cast<double>(last.decimation)
-                        : std::nan("");
+      sums.sum[i] = std::isfinite(last.square[i]) ? (last.average[i] - reference) * static_cast<double>(last.decimation)
+                                                  : std::nan("");
     }
   }
   // One level further than the line was seen: four times as long, so that the offset is seen as well.

@@ -14,15 +14,15 @@ namespace coilassay {
 ///
 /// |sum (y - mean) e^{-i omega n}|^2 / length is what a rectangle matched to the decay would give: noise alone gives
 /// sigma^2 times an exponential number at every length, a decay e^{-an} the most when the length is 1.26/a. The largest
-/// over lengths 64, 256, ... therefore finds the frequency and the decay of a ringing that fills the record as well as of
-/// one that ends in its first hundredth. (Of lengths nearly as good the longest is taken: it has the most cycles.)
+/// over lengths 64, 256, ... therefore finds the frequency and the decay of a ringing that fills the record as well as
+/// of one that ends in its first hundredth. (Of lengths nearly as good the longest is taken: it has the most cycles.)
 struct StrongestLine {
-  double omega = 0;         // rad per sample
-  double omega_error = 0;   // scale of its error: a fraction of a bin
-  std::size_t length = 0;   // samples in that stretch
-  double cycles = 0;        // omega length / 2 pi: below about 6 the line is not to be trusted
-  double strength = 0;      // the statistic above
-  double floor = 0;         // its median over frequencies in the same stretch
+  double omega = 0;        // rad per sample
+  double omega_error = 0;  // scale of its error: a fraction of a bin
+  std::size_t length = 0;  // samples in that stretch
+  double cycles = 0;       // omega length / 2 pi: below about 6 the line is not to be trusted
+  double strength = 0;     // the statistic above
+  double floor = 0;        // its median over frequencies in the same stretch
 };
 
 /// The line, and what to look at for a first fit: averages of `decimation` samples from the first on. An average of a

@@ -28,8 +28,8 @@ bool all_finite(std::span<const double> values) {
   return std::all_of(values.begin(), values.end(), [](double v) { return std::isfinite(v); });
 }
 
-// Residuals first .. first + count - 1 of a model that computes all of them at once. The values of the latest parameters
-// are shared among blocks: a robust fit has one block per residual, because a loss acts on a block.
+// Residuals first .. first + count - 1 of a model that computes all of them at once. The values of the latest
+// parameters are shared among blocks: a robust fit has one block per residual, because a loss acts on a block.
 class Shared {
  public:
   Shared(const ResidualFunction& residuals, std::size_t count, std::size_t parameters)
@@ -115,8 +115,8 @@ Eigen::MatrixXd inverse_information(const Eigen::MatrixXd& jacobian) {
   const Eigen::Index n = jacobian.cols();
   const Eigen::VectorXd diagonal = qr.matrixR().diagonal().cwiseAbs();
   if (jacobian.rows() < n || diagonal.minCoeff() < 1e-12 * diagonal.maxCoeff()) return {};
-  const Eigen::MatrixXd r_inverse = qr.matrixR().topLeftCorner(n, n).template triangularView<Eigen::Upper>().solve(
-      Eigen::MatrixXd::Identity(n, n));
+  const Eigen::MatrixXd r_inverse =
+      qr.matrixR().topLeftCorner(n, n).template triangularView<Eigen::Upper>().solve(Eigen::MatrixXd::Identity(n, n));
   const Eigen::MatrixXd scaled = qr.colsPermutation() * r_inverse;
   const Eigen::MatrixXd rows = length.cwiseInverse().asDiagonal() * scaled;
   return rows * rows.transpose();
@@ -195,8 +195,8 @@ void polish(Shared& shared, std::vector<double>& p, std::size_t m, const LeastSq
 void judge(const Shared& shared, std::size_t m, std::size_t n, double bend, const LeastSquaresOptions& options,
            Fit& fit) {
   using RowMajor = Eigen::Matrix<double, Eigen::Dynamic, Eigen::Dynamic, Eigen::RowMajor>;
-  const Eigen::MatrixXd jacobian = Eigen::Map<const RowMajor>(shared.jacobian().data(), static_cast<Eigen::Index>(m),
-                                                        static_cast<Eigen::Index>(n));
+  const Eigen::MatrixXd jacobian =
+      Eigen::Map<const RowMajor>(shared.jacobian().data(), static_cast<Eigen::Index>(m), static_cast<Eigen::Index>(n));
   // Ceres' final_cost holds the loss; the variances are made from the residuals themselves. With the soft L1 loss a
   // residual pulls like psi = r w, w = (1 + (r/bend)^2)^(-1/2), and psi changes with r like w^3.
   double plain = 0, weighted = 0, weights = 0, pull = 0;

@@ -28,7 +28,8 @@ struct LeastSquaresOptions {
   bool known_sigma = false;
 };
 
-/// Type-erased residuals: fills r (m) and, unless J is empty, the Jacobian (m x n, row-major). False: not computable there.
+/// Type-erased residuals: fills r (m) and, unless J is empty, the Jacobian (m x n, row-major). False: not computable
+/// there.
 using ResidualFunction =
     std::function<bool(std::span<const double> parameters, std::span<double> residuals, std::span<double> jacobian)>;
 
@@ -36,10 +37,11 @@ using ResidualFunction =
 Result<Fit> minimise(const ResidualFunction& residuals, int residual_count, std::span<const double> start,
                      const LeastSquaresOptions& options);
 
-/// Stops converged, max_iterations or failed (the model became not computable); rank_deficient when it converged but the
-/// data leave a direction of the parameters open, and then there is no covariance. A parameter on its bound is marked in
-/// at_bound: its variance means nothing. Robust: the covariance is that of the M-estimator (J^T D J)^-1 s^2 J^T J
-/// (J^T D J)^-1, D the slope of the influence, s^2 its variance; reduced_chi_square counts residuals by their weight.
+/// Stops converged, max_iterations or failed (the model became not computable); rank_deficient when it converged but
+/// the data leave a direction of the parameters open, and then there is no covariance. A parameter on its bound is
+/// marked in at_bound: its variance means nothing. Robust: the covariance is that of the M-estimator (J^T D J)^-1 s^2
+/// J^T J (J^T D J)^-1, D the slope of the influence, s^2 its variance; reduced_chi_square counts residuals by their
+/// weight.
 ///
 /// Fits N parameters of a model: `template <class T> bool operator()(const T* parameters, T* residuals) const`.
 ///

@@ -10,15 +10,17 @@
 namespace coilassay {
 namespace {
 
-constexpr std::size_t kTable = 2048;   // places per step
+constexpr std::size_t kTable = 2048;     // places per step
 constexpr std::size_t kPlaces = 100000;  // looked at in a record
-constexpr std::size_t kDraws = 21;     // a Fibonacci lattice: 21 points that fill a square evenly
+constexpr std::size_t kDraws = 21;       // a Fibonacci lattice: 21 points that fill a square evenly
 
-// For one true signal the push is a constant, not a normal deviate. With its mean square widened by this, intervals cover
-// 95 % not only over signals that differ in phase and offset but nearly for each of them (tests/proof).
+// For one true signal the push is a constant, not a normal deviate. With its mean square widened by this, intervals
+// cover 95 % not only over signals that differ in phase and offset but nearly for each of them (tests/proof).
 constexpr double kShoulders = 1.3;
 
-double normal_tail(double z) { return 0.5 * std::erfc(z / std::numbers::sqrt2); }
+double normal_tail(double z) {
+  return 0.5 * std::erfc(z / std::numbers::sqrt2);
+}
 
 double mean_error(double m, double noise) {
   if (noise < 0.15) {

@@ -30,11 +30,12 @@ struct RoundingError {
   double mean_square = 0;      // of d over the span: part of the scatter of single samples
 };
 
-/// The covariance that rounding to steps of `resolution` adds when noise of standard deviation `noise` does not dither it.
+/// The covariance that rounding to steps of `resolution` adds when noise of standard deviation `noise` does not dither
+/// it.
 ///
-/// Rounding then errs by a function of the signal, which pushes the parameters by (J^T J)^-1 sum J^T d. Where the levels
-/// lie between the steps is not known, so the push is averaged over offsets and amplitudes within one step, on fixed
-/// points. Long records are looked at in at most 10^5 places, with d averaged over the levels in between.
+/// Rounding then errs by a function of the signal, which pushes the parameters by (J^T J)^-1 sum J^T d. Where the
+/// levels lie between the steps is not known, so the push is averaged over offsets and amplitudes within one step, on
+/// fixed points. Long records are looked at in at most 10^5 places, with d averaged over the levels in between.
 /// @param inverse  (J^T J)^-1 of the fit, J for all samples of the span
 RoundingError rounding_error(const DampedSine& model, std::size_t samples, double resolution, double noise,
                              const Eigen::MatrixXd& inverse);

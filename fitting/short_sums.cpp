@@ -22,8 +22,12 @@ bool ShortSums::complete(std::span<const double> y) {
 BlockSums block_sums(const ShortSums& sums, std::size_t length, std::size_t count, double omega) {
   const std::size_t each = length / sums.length;
   assert(each * sums.length == length && each * count <= sums.sum.size());
-  BlockSums result{.length = length, .omega = omega, .reference = sums.reference, .sum = std::vector<double>(count),
-                   .square = std::vector<double>(count), .demodulated = {}};
+  BlockSums result{.length = length,
+                   .omega = omega,
+                   .reference = sums.reference,
+                   .sum = std::vector<double>(count),
+                   .square = std::vector<double>(count),
+                   .demodulated = {}};
   std::vector<std::complex<double>> phase;
   if (omega != 0) {
     result.demodulated.resize(count);

@@ -19,9 +19,9 @@ struct ShortSums {
   bool complete(std::span<const double> y);
 };
 
-/// block_sums of the samples, from the short sums: `length` a multiple of theirs. Demodulated with the phase of the first
-/// sample of each short block, S_j e^{-i omega j L}: the sums of a damped sine over short blocks are a damped sine, and
-/// what is lost of it is (omega L)^2 / 12.
+/// block_sums of the samples, from the short sums: `length` a multiple of theirs. Demodulated with the phase of the
+/// first sample of each short block, S_j e^{-i omega j L}: the sums of a damped sine over short blocks are a damped
+/// sine, and what is lost of it is (omega L)^2 / 12.
 BlockSums block_sums(const ShortSums& sums, std::size_t length, std::size_t count, double omega);
 
 }  // namespace coilassay

@@ -67,7 +67,8 @@ struct Try {
 
 // Blocks in whose band both modes lie.
 Plan plan_for_two(const Shapes<2>& shapes, std::size_t samples) {
-  const double low = std::min(shapes[0].omega(), shapes[1].omega()), high = std::max(shapes[0].omega(), shapes[1].omega());
+  const double low = std::min(shapes[0].omega(), shapes[1].omega()),
+               high = std::max(shapes[0].omega(), shapes[1].omega());
   const Shape slower = shapes[0].slow_decay() < shapes[1].slow_decay() ? shapes[0] : shapes[1];
   const Plan alone = plan_for(slower, 0, samples);
   const std::size_t span = alone.tail_from < samples ? alone.tail_from : samples;
@@ -115,8 +116,8 @@ std::vector<Shapes<2>> starts(std::span<const double> y, const DampedSineFit& on
   const StrongestLine line = find_beginning(rest).line;
   if (line.strength > 0 && line.omega > 0) {
     for (const double decay : {0.3, 1.26, 5.0}) {
-      result.push_back({Shape{one.model.a, one.model.q},
-                        Shape{decay / static_cast<double>(line.length), line.omega * line.omega}});
+      result.push_back(
+          {Shape{one.model.a, one.model.q}, Shape{decay / static_cast<double>(line.length), line.omega * line.omega}});
     }
   }
   return result;

@@ -30,7 +30,9 @@ double seconds_now() {
   return std::chrono::duration<double>(std::chrono::steady_clock::now().time_since_epoch()).count();
 }
 
-double busy_seconds_now() { return static_cast<double>(std::clock()) / CLOCKS_PER_SEC; }
+double busy_seconds_now() {
+  return static_cast<double>(std::clock()) / CLOCKS_PER_SEC;
+}
 
 template <class Work>
 double seconds_of(const Work& work) {
@@ -76,7 +78,9 @@ bool right(const Ringing& ringing, const Eigen::VectorXd& bound, double a, doubl
   return std::abs(a - ringing.a) < 6 * bound[0] && std::abs(w - true_w) < 6 * bound[1] / (2 * true_w);
 }
 
-double goal(std::size_t samples) { return samples < 100000 ? 15 : samples < 5000000 ? 500 : 1000; }
+double goal(std::size_t samples) {
+  return samples < 100000 ? 15 : samples < 5000000 ? 500 : 1000;
+}
 
 /// False when our answer is wrong.
 bool compare(std::size_t samples, double quality) {
@@ -117,8 +121,8 @@ bool compare(std::size_t samples, double quality) {
     std::printf("  peer: no right answer\n");
   } else {
     const double ratio = std::min(peer / ours, peer_busy / ours_busy);
-    std::printf("  busy %8.3f ms  peer %9.1f ms, busy %9.1f ms  %6.0f, %6.0f times faster (goal %g: %s)\n", ours_busy * 1e3,
-                peer * 1e3, peer_busy * 1e3, peer / ours, peer_busy / ours_busy, goal(samples),
+    std::printf("  busy %8.3f ms  peer %9.1f ms, busy %9.1f ms  %6.0f, %6.0f times faster (goal %g: %s)\n",
+                ours_busy * 1e3, peer * 1e3, peer_busy * 1e3, peer / ours, peer_busy / ours_busy, goal(samples),
                 ratio >= goal(samples) ? "kept" : "missed");
   }
   if (used == 12345.678) std::printf(" ");  // the work above must not be optimised away
@@ -132,7 +136,8 @@ int main(int argc, char** argv) {
   for (int i = 1; i < argc; ++i) sizes.push_back(static_cast<std::size_t>(std::atoll(argv[i])));
   if (sizes.empty()) sizes = {10000, 1000000, 10000000};
   bool all_right = true;
-  std::printf("best of many runs, and best of the peer's right answers by the clock and by processor time; interleaved\n");
+  std::printf(
+      "best of many runs, and best of the peer's right answers by the clock and by processor time; interleaved\n");
   for (const std::size_t samples : sizes) {
     for (const double quality : {3.0, 10.0, 100.0, 1000.0}) all_right = compare(samples, quality) && all_right;
   }

@@ -77,7 +77,7 @@ Coverage rounded_coverage(int bits, double snr, int records) {
 }
 
 TEST(DampedSineStatistics, CoversWhereNoiseDithersTheConverter) {
-  const Coverage coverage = rounded_coverage(8, 40, 30);  // noise 0.72 steps
+  const Coverage coverage = rounded_coverage(8, 40, 30);   // noise 0.72 steps
   EXPECT_GE(100.0 * coverage.covered / coverage.all, 91);  // 300 values: standard deviation 1.3 %
 }
 

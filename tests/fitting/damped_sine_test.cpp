@@ -69,7 +69,8 @@ TEST(DampedSine, ALongTailOfNoiseCostsNothing) {
     ASSERT_TRUE(brief && extended) << quality;
     expect_within(*extended, ringing.truth(), 4, "long");
     EXPECT_LT(extended->fit.standard_uncertainty(0), 1.03 * brief->fit.standard_uncertainty(0)) << quality;
-    EXPECT_NEAR(extended->fit.standard_uncertainty(0) / damped_sine_bound(ringing.truth(), 100000, ringing.sigma)[0], 1, 0.06);
+    EXPECT_NEAR(extended->fit.standard_uncertainty(0) / damped_sine_bound(ringing.truth(), 100000, ringing.sigma)[0], 1,
+                0.06);
   }
 }
 

@@ -45,7 +45,7 @@ TEST(Rounding, MeansOverLevelsAreTheIntegral) {
 
 TEST(Rounding, MattersOnlyWhereNoiseDoesNotHideIt) {
   EXPECT_TRUE(rounding_matters(10000, 1, 0.1));
-  EXPECT_TRUE(rounding_matters(10000, 1, 0.5));   // 0.2 % of a step against 0.6 % / 10
+  EXPECT_TRUE(rounding_matters(10000, 1, 0.5));  // 0.2 % of a step against 0.6 % / 10
   EXPECT_FALSE(rounding_matters(10000, 1, 1.0));
   EXPECT_FALSE(rounding_matters(10000, std::nan(""), 0.1));
   EXPECT_FALSE(rounding_matters(10000, 0, 0.1));

@@ -1,12 +1,14 @@
 // Claims about fit_damped_sine and fit_two_damped_sines on records drawn at random (one seed, about half a minute):
 //
-//   bound      variance at most 1.05 times the Cramer-Rao bound, pooled over Q 0.7 to 1000 and 20 to 60 dB (unquantised,
+//   bound      variance at most 1.05 times the Cramer-Rao bound, pooled over Q 0.7 to 1000 and 20 to 60 dB
+//   (unquantised,
 //              7200 records), 95 % intervals cover 93 to 97 %
 //   failures   none in 6000 records from Q 0.35 to 1000, 20 to 60 dB
 //   rounding   8 to 12 bits and 6: no cell of (Q, SNR, bits) covers less than 88 % where noise is at least half a step,
-//              records with noise under 0.3 steps cover at least 93 %, with phase, offset and amplitude drawn per record
-//              and with one fixed signal per cell
-//   two modes  amplitude ratio 0.5, from one decay rate apart, 20 to 60 dB: no failure, variance within 1.3 of the bound
+//              records with noise under 0.3 steps cover at least 93 %, with phase, offset and amplitude drawn per
+//              record and with one fixed signal per cell
+//   two modes  amplitude ratio 0.5, from one decay rate apart, 20 to 60 dB: no failure, variance within 1.3 of the
+//   bound
 //
 // Exit 1 when a limit is missed. Argument: records per cell in per cent of the full size (default 100).
 #include <Eigen/Cholesky>
@@ -31,7 +33,9 @@ constexpr unsigned kThreads = 2;
 int percent = 100;
 bool all_kept = true;
 
-std::size_t of_full(std::size_t records) { return std::max<std::size_t>(1, records * static_cast<std::size_t>(percent) / 100); }
+std::size_t of_full(std::size_t records) {
+  return std::max<std::size_t>(1, records * static_cast<std::size_t>(percent) / 100);
+}
 
 void claim(bool kept, const char* what, double figure, double limit) {
   std::printf("%s  %s: %.4g (limit %.4g)\n", kept ? "kept  " : "MISSED", what, figure, limit);
@@ -103,15 +107,16 @@ void fill_bound(const Ringing& ringing, Record& record) {
   const Eigen::Matrix<double, 5, 5> full = information.selfadjointView<Eigen::Lower>();
   const Eigen::Matrix<double, 5, 1> scale = full.diagonal().cwiseSqrt().cwiseInverse();
   const Eigen::MatrixXd scaled = scale.asDiagonal() * full * scale.asDiagonal();
-  const Eigen::MatrixXd inverse = scale.asDiagonal() * scaled.ldlt().solve(Eigen::MatrixXd::Identity(5, 5)) * scale.asDiagonal();
+  const Eigen::MatrixXd inverse =
+      scale.asDiagonal() * scaled.ldlt().solve(Eigen::MatrixXd::Identity(5, 5)) * scale.asDiagonal();
   record.bound[0] = ringing.sigma * std::sqrt(inverse(0, 0));
   record.bound[1] = ringing.sigma * std::sqrt(frequency_variance(m, inverse));
 }
 
 void prove_bound() {
   std::printf("bound: variance over Cramer-Rao, u over scatter, coverage of 95 %% intervals\n");
-  std::printf("%7s %5s | %7s %7s | %6s %6s | %6s %6s | failed\n", "Q", "dB", "v/C a", "v/C w", "u/s a", "u/s w", "cov a",
-              "cov w");
+  std::printf("%7s %5s | %7s %7s | %6s %6s | %6s %6s | failed\n", "Q", "dB", "v/C a", "v/C w", "u/s a", "u/s w",
+              "cov a", "cov w");
   Errors pooled[2];
   std::size_t failed = 0;
   for (const double quality : {0.7, 1.0, 3.0, 10.0, 100.0, 1000.0}) {
@@ -167,14 +172,17 @@ void prove_no_failures() {
       low[p].add(records[i].error[p], records[i].u[p], records[i].bound[p]);
     }
   }
-  std::printf("\nfailures: Q 0.35 to 1000, 20 to 60 dB; below Q 0.7 (%zu records): v/C a %.3f w %.3f, coverage %.1f %.1f\n",
-              low[0].count, low[0].ratio(), low[1].ratio(), low[0].coverage(), low[1].coverage());
+  std::printf(
+      "\nfailures: Q 0.35 to 1000, 20 to 60 dB; below Q 0.7 (%zu records): v/C a %.3f w %.3f, coverage %.1f %.1f\n",
+      low[0].count, low[0].ratio(), low[1].ratio(), low[0].coverage(), low[1].coverage());
   claim(failed == 0, "failed fits of 6000", static_cast<double>(failed), 0);
 }
 
 void prove_rounding(bool fixed_signal) {
-  std::printf("\nrounding, %s\n", fixed_signal ? "one fixed signal per cell" : "phase, offset and amplitude drawn per record");
-  std::printf("%4s %5s %7s %7s | %6s %6s | %6s %6s | failed\n", "bits", "dB", "Q", "steps", "u/s a", "u/s w", "cov a", "cov w");
+  std::printf("\nrounding, %s\n",
+              fixed_signal ? "one fixed signal per cell" : "phase, offset and amplitude drawn per record");
+  std::printf("%4s %5s %7s %7s | %6s %6s | %6s %6s | failed\n", "bits", "dB", "Q", "steps", "u/s a", "u/s w", "cov a",
+              "cov w");
   Errors undithered, dithered;
   double worst = 100;
   std::size_t failed = 0;
@@ -203,8 +211,8 @@ void prove_rounding(bool fixed_signal) {
           for (int p = 0; p < 2 && r.fitted; ++p) cell[p].add(r.error[p], r.u[p], 1);
         }
         failed += lost;
-        std::printf("%4d %5g %7g %7.3f | %6.2f %6.2f | %6.1f %6.1f | %zu\n", bits, snr, quality, noise, cell[0].honesty(),
-                    cell[1].honesty(), cell[0].coverage(), cell[1].coverage(), lost);
+        std::printf("%4d %5g %7g %7.3f | %6.2f %6.2f | %6.1f %6.1f | %zu\n", bits, snr, quality, noise,
+                    cell[0].honesty(), cell[1].honesty(), cell[0].coverage(), cell[1].coverage(), lost);
         for (const Errors& e : cell) {
           if (noise >= 0.5) worst = std::min(worst, e.coverage());
           (noise >= 0.5 ? dithered : undithered).add(e);
@@ -290,8 +298,8 @@ void prove_two_modes() {
         both.add(cell[1]);
         pooled.add(both);
         failed += lost;
-        std::printf("%7g %8g %5g | %7.2f %7.2f | %6.1f | %zu\n", quality, spacing, snr, cell[0].ratio(), cell[1].ratio(),
-                    both.coverage(), lost);
+        std::printf("%7g %8g %5g | %7.2f %7.2f | %6.1f | %zu\n", quality, spacing, snr, cell[0].ratio(),
+                    cell[1].ratio(), both.coverage(), lost);
       }
     }
   }
