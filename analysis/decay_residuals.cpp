@@ -89,20 +89,21 @@ Split split(const std::vector<double>& r, double w_per_point) {
   return result;
 }
 
-/// A fast exponential left at the start shows as residuals that hang together there; matched filters of several lengths.
+/// A fast exponential left at the start shows as residuals that hang together there; matched filters of several lengths,
+/// each on at most some thousand samples.
 double early_sign(std::span<const double> y, const DampedSine& model, double sigma) {
   if (!(sigma > 0)) return 0;
   const double tau = model.a > 0 ? 1 / model.a : static_cast<double>(y.size());
-  const auto reach = static_cast<std::size_t>(std::clamp(0.6 * tau, 16.0, static_cast<double>(y.size())));
-  const std::size_t stride = reach / 512 + 1;
-  const std::vector<double> r = residuals_at(y, model, 0, stride, reach / stride);
   double strongest = 0;
-  for (const double share : {0.01, 0.03, 0.1}) {
-    const double m = std::max(share * tau / static_cast<double>(stride), 0.7);
+  for (double length = 2; length <= std::fmax(0.1 * tau, 2); length *= 3.5) {
+    const auto reach = static_cast<std::size_t>(std::fmin(7 * length, static_cast<double>(y.size())));
+    const std::size_t stride = reach / 2048 + 1;
+    const double m = length / static_cast<double>(stride);
+    const std::vector<double> r = residuals_at(y, model, 0, stride, reach / stride);
     double dot = 0, norm = 0;
     for (std::size_t i = 0; i < r.size(); ++i) {
+      if (std::isnan(r[i])) continue;
       const double weight = std::exp(-static_cast<double>(i) / m);
-      if (weight < 1e-4 || std::isnan(r[i])) continue;
       dot += weight * r[i];
       norm += weight * weight;
     }

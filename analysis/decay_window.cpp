@@ -11,9 +11,9 @@ namespace coilassay {
 
 namespace {
 
-// A clean record gives chance > 1e-6 but for one in a million; early_z is the largest of three correlated signs.
+// A clean record gives chance > 1e-6 but for one in a million; early_z is the largest of several correlated signs.
 constexpr double kImprobable = 1e-6;
-constexpr double kEarlySign = 5.0;
+constexpr double kEarlySign = 4.7;
 
 /// Level the record ends on: median of at most some thousand samples of its last tenth.
 double end_level(std::span<const double> y) {
@@ -146,7 +146,31 @@ double prediction_uncertainty(const DampedSineFit& fit, double n) {
   return std::sqrt(std::fmax(total, 0));
 }
 
-/// Carries the fit of [first, ...) backwards; the first sample that still agrees.
+/// How much better the decay describes one sample than rest at the offset does, as a logarithm of likelihood.
+double for_decay(double y, double model, double offset, double sigma) {
+  const double rest = y - offset, decay = y - model;
+  return std::isnan(rest) ? 0 : (rest * rest - decay * decay) / (2 * sigma * sigma);
+}
+
+/// Samples at the head of a window that rest describes better than the decay: the window began before the release.
+std::size_t resting_head(std::span<const double> window, const DampedSineFit& fit, double sigma) {
+  if (!(sigma > 0)) return 0;
+  constexpr double kClearly = 8;
+  const std::size_t reach = std::min<std::size_t>(window.size() / 2, 200000);
+  double sum = 0, least = -kClearly;
+  std::size_t cut = 0;
+  for (std::size_t i = 0; i < reach; ++i) {
+    sum += for_decay(window[i], fit.model(static_cast<double>(i)), fit.model.c, sigma);
+    if (sum < least) {
+      least = sum;
+      cut = i + 1;
+    }
+  }
+  return cut;
+}
+
+/// Carries the fit of [first, ...) backwards; the first sample that still agrees. Where noise hides single samples, the
+/// release is where decay rather than rest has the most of all samples behind it.
 std::size_t extend_backwards(std::span<const double> y, std::size_t first, const DampedSineFit& fit, double sigma,
                              double resolution) {
   const DampedSine& model = fit.model;
@@ -157,13 +181,22 @@ std::size_t extend_backwards(std::span<const double> y, std::size_t first, const
             : std::max<std::size_t>(y.size() / 512, 1);
   const double codes = std::isnan(resolution) ? 0 : resolution / 2;
   std::size_t agreed = first;
+  double sum = 0, most = 0;
+  std::size_t best = first;
   while (agreed > 0) {
     const std::size_t low = agreed > step ? agreed - step : 0;
     const double u = prediction_uncertainty(fit, static_cast<double>(low) - static_cast<double>(first));
-    if (!(u < 0.3 * amplitude)) return agreed;
+    if (!(u < 0.3 * amplitude)) return best;
     const double limit = 5 * std::hypot(sigma, u) + codes;
     for (std::size_t i = agreed; i-- > low;) {
-      const double r = std::fabs(y[i] - model(static_cast<double>(i) - static_cast<double>(first)));
+      const double predicted = model(static_cast<double>(i) - static_cast<double>(first));
+      const double r = std::fabs(y[i] - predicted);
+      if (sigma > 0) sum += for_decay(y[i], predicted, model.c, std::hypot(sigma, u));
+      if (sum >= most || !(sigma > 0)) {
+        most = sum;
+        best = i;
+      }
+      if (sum < most - 15) return best;
       if (std::isnan(r) || r <= limit) continue;
       // One sample far off is a glitch, two of three are another law.
       std::size_t more = 0;
@@ -171,11 +204,11 @@ std::size_t extend_backwards(std::span<const double> y, std::size_t first, const
         const double s = std::fabs(y[j - 1] - model(static_cast<double>(j - 1) - static_cast<double>(first)));
         if (s > limit) ++more;
       }
-      if (more > 0 || i < 2) return i + 1;
+      if (more > 0 || i < 2) return std::max(best, i + 1);
     }
     agreed = low;
   }
-  return agreed;
+  return best;
 }
 
 /// Where the envelope of an undithered record has fallen to one code: beyond, the quantiser hides the signal.
@@ -212,8 +245,17 @@ class Search {
       later->skipped = next - release;
       direct = std::move(later);
     }
+    for (int tries = 0; tries < 4 && direct; ++tries) {
+      const auto window = record.subspan(direct->first, direct->end - direct->first);
+      const std::size_t cut = resting_head(window, direct->fit, std::fmax(direct->residuals.sigma, direct->fit.sigma));
+      if (cut == 0 || window.size() - cut < 64) break;
+      Result<Decay> later = fit_from(direct->first + cut, end);
+      if (!later) break;
+      release = later->first;
+      direct = std::move(later);
+    }
     if (direct && fits(*direct)) {
-      direct->drive_before = stands_before(direct->first, level, *direct);
+      direct->drive_before = stands_before(*direct);
       return settle(std::move(direct), release);
     }
     Result<Decay> backwards = from_behind(surely_free(record, level), end);
@@ -223,7 +265,7 @@ class Search {
     const bool better = !direct || (worth && (backwards->residuals.lack_of_fit < 0.3 * direct->residuals.lack_of_fit ||
                                               (fits(*backwards) && !fits(*direct))));
     Result<Decay>& chosen = better ? backwards : direct;
-    chosen->drive_before = stands_before(chosen->first, level, *chosen);
+    chosen->drive_before = stands_before(*chosen);
     return settle(std::move(chosen), release);
   }
 
@@ -269,7 +311,9 @@ class Search {
   }
 
   /// Anything but rest before the window: the drive, or an earlier burst.
-  bool stands_before(std::size_t first, double level, const Decay& decay) const {
+  bool stands_before(const Decay& decay) const {
+    const std::size_t first = decay.first;
+    const double level = decay.fit.model.c;
     if (first < 4) return false;
     double sum = 0, count = 0;
     for (std::size_t i = 0; i < first; ++i) {

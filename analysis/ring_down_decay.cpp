@@ -17,7 +17,7 @@ constexpr double kFewCycles = 3;
 constexpr double kLeastFall = 0.02;      // of the logarithm of the amplitude over the window
 constexpr double kClearDecay = 2.5;      // standard uncertainties
 constexpr double kCurvedRegion = 2;      // Q below: the region of (a, q) is far from an ellipse at moderate noise
-constexpr double kHardlySampled = 2.2;   // samples a period: the fold could be on either side
+constexpr double kHardlySampled = 3;   // samples a period: the fold could be on either side
 constexpr double kThinlySampled = 5;
 
 Result<std::size_t> voltage_channel(const Capture& capture, const BenchSetup& bench) {
@@ -71,7 +71,8 @@ void note_sampling(CaptureDecay& result, const std::string& channel) {
     result.findings.push_back(
         {"aliased", hardly ? Severity::caution : Severity::note,
          "only " + to_text(per_period, Unit::one, Script::utf8, 2) +
-             " samples a period: the true frequency may be above half the sampling rate; capture faster to be sure",
+             " samples a period: if the true frequency lies above half the sampling rate, this one and all that "
+             "follows from it are wrong without limit; capture faster to be sure",
          channel, per_period, Unit::one});
   }
 }
@@ -101,10 +102,10 @@ void warn_of_drive(CaptureDecay& result, const DecaySearch& search, const std::s
   const Result<Decay> found = find_decay(result.samples, free_start);
   if (!found || found->first <= result.decay->first || found->residuals.chance < 1e-6) return;
   const double release = result.start_s + static_cast<double>(found->first) * result.step_s;
-  result.findings.push_back({"drive_in_window", Severity::caution,
-                             "the stated window begins before the free decay, which starts at " +
-                                 to_text(release, Unit::second, Script::utf8, 4) +
-                                 ": leave out --from, or move it there",
+  result.decay.reset();
+  result.findings.push_back({"drive_in_window", Severity::refusal,
+                             "--from lies before the free decay, which starts at " +
+                                 to_text(release, Unit::second, Script::utf8, 4) + ": leave it out, or move it there",
                              channel, release, Unit::second});
 }
 
@@ -277,7 +278,16 @@ bool refuse_steady(CaptureDecay& result, const std::string& channel) {
   const double cycles = result.model().damped_omega() * length / (2 * std::numbers::pi);
   const double fall = result.a() * length;
   if (cycles < kFewCycles || (fall > kLeastFall && result.a() > kClearDecay * u)) return false;
+  const bool hidden = (result.a() + 3 * u) * length > 0.1;
   result.decay.reset();
+  if (hidden) {
+    result.findings.push_back({"no_ringing", Severity::refusal,
+                               "something swings in " + shown(channel) +
+                                   ", but whether it dies away is lost in the noise: average captures, use a finer range or a "
+                                   "longer record",
+                               channel, fall, Unit::one});
+    return true;
+  }
   result.findings.push_back({"drive_in_window", Severity::refusal,
                              "the amplitude in " + shown(channel) + (fall < 0 ? " grows" : " does not fall") +
                                  " over the window: this is a driven sine, not a free decay, and its frequency says nothing "
@@ -322,7 +332,8 @@ Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequ
     if (!result.decay) return result;
   }
   note_drive(result, coil->name, search.from.has_value());
-  if (search.from) warn_of_drive(result, search, coil->name);
+  if (request.from_s) warn_of_drive(result, search, coil->name);
+  if (!result.decay) return result;
   if (refuse_steady(result, coil->name)) return result;
   note_sampling(result, coil->name);
   return result;

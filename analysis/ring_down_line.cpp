@@ -282,14 +282,13 @@ Result<Measurement> measure_ring_down_line(const std::vector<Capture>& captures,
   add_estimates(result, bank.circuit().inputs(), bank.fitted(), outputs, f, extra, request.propagation);
   if (const Estimate* f_0 = result.find("f_0")) result.conditions.frequency_hz = f_0->quantity.value;
   const Estimate* inductance = result.find("L");
-  if (inductance != nullptr && !(inductance->quantity.value > 0)) {
+  if (inductance != nullptr && !(inductance->low > 0)) {
     result.findings.push_back({"model_misfit", Severity::refusal,
-                               "the frequency does not fall as capacitance is added: the captures and capacitors are not in "
-                               "the same order",
+                               "the frequency does not fall as capacitance is added: most likely the captures and capacitors "
+                               "are not in the same order; L and C_par are withheld",
                                "L", inductance->quantity.value, Unit::henry});
-    result.estimates.clear();
-    result.budget.clear();
-    result.correlations.clear();
+    withhold(result, "L");
+    withhold(result, "C_par");
     return result;
   }
   add_points(result, bank, captures, request);

@@ -90,7 +90,7 @@ void describe_source(Measurement& result, const Capture& capture, const RingDown
 ModelSummary model_of(const CaptureDecay& decay) {
   ModelSummary model;
   const Decay& d = *decay.decay;
-  model.name = decay.structure.modes ? "two damped sines" : d.fit.few_cycles ? "damped sine, few cycles" : "damped sine";
+  model.name = decay.structure.modes ? "two damped sines" : "damped sine";
   if (decay.structure.modes) model.runner_up = "damped sine";
   const double unit = decay.gain;
   model.parameters["offset"] = {unit * decay.model().c, std::nan(""), Unit::volt};
@@ -120,6 +120,13 @@ void note_damping(Measurement& result) {
                              "Q", q->quantity.value, Unit::one});
 }
 
+void withhold(Measurement& result, const std::string& symbol) {
+  std::erase_if(result.estimates, [&](const Estimate& e) { return e.symbol == symbol; });
+  std::erase_if(result.correlations,
+                [&](const Measurement::Correlation& c) { return c.a == symbol || c.b == symbol; });
+  result.budget.erase(symbol);
+}
+
 void withhold_unresolved(Measurement& result) {
   const auto r = std::find_if(result.estimates.begin(), result.estimates.end(),
                               [](const Estimate& e) { return e.symbol == "R_s"; });
@@ -133,7 +140,7 @@ void withhold_unresolved(Measurement& result) {
   if (negative) {
     result.findings.push_back({"negative_resistance", Severity::caution,
                                "what was stated to be across the coil loses more than the whole circuit does: check the "
-                               "resistance across, the probe and the capacitor's dissipation; R_s is withheld",
+                               "resistance across, the probe and the capacitor's dissipation; L_s, R_s and Q_coil are withheld",
                                "R_s", r->quantity.value, Unit::ohm});
   } else {
     result.bounds.push_back({"R_s", Unit::ohm, std::nullopt, high, 0.95});
@@ -143,18 +150,18 @@ void withhold_unresolved(Measurement& result) {
                                    to_text(high, Unit::ohm, Script::utf8, 3),
                                "R_s", ratio, Unit::one});
   }
-  result.estimates.erase(r);
-  result.budget.erase("R_s");
-  std::erase_if(result.correlations,
-                [](const Measurement::Correlation& c) { return c.a == "R_s" || c.b == "R_s"; });
+  withhold(result, "R_s");
+  if (negative) {
+    withhold(result, "L_s");
+    withhold(result, "Q_coil");
+    std::erase_if(result.bounds, [](const Bound& b) { return b.symbol == "Q_coil"; });
+    return;
+  }
   const auto q = std::find_if(result.estimates.begin(), result.estimates.end(),
                               [](const Estimate& e) { return e.symbol == "Q_coil"; });
   if (q != result.estimates.end()) {
     result.bounds.push_back({"Q_coil", Unit::one, q->low, std::nullopt, 0.95});
-    result.estimates.erase(q);
-    result.budget.erase("Q_coil");
-    std::erase_if(result.correlations,
-                  [](const Measurement::Correlation& c) { return c.a == "Q_coil" || c.b == "Q_coil"; });
+    withhold(result, "Q_coil");
   }
 }
 

@@ -40,6 +40,9 @@ ModelSummary model_of(const CaptureDecay& decay);
 /// near_critical.
 void note_damping(Measurement& result);
 
+/// Takes a quantity out of a result, with its budget and correlations.
+void withhold(Measurement& result, const std::string& symbol);
+
 /// A resistance whose standard uncertainty exceeds it becomes an upper bound, with finding resistance_unresolved.
 void withhold_unresolved(Measurement& result);
 

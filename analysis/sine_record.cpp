@@ -81,6 +81,10 @@ bool one_frequency(SineRecord& sine) {
   const std::array channels = {SineChannel{sine.volts(), sine.record.volt_resolution},
                                SineChannel{sine.amps(), sine.record.amp_resolution}};
   for (std::size_t c = 0; c < 2; ++c) {
+    // Without its crests a wave shows a harmonic first: alone it says nothing of its frequency then.
+    const auto missing = std::count_if(channels[c].y.begin(), channels[c].y.end(),
+                                       [](double v) { return std::isnan(v); });
+    if (20 * static_cast<std::size_t>(missing) > channels[c].y.size()) return true;
     if (Result<SineFit> fit = fit_sines({&channels[c], 1})) alone[c] = std::move(*fit);
   }
   if (!alone[0] || !alone[1]) return true;

@@ -54,7 +54,7 @@ OptionGroup model_out() {
 Command ramp_command() {
   return {
       .name = "ramp",
-      .summary = "saturation of a coil from voltage and current while it is driven up",
+      .summary = "saturation of a coil from a pulse that drives it up",
       .description =
           "Switch a voltage onto the coil, capture the voltage over it and the current through it until the core gives "
           "way, and let the record begin a little before. Flux is taken from the voltage, the current is fitted against it: "
@@ -66,7 +66,7 @@ Command ramp_command() {
                  model_out(), output_options(), measuring_options()},
       .examples = {{"ramp pulse.csv --current CH2 --shunt 10mohm±1% --dcr 50mohm±5%",
                     "L_0 and the saturation currents, the second channel across a shunt"},
-                   {"ramp pulse.csv --bench bench.toml --figure ramp.svg --netlist coil.cir",
+                   {"ramp p.csv --bench bench.toml --figure p.svg --netlist coil.cir",
                     "the set-up from a bench sheet, the curve as a figure and as a model for a circuit simulator"}},
       .run = run};
 }

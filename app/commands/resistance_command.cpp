@@ -102,7 +102,7 @@ OptionGroup winding() {
 Command resistance_command() {
   return {
       .name = "resistance",
-      .summary = "DC resistance of a winding, at 20 °C too, and its temperature rise",
+      .summary = "DC resistance of a winding, and its temperature rise",
       .description =
           "Send a direct current through the winding by two wires and read the voltage with two others. Read several times "
           "with the current one way and several times with it reversed: what does not turn round with the current, the "
@@ -116,11 +116,11 @@ Command resistance_command() {
                      .most = 1000},
       .groups = {direct_current(), winding(), reading_options(),
                  {.title = "Bench", .options = {bench_file()}}, uncertainty_options(), output_options(), measuring_options()},
-      .examples = {{"resistance readings.csv --temperature 23±1degC --voltage-gain 1±0.05% --current-gain 1±0.2%",
+      .examples = {{"resistance readings.csv --temperature 23±1degC",
                     "R_dc and R_dc_20 from readings of two meters, their accuracy stated as that of a factor of one"},
-                   {"resistance forward.csv reverse.csv --voltage CH1 --current CH2 --shunt 0.1ohm±0.5%",
+                   {"resistance forward.csv reverse.csv --shunt 0.1ohm±0.5%",
                     "two captures of a scope, the current reversed between them"},
-                   {"resistance hot.csv --cold 0.352ohm±0.2% --cold-temperature 21.5±0.5degC --temperature 24±1degC",
+                   {"resistance hot.csv --cold 0.352ohm±0.2% --cold-temperature 21degC",
                     "temperature of the hot winding, and its rise over the air"}},
       .run = run};
 }

@@ -181,12 +181,12 @@ OptionGroup files() {
 
 Command simulate_ramp_command() {
   return {.name = "simulate ramp",
-          .summary = "a simulated saturation test, written as a capture with its truth",
+          .summary = "a simulated saturation test, as a capture with its truth",
           .description =
               "Steps the non-linear circuit of coil, switch and supply and looks at it through a simulated two-channel scope. "
               "What a real bench would not tell, the truth, goes to a file of its own.",
           .groups = {files(), coil(), drive(), current(), scope(), everywhere_options()},
-          .examples = {{"simulate ramp -o ramp.csv --truth ramp.json --noise 50mV --current-noise 80mA --bits 8",
+          .examples = {{"simulate ramp -o ramp.csv --truth ramp.json --noise 50mV --bits 8",
                         "a capture to try ramp on, and what it ought to find"}},
           .run = run};
 }

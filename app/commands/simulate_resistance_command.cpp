@@ -125,11 +125,11 @@ OptionGroup meters() {
 
 Command simulate_resistance_command() {
   return {.name = "simulate resistance",
-          .summary = "simulated four-wire readings, written as a table with their truth",
+          .summary = "simulated four-wire readings, as a table with their truth",
           .description = "A winding carries a direct current that warms it and is turned round between readings; two meters read "
                          "voltage and current. The truth goes to a file of its own.",
           .groups = {files(), winding(), readings(), meters(), everywhere_options()},
-          .examples = {{"simulate resistance -o readings.csv --truth readings.json --thermal-offset 8uV --noise 2uV",
+          .examples = {{"simulate resistance -o r.csv --truth r.json --thermal-offset 8uV",
                         "readings to try resistance on, and what it ought to find"}},
           .run = run};
 }

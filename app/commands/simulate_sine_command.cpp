@@ -145,12 +145,12 @@ OptionGroup files() {
 
 Command simulate_sine_command() {
   return {.name = "simulate sine",
-          .summary = "a simulated steady sine, written as a capture with its truth",
+          .summary = "a simulated steady sine, as a capture with its truth",
           .description =
               "Solves the circuit's phasors exactly and looks at them through a simulated two-channel scope. What a real "
               "bench would not tell, the truth, goes to a file of its own.",
           .groups = {files(), coil(), drive(), current(), scope(), everywhere_options()},
-          .examples = {{"simulate sine -o sine.csv --truth sine.json --shunt 0.1ohm --noise 2mV --current-noise 1mA --bits 8",
+          .examples = {{"simulate sine -o sine.csv --truth sine.json --shunt 0.1ohm --bits 8",
                         "a capture to try sine on, and what it ought to find"}},
           .run = run};
 }

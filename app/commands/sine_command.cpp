@@ -93,9 +93,9 @@ Command sine_command() {
                  uncertainty_options(), output_options(), measuring_options()},
       .examples = {{"sine coil.csv --current CH2 --shunt 0.1ohm±1% --skew 4ns±1ns",
                     "Z, L_s, R_s and Q at the frequency of the capture, the second channel across a shunt"},
-                   {"sine 50r.csv --shunt 0.1ohm±1% --of-resistor 50ohm±1% --bench-out bench.toml",
+                   {"sine r.csv --shunt 0.1ohm --of-resistor 50ohm±1% --bench-out b.toml",
                     "the skew between the channels, written to a new bench sheet"},
-                   {"sine a.csv b.csv c.csv --shunt 0.1ohm --bias 0A --bias 1A --bias 2A --figure bias.svg",
+                   {"sine a.csv b.csv c.csv --shunt 0.1ohm --bias 0A --bias 1A --bias 2A",
                     "L over bias and the currents at which it has dropped by 10, 20 and 30 %"}},
       .run = run};
 }

@@ -82,7 +82,9 @@ TEST(RingDownFindings, DriveInsideAStatedWindow) {
   request.from_s = -40e-6;
   const Measurement result = measured(record.capture, request);
   ASSERT_TRUE(result.has_finding("drive_in_window"));
-  EXPECT_EQ(finding(result, "drive_in_window")->severity, Severity::caution);
+  EXPECT_EQ(finding(result, "drive_in_window")->severity, Severity::refusal);
+  EXPECT_NEAR(finding(result, "drive_in_window")->figure, 0, 1e-6);  // where the free decay does begin
+  EXPECT_EQ(result.find("f_0"), nullptr);
 }
 
 TEST(RingDownFindings, SecondMode) {

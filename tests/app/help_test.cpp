@@ -58,8 +58,11 @@ TEST(Help, IsReachedInEveryUsualWay) {
   EXPECT_EQ(run({"-h"}).code, 0);
 }
 
-TEST(Help, OfAFamilyLeadsToItsOnlyMember) {
-  EXPECT_EQ(run({"help", "simulate"}).out, run({"help", "simulate", "ringdown"}).out);
+TEST(Help, OfAFamilyNamesItsMembers) {
+  const std::string family = run({"help", "simulate"}).out;
+  for (const char* member : {"simulate ringdown", "simulate resistance", "simulate ramp", "simulate sine"}) {
+    EXPECT_NE(family.find(member), std::string::npos) << member;
+  }
   EXPECT_EQ(run({"simulate", "--help"}).code, 0);
 }
 
@@ -109,7 +112,7 @@ std::string completed(const std::vector<std::string>& words) {
 
 TEST(Completion, OffersCommandsOptionsAndChoicesInBash) {
   EXPECT_EQ(completed({"coilassay", "ring"}), "ringdown\n");
-  EXPECT_EQ(completed({"coilassay", "simulate", ""}), "ringdown\n");
+  EXPECT_EQ(completed({"coilassay", "simulate", ""}), "ramp\nresistance\nringdown\nsine\n");
   EXPECT_EQ(completed({"coilassay", "ringdown", "--capacitor-"}), "--capacitor-dissipation\n");
   EXPECT_EQ(completed({"coilassay", "ringdown", "x.csv", "--propagate", ""}), "first-order\ntrials\n");
   EXPECT_EQ(completed({"coilassay", "simulate", "ringdown", "--transient-"}), "--transient-time\n");
