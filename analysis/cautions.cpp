@@ -16,7 +16,7 @@ constexpr double kStray_f = 100e-12;    // of a winding, its leads and an open s
 constexpr double kWarmShunt_w = 0.1;
 constexpr const char* kFromMemory = "from memory";
 
-/// `where`: "at the release".
+/// `where`: "at the start of the window".
 Caution stored_energy(double energy_j, double peak_current_a, const char* where) {
   std::string message = "the coil stores " + to_text(energy_j, Unit::joule, Script::utf8, 2) + " " + where + " (" +
                         to_text(peak_current_a, Unit::ampere, Script::utf8, 3) + ")";
@@ -36,7 +36,7 @@ Caution stored_energy(double energy_j, double peak_current_a, const char* where)
 }  // namespace
 
 std::vector<Caution> ring_down_cautions(double peak_voltage_v, double peak_current_a, double energy_j) {
-  std::vector<Caution> cautions = {stored_energy(energy_j, peak_current_a, "at the release")};
+  std::vector<Caution> cautions = {stored_energy(energy_j, peak_current_a, "at the start of the window")};
   if (peak_voltage_v > kTouchVoltage_v) {
     cautions.push_back({"over_voltage", Severity::caution,
                         "the ringing reaches " + to_text(peak_voltage_v, Unit::volt, Script::utf8, 3) +
