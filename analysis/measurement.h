@@ -109,6 +109,28 @@ struct Point {
   std::optional<std::size_t> index = std::nullopt;   // of a pulse, counted from 1
 };
 
+/// One measured input of a joint solution, beside what the solution says it should have been.
+struct InputCheck {
+  std::string item;                       // "primary_open", "ratio_forward", ...
+  std::optional<double> at_hz;
+  Quantity value;
+  double predicted = std::nan("");
+  double residual_u = std::nan("");       // (value - predicted) in standard uncertainties of the value
+};
+
+/// An equivalent circuit computed from the result: named elements with intervals ("T": L_a, L_b, L_m).
+struct Equivalent {
+  std::string name;
+  std::vector<Estimate> elements;
+};
+
+/// Inductances of several windings, row by row; U_h are half-widths of 95 % intervals.
+struct InductanceMatrices {
+  std::vector<std::string> ports;
+  std::vector<std::vector<double>> inductance_h, U_h, coupling;
+  bool positive_definite = false;
+};
+
 struct Measurement {
   std::string test;          // "ringdown"
   std::vector<SourceRecord> sources;
@@ -129,6 +151,9 @@ struct Measurement {
   std::vector<Point> points;
   std::vector<Point> pulses;         // of a ramp with several: what each one says
   std::vector<Table> tables;
+  std::vector<InputCheck> inputs;            // of coupling
+  std::vector<Equivalent> equivalents;       // of coupling
+  std::optional<InductanceMatrices> matrices;
   std::vector<std::string> advice;   // sentences for people: what to try next
 
   const Estimate* find(std::string_view symbol) const;
