@@ -42,6 +42,10 @@ BenchSetup overridden(BenchSetup base, const BenchSetup& over) {
   replace(base.bias, over.bias);
   replace(base.temperature, over.temperature);
   replace(base.fixture_set, over.fixture_set);
+  replace(base.impedance.ratio, over.impedance.ratio);
+  replace(base.impedance.series_floor, over.impedance.series_floor);
+  replace(base.impedance.parallel_floor, over.impedance.parallel_floor);
+  replace(base.impedance.scattering, over.impedance.scattering);
   if (!over.equipment.empty()) base.equipment = over.equipment;
   // How the reading is done (threads, progress) is not on the sheet: the caller's stands.
   ReadOptions reading = over.reading;

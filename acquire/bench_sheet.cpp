@@ -226,6 +226,26 @@ void read_timebase(Section& section, BenchSetup& setup) {
   }
 }
 
+/// A value of this section is itself the half-width of what may be wrong.
+void read_accuracy(Section& section, ImpedanceAccuracy& accuracy) {
+  const auto half_width = [&](std::string_view key, Unit unit) {
+    const auto value = section.value(key, unit, Sense::not_negative);
+    if (value && value->law != Law::unstated && value->law != Law::exact) {
+      section.refuse(Problem::bad_sheet, key, fmt::format("'{}' is itself the half-width", section.full(key)),
+                     "write it without ±, as the data sheet states it");
+    }
+    if (value && unit == Unit::one && value->value >= 1) {
+      section.refuse(Problem::bad_number, key, fmt::format("'{}' is the whole value or more", section.full(key)),
+                     "write accuracy = \"0.1 %\"");
+    }
+    return value;
+  };
+  accuracy.ratio = half_width("accuracy", Unit::one);
+  accuracy.series_floor = half_width("series_floor", Unit::ohm);
+  accuracy.parallel_floor = half_width("parallel_floor", Unit::siemens);
+  accuracy.scattering = half_width("scattering", Unit::one);
+}
+
 CapacitorSetup read_capacitor(Section& section) {
   CapacitorSetup capacitor;
   const auto value = section.value("value", Unit::farad, Sense::above_zero);
@@ -336,6 +356,7 @@ Result<BenchSetup> read_bench_sheet(const std::string& path) {
   if (auto section = reading.section("winding")) {
     setup.winding_resistance = section->value("resistance", Unit::ohm, Sense::above_zero);
   }
+  if (auto section = reading.section("impedance")) read_accuracy(*section, setup.impedance);
   if (auto section = reading.section("stimulus")) {
     setup.level = section->value("level", Unit::volt, Sense::not_negative);
     setup.bias = section->value("bias", Unit::ampere, Sense::any);

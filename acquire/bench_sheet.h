@@ -30,6 +30,14 @@ struct CapacitorSetup {
   std::optional<StatedValue> dissipation_factor;
 };
 
+/// How well an analyser or bridge knows the impedances it writes: the half-widths its data sheet states, which add up.
+struct ImpedanceAccuracy {
+  std::optional<StatedValue> ratio;            // of Z, in size and, as radians, in angle
+  std::optional<StatedValue> series_floor;     // ohm: what a short may read
+  std::optional<StatedValue> parallel_floor;   // S: what an open may read
+  std::optional<StatedValue> scattering;       // of S where the file holds S
+};
+
 struct EquipmentItem {
   std::string id;
   std::string certificate;
@@ -50,6 +58,7 @@ struct BenchSetup {
   std::optional<StatedValue> bias;                   // A
   std::optional<StatedValue> temperature;            // degC
   std::optional<std::string> fixture_set;            // path, relative paths resolved against the sheet
+  ImpedanceAccuracy impedance;                       // of sweeps
   std::vector<EquipmentItem> equipment;
   ReadOptions reading;                               // [file]
 };

@@ -48,6 +48,19 @@ class BenchSheet : public ::testing::Test {
   std::filesystem::path folder_;
 };
 
+TEST_F(BenchSheet, SaysHowWellAnAnalyserKnowsItsImpedances) {
+  const BenchSetup setup = good(
+      "[impedance]\naccuracy = \"0.1 %\"\nseries_floor = \"2 mohm\"\nparallel_floor = \"10 nS\"\nscattering = \"0.002\"\n");
+  EXPECT_NEAR(setup.impedance.ratio->value, 1e-3, 1e-18);
+  EXPECT_NEAR(setup.impedance.series_floor->value, 2e-3, 1e-18);
+  EXPECT_NEAR(setup.impedance.parallel_floor->value, 10e-9, 1e-22);
+  EXPECT_NEAR(setup.impedance.scattering->value, 2e-3, 1e-18);
+  BenchSetup over;
+  over.impedance.ratio = StatedValue::unstated(0.01, Unit::one);
+  EXPECT_EQ(overridden(setup, over).impedance.ratio->value, 0.01);
+  EXPECT_TRUE(overridden(setup, over).impedance.scattering);
+}
+
 constexpr const char* kEverything = R"toml([voltage]
 column = "CH1"
 low_column = 3
@@ -198,6 +211,9 @@ TEST_F(BenchSheet, WhatNoBenchCanHaveIsRefused) {
   refuses("[voltage]\ngain = 0\n", Problem::bad_number, 2, "gain");
   refuses("[current]\nshunt = \"0.1 ohm ± 120 %\"\n", Problem::bad_number, 2, "tolerance");
   refuses("[current]\nprobe_corner = \"-1 Hz\"\n", Problem::bad_number, 2, "probe_corner");
+  refuses("[impedance]\naccuracy = \"0.1 ± 0.01\"\n", Problem::bad_sheet, 2, "half-width");
+  refuses("[impedance]\naccuracy = 2\n", Problem::bad_number, 2, "whole value");
+  refuses("[impedance]\nseries_floor = \"1 nS\"\n", Problem::wrong_unit, 2, "");
   refuses("[timebase]\ntolerance = \"-25 ppm\"\n", Problem::bad_number, 2, "negative");
   refuses("[timebase]\ntolerance = 25\n", Problem::bad_number, 2, "no clock");
   refuses("[timebase]\ntolerance = \"0.01 ± 0.001\"\n", Problem::bad_sheet, 2, "half-width");
