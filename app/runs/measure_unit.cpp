@@ -1,0 +1,93 @@
+#include "app/runs/measure_unit.h"
+
+#include <algorithm>
+#include <array>
+
+#include "app/runs/ramp_run.h"
+#include "app/runs/resistance_run.h"
+#include "app/runs/ring_down_run.h"
+#include "app/runs/sine_run.h"
+#include "base/outside_text.h"
+
+namespace coilassay {
+
+namespace {
+
+/// Jobs share these members, whatever else they have.
+template <class Job>
+Job job_of(const UnitTest& test) {
+  Job job;
+  job.bench_sheet = test.bench_sheet;
+  job.stated = test.stated;
+  job.propagation = test.propagation;
+  job.traces = test.traces;
+  return job;
+}
+
+template <class Job>
+Job job_of_files(const UnitTest& test) {
+  Job job = job_of<Job>(test);
+  job.files = test.files;
+  return job;
+}
+
+struct Kind {
+  std::string_view name;
+  std::size_t most_files;
+  Result<Measurement> (*measure)(const UnitTest&, const RunContext&);
+};
+
+constexpr std::size_t kMany = 1000;
+
+const std::array kKinds = {
+    Kind{"ringdown", kMany,
+         [](const UnitTest& test, const RunContext& context) {
+           return run_ring_down(job_of_files<RingDownJob>(test), context);
+         }},
+    Kind{"ramp", 1,
+         [](const UnitTest& test, const RunContext& context) {
+           auto job = job_of<RampJob>(test);
+           job.file = test.files.front();
+           return run_ramp(job, context);
+         }},
+    Kind{"sine", kMany,
+         [](const UnitTest& test, const RunContext& context) { return run_sine(job_of_files<SineJob>(test), context); }},
+    Kind{"resistance", kMany,
+         [](const UnitTest& test, const RunContext& context) {
+           return run_resistance(job_of_files<ResistanceJob>(test), context);
+         }},
+};
+
+}  // namespace
+
+const std::vector<std::string_view>& unit_test_kinds() {
+  static const std::vector<std::string_view> names = [] {
+    std::vector<std::string_view> all;
+    for (const Kind& kind : kKinds) all.push_back(kind.name);
+    return all;
+  }();
+  return names;
+}
+
+Result<Measurement> measure_unit(const UnitTest& test, const RunContext& context) {
+  const auto kind = std::find_if(kKinds.begin(), kKinds.end(), [&](const Kind& k) { return k.name == test.kind; });
+  const std::string place = test.files.empty() ? "test" : test.files.front();
+  if (kind == kKinds.end()) {
+    const std::string_view hint = nearest(test.kind, unit_test_kinds());
+    return failure(Problem::usage, place, "there is no test '" + shown(test.kind, 60) + "'",
+                   hint.empty() ? "the tests are named like the measuring commands: ringdown, ramp, sine, resistance"
+                                : "did you mean " + std::string(hint) + "?");
+  }
+  if (test.files.empty()) {
+    return failure(Problem::usage, place, "there is no capture for the test " + test.kind, "give the file of the unit");
+  }
+  if (test.files.size() > kind->most_files) {
+    return failure(Problem::usage, place,
+                   std::to_string(test.files.size()) + " captures were given for the test " + test.kind +
+                       ", which takes one",
+                   "keep one of them, or say in the part sheet how often the test is repeated");
+  }
+  return kind->measure(test, context);
+}
+
+}  // namespace coilassay

@@ -1,0 +1,34 @@
+// One door to every way of measuring: a kind of test, files and a bench in, a measurement out.
+#pragma once
+
+#include <optional>
+#include <string>
+#include <string_view>
+#include <vector>
+
+#include "acquire/bench_sheet.h"
+#include "analysis/budget.h"
+#include "analysis/measurement.h"
+#include "app/runs/context.h"
+#include "base/result.h"
+
+namespace coilassay {
+
+/// One test of one unit. The kind is the name of the measuring command; files of one measurement stand in their order.
+struct UnitTest {
+  std::string kind;                        // "ringdown", "ramp", "sine", "resistance"
+  std::vector<std::string> files;
+  std::optional<std::string> bench_sheet;  // path
+  BenchSetup stated;                       // replaces what the sheet says
+  PropagationOptions propagation;
+  bool traces = false;                     // keep what a figure needs
+};
+
+/// The kinds measure_unit() knows, for file names and part sheets.
+const std::vector<std::string_view>& unit_test_kinds();
+
+/// Measures as the command of that name would. usage: an unknown kind, or more files than the kind takes. The result does
+/// not depend on the number of threads; several units may be measured at once, each with a context of its own.
+Result<Measurement> measure_unit(const UnitTest& test, const RunContext& context);
+
+}  // namespace coilassay
