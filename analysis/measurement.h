@@ -122,6 +122,7 @@ struct InputCheck {
 struct Equivalent {
   std::string name;
   std::vector<Estimate> elements;
+  std::vector<std::vector<double>> correlation;   // between the elements, row by row
 };
 
 /// Inductances of several windings, row by row; U_h are half-widths of 95 % intervals.
