@@ -22,7 +22,7 @@ Caution stored_energy(double energy_j, double peak_current_a, const char* where)
                         to_text(peak_current_a, Unit::ampere, Script::utf8, 3) + ")";
   Severity severity = Severity::note;
   if (energy_j >= kEnergyStop_j) {
-    severity = Severity::refusal;
+    severity = Severity::caution;
     message += ": stop, and let someone licensed for such work look at the set-up before it is energised again";
   } else if (energy_j >= kEnergyCaution_j) {
     severity = Severity::caution;
@@ -35,8 +35,11 @@ Caution stored_energy(double energy_j, double peak_current_a, const char* where)
 
 }  // namespace
 
-std::vector<Caution> ring_down_cautions(double peak_voltage_v, double peak_current_a, double energy_j) {
-  std::vector<Caution> cautions = {stored_energy(energy_j, peak_current_a, "at the start of the window")};
+std::vector<Caution> ring_down_cautions(double peak_voltage_v, double peak_current_a, double energy_j, bool at_release) {
+  std::vector<Caution> cautions;
+  if (std::isfinite(energy_j)) {
+    cautions.push_back(stored_energy(energy_j, peak_current_a, at_release ? "at the release" : "at the start of the window"));
+  }
   if (peak_voltage_v > kTouchVoltage_v) {
     cautions.push_back({"over_voltage", Severity::caution,
                         "the ringing reaches " + to_text(peak_voltage_v, Unit::volt, Script::utf8, 3) +

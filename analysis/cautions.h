@@ -8,11 +8,12 @@
 
 namespace coilassay {
 
-/// Energy in the coil and voltage across it at the release of a ring-down.
+/// Energy in the coil and voltage across it at the release of a ring-down, or at the start of the window where that is the
+/// first that is known. NaN energy: not known, and left out.
 ///
-/// Thresholds: energy note from the first, caution from 50 mJ, stop from 1 J (from memory); 42 V peak is the usual limit
-/// for touchable parts (from memory). The energy is always stated, as a note when it is small.
-std::vector<Caution> ring_down_cautions(double peak_voltage_v, double peak_current_a, double energy_j);
+/// Thresholds: energy note from the first, caution from 50 mJ, a stronger one from 1 J (from memory); 42 V peak is the usual
+/// limit for touchable parts (from memory). A known energy is always stated, as a note when it is small.
+std::vector<Caution> ring_down_cautions(double peak_voltage_v, double peak_current_a, double energy_j, bool at_release);
 
 /// What one pulse of a saturation test does.
 struct RampLoad {

@@ -90,6 +90,7 @@ Result<Measurement> measure_ring_down(const Capture& capture, const RingDownRequ
 
   if (capacitors == 0) {
     advise_capacitor(result, omega0);
+    add_release_level(result, *decay, circuit);
     return result;
   }
   result.corrections = circuit.corrections();

@@ -29,9 +29,9 @@ Result<std::size_t> voltage_channel(const Capture& capture, const BenchSetup& be
   // The first channel in volts that the sheet has not given to the current.
   std::optional<std::size_t> current;
   if (bench.current.column) {
+    // The sheet may serve other captures of this bench: one without the current channel is no fault here.
     const auto found = find_channel(capture, *bench.current.column, "--current");
-    if (!found) return failure(found);
-    current = *found;
+    if (found) current = *found;
   }
   for (const bool volts_only : {true, false}) {
     for (std::size_t i = 0; i < capture.channels.size(); ++i) {
@@ -155,6 +155,7 @@ void leave_out_clipped(CaptureDecay& result, const std::vector<const Channel*>& 
   }
   if (clipped == 0) return;
   std::sort(tops.begin(), tops.end(), [](const FlatTop& a, const FlatTop& b) { return a.end < b.end; });
+  for (const FlatTop& top : tops) result.release = std::min(result.release, top.first);
   const std::string what = std::to_string(clipped) + " samples of " + shown(name) + " are clipped";
   std::string how = "; the window begins after the last of them. A coarser range keeps the whole decay";
   const std::size_t last = tops.back().end;
@@ -316,6 +317,7 @@ Result<CaptureDecay> decay_of_capture(const Capture& capture, const RingDownRequ
     return result;
   }
   result.decay = std::move(*decay);
+  result.release = result.decay->first - std::min(result.decay->skipped, result.decay->first);
   leave_out_clipped(result, coil->channels, search);
   if (!result.decay) return result;
 

@@ -21,6 +21,7 @@ struct CaptureDecay {
   std::vector<double> own_samples;     // of a record that was uneven, a difference of columns, or without clipped samples
   std::span<const double> samples;     // of the whole record
   std::optional<Decay> decay;          // absent: no ringing; findings say why
+  std::size_t release = 0;             // first sample of the free decay, a start transient and clipped crests included
   DecayStructure structure;
   std::vector<DecayPoint> contour;     // edge of the 95 % region of (a, q) near critical damping; empty elsewhere
   std::vector<Finding> findings;

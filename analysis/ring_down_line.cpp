@@ -4,6 +4,7 @@
 #include <cmath>
 #include <numbers>
 
+#include "analysis/cautions.h"
 #include "analysis/ring_down.h"
 #include "analysis/ring_down_circuit.h"
 #include "analysis/ring_down_decay.h"
@@ -117,6 +118,20 @@ class Bank {
     s.reduced = chi / dof;
     s.chance = f_upper_tail(s.reduced, dof, 1e6);
     return s;
+  }
+
+  /// Of all captures the largest voltage, current and energy.
+  ReleaseLevel strongest_release() const {
+    const Line fit = line(best_);
+    ReleaseLevel most;
+    for (std::size_t i = 0; i < size(); ++i) {
+      const ReleaseLevel one = release_level(decays_[i], fit.slope, added(best_, i) + fit.intercept / fit.slope);
+      most.peak_v = std::fmax(most.peak_v, one.peak_v);
+      most.peak_a = std::fmax(most.peak_a, one.peak_a);
+      most.energy_j = std::fmax(most.energy_j, one.energy_j);
+      most.at_release = most.at_release || one.at_release;
+    }
+    return most;
   }
 
   Table table() const {
@@ -292,6 +307,8 @@ Result<Measurement> measure_ring_down_line(const std::vector<Capture>& captures,
     return result;
   }
   add_points(result, bank, captures, request);
+  const ReleaseLevel most = bank.strongest_release();
+  result.cautions = ring_down_cautions(most.peak_v, most.peak_a, most.energy_j, most.at_release);
   if (request.traces) result.tables.push_back(bank.table());
   return result;
 }

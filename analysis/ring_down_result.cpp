@@ -222,16 +222,32 @@ void note_loads(Measurement& result, const RingDownCircuit& circuit, const RingD
   }
 }
 
+ReleaseLevel release_level(const CaptureDecay& decay, double inductance_h, double capacitance_f) {
+  if (!(decay.model().q > 0)) return {};
+  ReleaseLevel level;
+  const std::size_t first = decay.decay->first;
+  level.at_release = decay.release < first;
+  const double back = level.at_release ? static_cast<double>(first - decay.release) : 0;
+  level.peak_v = std::fabs(decay.gain) * decay.model().envelope(-back);
+  level.peak_a = level.peak_v * std::sqrt(capacitance_f / inductance_h);
+  level.energy_j = inductance_h * level.peak_a * level.peak_a / 2;
+  return level;
+}
+
 void add_release_level(Measurement& result, const CaptureDecay& decay, const RingDownCircuit& circuit) {
   const Estimate* inductance = result.find("L_s");
-  const Estimate* f_0 = result.find("f_0");
-  if (inductance == nullptr || f_0 == nullptr || !(decay.model().q > 0)) return;
-  const double peak_v = std::fabs(decay.gain) * decay.model().envelope(0);
-  const double c = circuit.total_capacitance(best_inputs(circuit), 0);
-  const double peak_a = peak_v * std::sqrt(c / inductance->quantity.value);
-  result.conditions.peak_current_a = peak_a;
-  const double energy = inductance->quantity.value * peak_a * peak_a / 2;
-  for (Caution& caution : ring_down_cautions(peak_v, peak_a, energy)) result.cautions.push_back(std::move(caution));
+  double henry = std::nan(""), farad = std::nan("");
+  if (inductance != nullptr) {
+    henry = inductance->quantity.value;
+    farad = circuit.total_capacitance(best_inputs(circuit), 0);
+    if (decay.model().q > 0) {
+      result.conditions.peak_current_a =
+          std::fabs(decay.gain) * decay.model().envelope(0) * std::sqrt(farad / henry);
+    }
+  }
+  // People and equipment meet what was there at the release, also where the fit begins later.
+  const ReleaseLevel level = release_level(decay, henry, farad);
+  result.cautions = ring_down_cautions(level.peak_v, level.peak_a, level.energy_j, level.at_release);
 }
 
 }  // namespace coilassay

@@ -1,6 +1,7 @@
 // Pieces of a ring-down result that one capacitor and several have in common.
 #pragma once
 
+#include <cmath>
 #include <span>
 #include <string>
 
@@ -49,7 +50,16 @@ void withhold_unresolved(Measurement& result);
 /// capacitor_dominates, probe_loading, capacitor_loss.
 void note_loads(Measurement& result, const RingDownCircuit& circuit, const RingDownRequest& request);
 
-/// Peak current and voltage at the start of the window, with cautions.
+/// What stood across the coil and flowed in it at the release, or at the start of the window where that is the first known.
+struct ReleaseLevel {
+  double peak_v = 0;
+  double peak_a = std::nan(""), energy_j = std::nan("");   // NaN without an inductance
+  bool at_release = false;                                 // earlier than the window
+};
+/// NaN inductance and capacitance: not known. An overdamped decay has no level that is known this way: all zero.
+ReleaseLevel release_level(const CaptureDecay& decay, double inductance_h, double capacitance_f);
+
+/// Peak current at the start of the window as a condition; cautions about the release.
 void add_release_level(Measurement& result, const CaptureDecay& decay, const RingDownCircuit& circuit);
 
 }  // namespace coilassay

@@ -281,11 +281,21 @@ class ValueReader {
     return *value * unit.factor;
   }
 
+  /// "10" for a capacitor was hardly meant as 10 F: a farad or a henry, and more, is taken only when the unit says so.
+  Result<void> plausible(const std::string& unit, double value) const {
+    const bool large = expected_ == Unit::farad ? std::fabs(value) >= 0.01
+                                                : expected_ == Unit::henry && std::fabs(value) >= 1;
+    if (!unit.empty() || !large) return {};
+    return ambiguous(fmt::format("'{}' has no unit and would be {} {}, hardly what was meant", text(), value, symbol(expected_)),
+                     fmt::format("write the unit, {0}n{1}, {0}u{1} or, if it is meant, {0}{1}", value, symbol(expected_)));
+  }
+
   Result<StatedValue> value_alone(const Term& term) const {
     const auto unit = unit_of(term.unit, expected_);
     if (!unit) return failure(unit);
     const auto value = in_si(term.number, *unit);
     if (!value) return failure(value);
+    if (const auto meant = plausible(term.unit, *value); !meant) return failure(meant);
     if (term.number.uncertainty.empty()) return StatedValue::unstated(*value, expected_);
 
     // Digits without a point count in the last place of the value.
@@ -315,6 +325,7 @@ class ValueReader {
     if (!unit) return failure(unit);
     const auto value = in_si(left.number, *unit);
     if (!value) return failure(value);
+    if (const auto meant = plausible(left_unit, *value); !meant) return failure(meant);
 
     double half_width = 0;
     if (relative) {

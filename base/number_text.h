@@ -16,9 +16,9 @@ enum class Script { utf8, ascii };
 /// Reads a value the way people type it.
 ///
 /// Value: "10nF", "10 nF", "4n7" and "4n7F" (IEC 60062; "4R7", "0R1", "R47"), "47u", "1 kΩ", "0.1ohm", "2.2e-9 F".
-/// Prefixes f p n u µ m k M G T; K is taken as kilo, except for a temperature difference, where it is kelvin. "1meg" is
-/// refused as ambiguous. A bare number is taken in the SI unit; for plain numbers % and ppm are units, deg is one for
-/// angles, min, h and d for times.
+/// Prefixes f p n u µ m k M G T; K is taken as kilo, except for a temperature difference, where it is kelvin. "1meg" is refused
+/// as ambiguous. A bare number is taken in the SI unit (from 10 mF and 1 H on it is refused: a forgotten prefix is likelier);
+/// for plain numbers % and ppm are units, deg is one for angles, min, h and d for times.
 /// Tolerance: "10nF±1%", "10nF+-0.1nF", "10nF±0.1" (rectangular half-width, in the unit of the value when it has none),
 /// "23 ± 2 degC" (the unit holds for both), "±0%" exact, "10.012nF±5pF(k=2)" (normal, divided by k), "10.0120(25)nF"
 /// (standard uncertainty in the last digits, normal). Percent is of the value; ppm likewise; both are refused for zero,

@@ -1,5 +1,8 @@
 #include "app/runs/outputs.h"
 
+#include <filesystem>
+#include <utility>
+
 #include "app/runs/version.h"
 #include "report/figure.h"
 #include "report/html_report.h"
@@ -26,6 +29,20 @@ Result<void> write_report(const Measurement& measurement, const std::string& pat
   return context.write(path, *pdf);
 }
 
+/// A document that would take the place of a file that was measured.
+Result<void> spare_inputs(const Measurement& measurement, const OutputRequest& request) {
+  for (const auto& [option, path] : {std::pair{"--figure", &request.figure}, std::pair{"--report", &request.report}}) {
+    for (const SourceRecord& each : measurement.sources) {
+      std::error_code unknown;
+      if (path->has_value() && std::filesystem::equivalent(**path, each.source.name, unknown)) {
+        return failure(Problem::cannot_write, option, "this is the file that was measured, and it would be lost",
+                       "give another file name");
+      }
+    }
+  }
+  return {};
+}
+
 }  // namespace
 
 Result<void> check_outputs(const OutputRequest& request) {
@@ -40,6 +57,7 @@ Result<void> check_outputs(const OutputRequest& request) {
 }
 
 Result<bool> write_outputs(const Measurement& measurement, const OutputRequest& request, const RunContext& context) {
+  if (const Result<void> fine = spare_inputs(measurement, request); !fine) return failure(fine);
   Result<bool> drawn = true;
   if (request.figure) drawn = write_figure(measurement, *request.figure, context);
   if (request.report) {

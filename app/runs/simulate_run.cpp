@@ -59,14 +59,16 @@ std::string truth_document(const SimulateRingDownJob& job, const RingDownRecord&
   parameters["drive_channel"] = job.bench.drive_channel;
 
   const RingDownTruth& t = record.truth;
-  nlohmann::ordered_json truth = {{"L_s", t.l_s_h},
-                                  {"R_s", t.r_s_ohm},
+  // As docs/formulas.md defines L_s and R_s: with the capacitance that a bench can state, the coil's own apart.
+  nlohmann::ordered_json truth = {{"L_s", t.apparent_l_s_h},
+                                  {"R_s", t.apparent_r_s_ohm},
                                   {"f_0", t.f_0_hz},
-                                  {"f_d", t.f_d_hz},
+                                  {"f_d", t.f_d_hz > 0 ? nlohmann::ordered_json(t.f_d_hz) : nlohmann::ordered_json()},
                                   {"alpha", t.alpha_per_s},
                                   {"Q", t.q},
                                   {"Q_coil", t.q_coil},
                                   {"L", job.bench.inductance_h},
+                                  {"R_dc", job.bench.resistance_ohm},
                                   {"C_par", job.bench.parallel_capacitance_f},
                                   {"C_total", t.c_total_f},
                                   {"peak_current_A", t.peak_current_a},

@@ -52,6 +52,34 @@ TEST(RingDownFindings, ClippedNearlyToTheEnd) {
   EXPECT_NEAR(result.find("R_s")->quantity.value, 0.35, 5 * result.find("R_s")->quantity.standard_uncertainty);
 }
 
+// People meet the energy of the release, also when its crests are cut off and the window begins later: 50 mA in 47 uH
+// hold 59 nJ.
+TEST(RingDownCautions, SpeakOfTheReleaseAndNotOfTheWindow) {
+  auto bench = clean();
+  bench.bits = 8;
+  bench.resistance_ohm = 3;
+  bench.full_scale_v = 1.2;
+  const Measurement result = measure(bench);
+  ASSERT_TRUE(result.has_finding("clipped"));
+  ASSERT_FALSE(result.cautions.empty());
+  EXPECT_EQ(result.cautions.front().code, "stored_energy");
+  EXPECT_NEAR(result.cautions.front().figure, 59e-9, 6e-9);
+  ASSERT_TRUE(result.conditions.peak_current_a);
+  EXPECT_LT(*result.conditions.peak_current_a, 0.04);  // the level at which L_s holds is that of the window
+}
+
+TEST(RingDownCautions, AVoltageIsWarnedOfAlsoWithoutACapacitor) {
+  auto bench = clean();
+  bench.initial_current_a = 1;  // 69 V
+  const auto record = simulated(bench);
+  RingDownRequest request = exact_request(bench);
+  request.bench.capacitors.clear();
+  const Measurement result = measured(record.capture, request);
+  ASSERT_EQ(result.cautions.size(), 1u);
+  EXPECT_EQ(result.cautions.front().code, "over_voltage");
+  EXPECT_NEAR(result.cautions.front().figure, 68, 2);
+}
+
 TEST(RingDownFindings, CoarseRange) {
   auto bench = clean();
   bench.bits = 8;

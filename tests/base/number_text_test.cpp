@@ -18,6 +18,21 @@ struct Typed {
   double value;
 };
 
+TEST(ParseValue, ABareNumberThatWouldBeAHugeCapacitorOrCoilIsAskedFor) {
+  for (const char* text : {"10", "10±1%", "0.01", "-47"}) {
+    const auto farads = parse_value(text, Unit::farad, "--capacitor");
+    ASSERT_FALSE(farads) << text;
+    EXPECT_EQ(farads.error().problem, Problem::ambiguous);
+    EXPECT_THAT(farads.error().remedy, HasSubstr("nF"));
+  }
+  EXPECT_FALSE(parse_value("47", Unit::henry, "--inductance"));
+  EXPECT_TRUE(parse_value("10F", Unit::farad, "--capacitor"));
+  EXPECT_TRUE(parse_value("10 ± 1 F", Unit::farad, "--capacitor"));
+  EXPECT_TRUE(parse_value("1e-8", Unit::farad, "--capacitor"));
+  EXPECT_TRUE(parse_value("2.5H", Unit::henry, "--inductance"));
+  EXPECT_TRUE(parse_value("10", Unit::ohm, "--across"));
+}
+
 TEST(ParseValue, ReadsWhatPeopleTypeAsExactlyTheDoubleOfTheDecimalNumber) {
   const Typed cases[] = {
       {"10nF", Unit::farad, 1e-8},

@@ -146,6 +146,29 @@ TEST(RingDown, KeepsToTheStatedWindow) {
   EXPECT_LE(window[1].get<double>(), 100e-6);
 }
 
+TEST(RingDown, NeverWritesADocumentOverTheCapture) {
+  const TemporaryFolder folder;
+  const std::string ring = folder / "ring.svg";   // an odd name, but a table all the same
+  simulate_into(ring, kNoise);
+  const std::string before = contents_of(ring);
+  const ProgramEnd end = run_program_process({"ringdown", ring, "--figure", ring});
+  EXPECT_EQ(end.exit_code, 2);
+  EXPECT_THAT(end.error, HasSubstr("the file that was measured"));
+  EXPECT_THAT(end.out, HasSubstr("natural frequency"));   // what was measured is shown all the same
+  EXPECT_EQ(contents_of(ring), before);
+}
+
+// L_s is defined with the capacitance a bench can state; what the winding adds stands in C_par.
+TEST(Simulate, TruthOfOneCapacitorLeavesTheWindingsCapacitanceInside) {
+  const TemporaryFolder folder;
+  const auto truth = simulate_into(folder / "ring.csv", {"--inductance", "47uH", "--capacitor", "1nF",
+                                                             "--parallel-capacitance", "50pF", "--probe-capacitance", "0pF"}).at("truth");
+  EXPECT_NEAR(truth.at("L_s").get<double>(), 47e-6 * 1.05, 1e-9);
+  EXPECT_EQ(truth.at("L").get<double>(), 47e-6);
+  const auto damped = simulate_into(folder / "damped.csv", {"--resistance", "200ohm"}).at("truth");
+  EXPECT_TRUE(damped.at("f_d").is_null());
+}
+
 TEST(Simulate, WritesACaptureToStandardOutput) {
   const ProgramEnd end = run_program_process({"simulate", "ringdown", "-o", "-", "--samples", "100"});
   EXPECT_EQ(end.exit_code, 0) << end.error;
