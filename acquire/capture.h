@@ -71,6 +71,8 @@ struct Sweep {
   std::vector<std::vector<std::complex<double>>> z_ohm;
   std::string as_read;                 // "Z", "Y", "S", "L_s R_s", ...
   std::vector<double> reference_ohm;   // per port, for S
+  /// As the file holds it, when that is S: ports x ports, row by row. A coil between two ports has no impedance matrix.
+  std::vector<std::vector<std::complex<double>>> scattering;
   std::vector<bool> bad;               // points the file itself marks as bad
   std::vector<Finding> findings;
 };

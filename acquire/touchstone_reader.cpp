@@ -200,6 +200,7 @@ class TouchstoneRead {
       if (setup_.matrix != TouchstoneSetup::MatrixFormat::full) matrix[column * n + row] = value;
     }
     sweep_.frequency_hz.push_back(pending_.front());
+    if (setup_.parameter == PortParameter::s) sweep_.scattering.push_back(matrix);
     auto z = to_impedance(setup_.parameter, std::move(matrix), setup_.reference_ohm, !setup_.version_2);
     sweep_.bad.push_back(!z);
     if (!z) z = std::vector<Complex>(n * n, Complex(std::nan(""), std::nan("")));

@@ -190,6 +190,18 @@ TEST_F(Touchstone, AnOpenSeenByScatteringIsMarkedBad) {
   EXPECT_TRUE(std::isnan(s->z_ohm[0][0].real()));
 }
 
+TEST_F(Touchstone, ACoilBetweenTwoPortsHasNoImpedanceMatrixButItsScatteringIsKept) {
+  // 100 ohm between ports of 50 ohm: S11 = S21 = 1/2 exactly, and 1 - S has no inverse.
+  const auto read = sweep("through.s2p", "# Hz S RI R 50\n1e5 0.5 0 0.5 0 0.5 0 0.5 0\n2e5 0 0 1 0 1 0 0 0\n");
+  ASSERT_TRUE(read);
+  EXPECT_TRUE(read->bad.at(0));
+  EXPECT_EQ(read->scattering.at(0).at(2), Complex(0.5));
+  EXPECT_EQ(read->scattering.at(1).at(2), Complex(1));
+  const auto impedance = sweep("z.s1p", "# Hz Z RI R 50\n1e5 0.5 0\n");
+  ASSERT_TRUE(impedance);
+  EXPECT_TRUE(impedance->scattering.empty());
+}
+
 TEST_F(Touchstone, AnotherCountThanStatedIsSaid) {
   const auto s = sweep("a.ts", "[Version] 2.0\n# Hz Z RI\n[Number of Ports] 1\n[Number of Frequencies] 3\n[Network Data]\n1 1 0\n2 1 0\n[End]\n");
   ASSERT_TRUE(s);
