@@ -1,0 +1,70 @@
+#include "fitting/circuit_limits.h"
+
+#include <algorithm>
+#include <cmath>
+
+namespace coilassay {
+
+namespace {
+
+using P = CircuitParameter;
+constexpr int kIterations = 60;
+constexpr double kSettled = 1e-6;
+// Further than this many standard uncertainties from the end of its range a parameter is seen, and needs no profile.
+constexpr double kPlainlySeen = 4;
+
+/// Chi-square with parameter i held at `value`, the others fitted again from `near`.
+SettledCircuit profile(const CircuitEquations& equations, const Circuit& near, std::size_t i, P parameter, double value) {
+  Circuit start = near;
+  start[parameter] = value;
+  return descend(equations, start, HeldParameters{1} << i, kIterations, kSettled);
+}
+
+}  // namespace
+
+void find_limits(const CircuitEquations& equations, CircuitFit& fit) {
+  const double quantile = fit.coverage_factor() * fit.scale;
+  const double rise = quantile * quantile;
+  for (std::size_t i = 0; i < fit.order.size(); ++i) {
+    const P parameter = fit.order[i];
+    if (parameter == P::second_frequency || parameter == P::second_damping) continue;
+    const bool share = parameter == P::relaxation_share;
+    const double value = fit.circuit[parameter], u = fit.standard_uncertainty(parameter);
+    const double from_end = share ? 1 - value : value;
+    if (from_end > kPlainlySeen * u) continue;
+    const SettledCircuit at_end = profile(equations, fit.circuit, i, parameter, share ? 1.0 : 0.0);
+    if (!(at_end.chi - fit.chi_square < rise)) continue;
+
+    // The limit, by bisection of the logarithm between the minimum and a place plainly beyond.
+    CircuitLimit limit;
+    limit.parameter = parameter;
+    limit.at_most = !share;
+    double inside = std::max(value, share ? 0.0 : 1e-3 * u), outside = inside;
+    Circuit near = fit.circuit;
+    if (share) inside = outside = value;
+    for (int k = 0; k < 60; ++k) {
+      outside = share ? outside / 1.5 : std::max(outside * 1.5, value + 2 * u);
+      const SettledCircuit next = profile(equations, near, i, parameter, outside);
+      if (next.chi - fit.chi_square > rise) break;
+      inside = outside;
+      near = next.circuit;
+    }
+    for (int k = 0; k < 30 && std::fabs(outside / inside - 1) > 1e-3; ++k) {
+      const double middle = std::sqrt(inside * outside);
+      const SettledCircuit next = profile(equations, near, i, parameter, middle);
+      if (next.chi - fit.chi_square > rise) {
+        outside = middle;
+      } else {
+        inside = middle;
+        near = next.circuit;
+      }
+    }
+    limit.value = outside;
+    limit.circuit = near;
+    limit.circuit[parameter] = limit.value;
+    fit.limits.push_back(limit);
+    fit.fit.at_bound[i] = true;
+  }
+}
+
+}  // namespace coilassay
