@@ -118,6 +118,15 @@ SheetTable::SheetTable(std::shared_ptr<Node> node) : node_(std::move(node)) {}
 
 bool SheetTable::has(std::string_view key) const { return node_->table->contains(key); }
 
+std::vector<std::string> SheetTable::keys() const {
+  std::vector<std::pair<std::uint32_t, std::string>> found;
+  for (const auto& [key, value] : *node_->table) found.emplace_back(key.source().begin.line, key.str());
+  std::stable_sort(found.begin(), found.end(), [](const auto& a, const auto& b) { return a.first < b.first; });
+  std::vector<std::string> names;
+  for (auto& [line, key] : found) names.push_back(std::move(key));
+  return names;
+}
+
 Result<std::optional<std::string>> SheetTable::text(std::string_view key) const {
   const toml::node* found = node_->ask(key);
   if (found == nullptr) return std::nullopt;
@@ -287,6 +296,12 @@ Result<SheetTable> parse_sheet(std::string_view text, std::string_view name) {
 }
 
 Result<SheetTable> read_sheet(const std::string& path) {
+  const auto text = read_sheet_text(path);
+  if (!text) return failure(text);
+  return parse_sheet(*text, path);
+}
+
+Result<std::string> read_sheet_text(const std::string& path) {
   const auto unreadable = [&](std::string finding) {
     return failure(Problem::unreadable, path, std::move(finding), "give the path of a sheet (TOML)");
   };
@@ -303,7 +318,7 @@ Result<SheetTable> read_sheet(const std::string& path) {
   file.read(text.data(), static_cast<std::streamsize>(text.size()));
   if (file.bad()) return unreadable("it cannot be read to its end");
   text.resize(static_cast<std::size_t>(file.gcount()));
-  return parse_sheet(text, path);
+  return text;
 }
 
 }  // namespace coilassay

@@ -21,6 +21,8 @@ class SheetTable {
   explicit SheetTable(std::shared_ptr<Node> node);
 
   bool has(std::string_view key) const;
+  /// Every key of the table, in the order of its lines; for tables whose keys are names a person chose. None becomes known.
+  std::vector<std::string> keys() const;
   Result<std::optional<std::string>> text(std::string_view key) const;
   Result<std::optional<double>> number(std::string_view key) const;
   Result<std::optional<long long>> integer(std::string_view key) const;
@@ -44,5 +46,7 @@ class SheetTable {
 /// Reads a sheet from a file (at most 1 MiB) or from text; `name` stands in places.
 Result<SheetTable> read_sheet(const std::string& path);
 Result<SheetTable> parse_sheet(std::string_view text, std::string_view name);
+/// The bytes of a sheet, for one whose digest is wanted; unreadable as read_sheet() says it.
+Result<std::string> read_sheet_text(const std::string& path);
 
 }  // namespace coilassay

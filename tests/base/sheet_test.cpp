@@ -69,6 +69,14 @@ TEST(Sheet, GivesEveryKindOfValueAndAcceptsASheetWhoseKeysAreAllKnown) {
   EXPECT_TRUE(all_known) << all_known.error().finding;
 }
 
+TEST(Sheet, NamesThatAPersonChoseComeInTheOrderOfTheirLines) {
+  const auto sheet = parse_sheet("[test.zero]\na = 1\n[test.alpha]\na = 2\n", "part.toml");
+  ASSERT_TRUE(sheet);
+  const auto tests = sheet->table("test").value().value();
+  EXPECT_EQ(tests.keys(), (std::vector<std::string>{"zero", "alpha"}));
+  EXPECT_FALSE(sheet->refuse_unknown_keys()) << "listing keys must not make them known";
+}
+
 TEST(Sheet, AbsentKeysAreNoErrorAndCountAsKnown) {
   const SheetTable sheet = bench();
   EXPECT_FALSE(sheet.has("current"));
@@ -240,6 +248,7 @@ TEST_F(SheetFile, IsReadWithOrWithoutAByteOrderMark) {
     ASSERT_TRUE(sheet) << sheet.error().finding;
     EXPECT_EQ(sheet->integer("b").value(), 2);
     EXPECT_EQ(sheet->place("b"), path + ":2");
+    EXPECT_EQ(read_sheet_text(path).value(), start + "a = 1\r\nb = 2\r\n") << "a digest is of the bytes as they stand";
   }
 }
 
