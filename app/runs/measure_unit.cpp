@@ -17,6 +17,7 @@ namespace {
 template <class Job>
 Job job_of(const UnitTest& test) {
   Job job;
+  job.segment = test.segment;
   job.bench_sheet = test.bench_sheet;
   job.stated = test.stated;
   job.propagation = test.propagation;
@@ -31,6 +32,13 @@ Job job_of_files(const UnitTest& test) {
   return job;
 }
 
+template <class Job>
+Job windowed(Job job, const UnitTest& test) {
+  job.from_s = test.from_s;
+  job.to_s = test.to_s;
+  return job;
+}
+
 struct Kind {
   std::string_view name;
   std::size_t most_files;
@@ -42,19 +50,28 @@ constexpr std::size_t kMany = 1000;
 const std::array kKinds = {
     Kind{"ringdown", kMany,
          [](const UnitTest& test, const RunContext& context) {
-           return run_ring_down(job_of_files<RingDownJob>(test), context);
+           auto job = windowed(job_of_files<RingDownJob>(test), test);
+           job.dissipation_factors = test.dissipation_factors;
+           return run_ring_down(job, context);
          }},
     Kind{"ramp", 1,
          [](const UnitTest& test, const RunContext& context) {
-           auto job = job_of<RampJob>(test);
+           auto job = windowed(job_of<RampJob>(test), test);
            job.file = test.files.front();
            return run_ramp(job, context);
          }},
     Kind{"sine", kMany,
-         [](const UnitTest& test, const RunContext& context) { return run_sine(job_of_files<SineJob>(test), context); }},
+         [](const UnitTest& test, const RunContext& context) {
+           auto job = windowed(job_of_files<SineJob>(test), test);
+           job.biases = test.biases;
+           return run_sine(job, context);
+         }},
     Kind{"resistance", kMany,
          [](const UnitTest& test, const RunContext& context) {
-           return run_resistance(job_of_files<ResistanceJob>(test), context);
+           auto job = job_of_files<ResistanceJob>(test);
+           job.material = test.material;
+           job.temperature_coefficient = test.temperature_coefficient;
+           return run_resistance(job, context);
          }},
 };
 

@@ -18,8 +18,14 @@ namespace coilassay {
 struct UnitTest {
   std::string kind;                        // "ringdown", "ramp", "sine", "resistance"
   std::vector<std::string> files;
+  std::optional<std::string> segment;
   std::optional<std::string> bench_sheet;  // path
   BenchSetup stated;                       // replaces what the sheet says
+  std::optional<double> from_s, to_s;
+  std::vector<StatedValue> dissipation_factors;        // ringdown: one for all capacitors, or one for each
+  std::vector<StatedValue> biases;                     // sine: one for each capture
+  std::optional<std::string> material;                 // resistance
+  std::optional<StatedValue> temperature_coefficient;  // resistance
   PropagationOptions propagation;
   bool traces = false;                     // keep what a figure needs
 };
