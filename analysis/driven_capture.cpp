@@ -321,6 +321,15 @@ Result<DrivenRecord> driven_record(const Capture& capture, const BenchSetup& ben
   return record;
 }
 
+void take_turns_ratio(DrivenRecord& record, const StatedValue& ratio, const PropagationOptions& options) {
+  for (double& v : record.volts) v *= ratio.value;
+  record.volt_resolution *= std::fabs(ratio.value);
+  record.corrections.push_back({"turns ratio", ratio.value, Unit::one});
+  if (ratio.law == Law::unstated || ratio.law == Law::exact) return;
+  record.errors.voltage_gain = both(record.errors.voltage_gain, ratio_error("turns ratio", ratio, 0, options));
+  record.errors.voltage_gain.source = "voltage gain and turns ratio";
+}
+
 std::complex<double> current_chain(double omega, double skew_s, double shunt_tau_s, double probe_corner_hz) {
   using namespace std::complex_literals;
   const double corner = 2 * std::numbers::pi * probe_corner_hz;

@@ -68,6 +68,11 @@ inline constexpr double kTimebaseRatio = 100e-6;     // a poor crystal
 ///         contradicts the column's unit, or when no time is given.
 Result<DrivenRecord> driven_record(const Capture& capture, const BenchSetup& bench, const PropagationOptions& options);
 
+/// The voltage was taken from a sense winding: scales it by driven turns over sense turns to what the flux induces in the
+/// driven winding. Turns are counted, so a ratio given without tolerance is exact; otherwise its error joins the voltage
+/// gain's. A negative ratio turns the sense winding round.
+void take_turns_ratio(DrivenRecord& record, const StatedValue& ratio, const PropagationOptions& options);
+
 /// What the current channel's chain does to a phasor at angular frequency omega: multiply the measured current phasor by
 /// the inverse. Delay exp(-j omega skew), shunt 1 + j omega tau, probe j omega/(j omega + omega_1).
 std::complex<double> current_chain(double omega, double skew_s, double shunt_tau_s, double probe_corner_hz);

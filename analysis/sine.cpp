@@ -97,6 +97,10 @@ Result<Measurement> measure_sine(const Capture& capture, const SineRequest& requ
   add_impedance(result, inputs, request);
   judge_impedance(result, *sine, inputs, request);
   add_cautions(result, best, request);
+  if (request.turns_ratio) {
+    result.advice.push_back("the voltage is that of a sense winding: R_s and P are the core's, without the winding's resistance and "
+                            "the flux that does not pass the sense winding");
+  }
   const auto ceiling = result.model->parameters.find("q_ceiling");
   if (ceiling != result.model->parameters.end() && !result.has_finding("skew_limited")) {
     result.advice.push_back("with this knowledge of skew and shunt inductance R_s is good to 10 % up to Q " +

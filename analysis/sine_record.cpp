@@ -166,6 +166,7 @@ Result<SineRecord> sine_of_capture(const Capture& capture, const SineRequest& re
   if (!record) return failure(record);
   SineRecord sine;
   sine.record = std::move(*record);
+  if (request.turns_ratio) take_turns_ratio(sine.record, *request.turns_ratio, request.propagation);
   sine.findings = sine.record.findings;
   find_window(sine, request);
   bool usable = true;

@@ -127,7 +127,7 @@ void judge_quality(Measurement& m) {
 
 void judge_shunt(Measurement& m, const SineRequest& request) {
   const std::optional<StatedValue>& shunt = request.bench.current.shunt;
-  if (!shunt || request.bench.voltage.low_column) return;
+  if (!shunt || request.bench.voltage.low_column || request.turns_ratio) return;
   const Estimate* r = m.find("R_s");
   if (r == nullptr || !(r->quantity.value > 0)) return;
   const double share = shunt->value / r->quantity.value;

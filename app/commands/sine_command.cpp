@@ -19,6 +19,7 @@ Result<SineJob> job_of(const Arguments& arguments) {
   if (!stated) return failure(stated);
   job.stated = std::move(*stated);
   if (auto taken = take_current(arguments, job.stated); !taken) return failure(taken);
+  job.turns_ratio = arguments.stated("--turns-ratio");
   job.biases = arguments.all_stated("--bias");
   job.of_resistor = arguments.stated("--of-resistor");
   job.resistor_inductance = arguments.stated("--resistor-inductance");
@@ -44,8 +45,15 @@ Result<ExitCode> run(const Arguments& arguments, Console& console) {
 }
 
 OptionGroup bias_and_skew() {
-  return {.title = "Bias and skew",
-          .options = {{.name = "--bias",
+  return {.title = "Bias, sense winding and skew",
+          .options = {{.name = "--turns-ratio",
+                       .kind = ValueKind::stated,
+                       .value_name = "RATIO",
+                       .help = "driven turns over sense turns: the voltage is that of a sense winding, P the core's loss",
+                       .example = "10",
+                       .unit = Unit::one,
+                       .range = Range::not_zero},
+                      {.name = "--bias",
                        .kind = ValueKind::stated,
                        .value_name = "VALUE",
                        .help = "DC current through the coil; once per file, in the order of the files",

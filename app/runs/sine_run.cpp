@@ -137,6 +137,9 @@ Result<Measurement> run_sine(const SineJob& job, const RunContext& context) {
     return failure(Problem::usage, "--of-resistor", "the skew is found from one capture without bias",
                    "give one file, and no --bias");
   }
+  if (job.of_resistor && job.turns_ratio) {
+    return failure(Problem::usage, "--turns-ratio", "a resistor has no sense winding", "leave out --turns-ratio");
+  }
   BenchSetup bench;
   if (job.bench_sheet) {
     Result<BenchSetup> sheet = read_bench_sheet(*job.bench_sheet);
@@ -147,6 +150,7 @@ Result<Measurement> run_sine(const SineJob& job, const RunContext& context) {
   request.bench = overridden(std::move(bench), job.stated);
   request.from_s = job.from_s;
   request.to_s = job.to_s;
+  request.turns_ratio = job.turns_ratio;
   request.propagation = job.propagation;
   request.propagation.threads = context.threads;
   request.traces = job.traces;

@@ -18,6 +18,7 @@ struct SineJob {
   std::optional<std::string> segment;
   std::optional<std::string> bench_sheet;   // path
   BenchSetup stated;                        // replaces what the sheet says
+  std::optional<StatedValue> turns_ratio;   // of a sense winding
   std::vector<StatedValue> biases;          // one for each file, in order
   std::optional<StatedValue> of_resistor;   // the capture is one of a resistor: the skew is looked for
   std::optional<StatedValue> resistor_inductance;

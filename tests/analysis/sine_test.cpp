@@ -43,6 +43,29 @@ TEST(Sine, GivesEveryQuantityOfTheImpedance) {
   EXPECT_TRUE(m.findings.empty()) << m.findings.front().message;
 }
 
+// The core under a driven winding of 1.5 ohm, seen by a sense winding of a tenth of its turns: what is left is the core's
+// 2 ohm and the loss in it.
+TEST(Sine, ASenseWindingShowsTheCoreAlone) {
+  DrivenSineBench bench;
+  bench.voltage_noise_v = 1e-5;
+  auto record = simulated_sine(bench);
+  for (double& v : record.capture.channels[0].samples) v /= 10;
+  SineRequest request = exact_sine_request(bench);
+  request.turns_ratio = StatedValue::unstated(10, Unit::one);
+  request.bench.winding_resistance = StatedValue::exact(1.5, Unit::ohm);
+  const Measurement m = measured_sine(record.capture, request);
+  EXPECT_TRUE(covers(m.find("R_s"), 2));
+  EXPECT_TRUE(covers(m.find("P"), record.truth.p_w));
+  const double current = record.truth.current_a;
+  ASSERT_NE(m.find("P_winding"), nullptr);
+  EXPECT_NEAR(m.find("P_winding")->quantity.value, current * current / 2 * 1.5, 1e-4 * current * current);
+  EXPECT_EQ(m.corrections.front().name, "turns ratio");
+
+  request.turns_ratio = StatedValue::rectangular(10, 0.5, Unit::one);
+  const Measurement loose = measured_sine(record.capture, request);
+  EXPECT_NEAR(loose.find("Z")->quantity.standard_uncertainty / loose.find("Z")->quantity.value, 0.05 / std::sqrt(3.0), 1e-3);
+}
+
 // Q 31: a millisecond of arc counts. Without the corrections R_s would be off by far more than its interval.
 TEST(Sine, SkewShuntInductanceAndDroopAreTakenOutExactly) {
   DrivenSineBench bench;
