@@ -5,12 +5,12 @@ set -eu
 program=${1:?name the program, build/bin/coilassay}
 to=${2:-$(dirname "$0")}
 
-# simulate NAME OPTION...: NAME.csv and NAME.truth.json
+# simulate KIND NAME OPTION...: NAME.csv and NAME.truth.json
 simulate() {
-  name=$1
-  shift
+  kind=$1 name=$2
+  shift 2
   # From inside the folder, as the truth names its capture.
-  (cd "$to" && "$program" simulate ringdown -o "$name.csv" --truth "$name.truth.json" --quiet "$@")
+  (cd "$to" && "$program" simulate "$kind" -o "$name.csv" --truth "$name.truth.json" --quiet "$@")
 }
 case $program in
   /*) ;;
@@ -25,16 +25,16 @@ scope="--bits 12 --full-scale 5V --noise 2mV $bench"
 
 # shellcheck disable=SC2086
 {
-simulate charging-coil --seed 11 $scope --inductance 24.3uH --resistance 0.21ohm --capacitor 22.0437nF \
+simulate ringdown charging-coil --seed 11 $scope --inductance 24.3uH --resistance 0.21ohm --capacitor 22.0437nF \
   --capacitor-dissipation 0.00037 --initial-current 80mA --interval 20ns --samples 12000
 
-simulate drum-47 --seed 12 $scope --inductance 46.2uH --resistance 0.36ohm --capacitor 10.0171nF \
+simulate ringdown drum-47 --seed 12 $scope --inductance 46.2uH --resistance 0.36ohm --capacitor 10.0171nF \
   --capacitor-dissipation 0.00026 --initial-current 50mA --interval 20ns --samples 12000
 
-simulate loading-coil --seed 13 $scope --inductance 815uH --resistance 9.4ohm --capacitor 1.0036nF \
+simulate ringdown loading-coil --seed 13 $scope --inductance 815uH --resistance 9.4ohm --capacitor 1.0036nF \
   --capacitor-dissipation 0.00022 --initial-current 4mA --interval 50ns --samples 10000
 
-simulate suppression-choke --seed 14 $scope --inductance 1.04mH --resistance 1.9ohm --capacitor 10.0171nF \
+simulate ringdown suppression-choke --seed 14 $scope --inductance 1.04mH --resistance 1.9ohm --capacitor 10.0171nF \
   --capacitor-dissipation 0.00026 --across 142.4ohm --initial-current 20mA --interval 50ns --samples 4000
 
 # The same old coil across three capacitors, one after another; its own capacitance is 68 pF.
@@ -44,22 +44,37 @@ for capacitor in 1.0033nF 4.6899nF 22.0437nF; do
     4.*) name=old-coil-4n7 seed=16 step=20ns ;;
     *) name=old-coil-22n seed=17 step=50ns ;;
   esac
-  simulate $name --seed $seed $scope --inductance 183uH --resistance 2.4ohm --parallel-capacitance 68pF \
+  simulate ringdown $name --seed $seed $scope --inductance 183uH --resistance 2.4ohm --parallel-capacitance 68pF \
     --capacitor $capacitor --capacitor-dissipation 0.00026 --initial-current 10mA --interval $step --samples 8000
 done
 
 # An old scope of 8 bits, set for 40 V although the ringing reaches only 3 V.
-simulate drum-coarse --seed 18 --bits 8 --full-scale 20V --noise 20mV $bench \
+simulate ringdown drum-coarse --seed 18 --bits 8 --full-scale 20V --noise 20mV $bench \
   --inductance 46.2uH --resistance 0.36ohm --capacitor 10.0171nF --capacitor-dissipation 0.00026 --initial-current 50mA \
   --interval 40ns --samples 8000
 
 # The range was chosen too small: the first crests are cut off.
-simulate drum-clipped --seed 19 --bits 12 --full-scale 2V --noise 2mV $bench \
+simulate ringdown drum-clipped --seed 19 --bits 12 --full-scale 2V --noise 2mV $bench \
   --inductance 46.2uH --resistance 0.36ohm --capacitor 10.0171nF --capacitor-dissipation 0.00026 --initial-current 50mA \
   --interval 20ns --samples 12000
 
 # The burst that fed the coil is still in the file: 60 us at 150 kHz, then the release.
-simulate charging-driven --seed 20 $scope --inductance 24.3uH --resistance 0.21ohm --capacitor 22.0437nF \
+simulate ringdown charging-driven --seed 20 $scope --inductance 24.3uH --resistance 0.21ohm --capacitor 22.0437nF \
   --capacitor-dissipation 0.00037 --initial-current 60mA --drive-time 60us --drive-frequency 150kHz --pretrigger 0.3 \
   --interval 20ns --samples 12000
+
+# The drum's coil driven by 12 V until its core gives way, through a shunt of 20 mohm; the probes' gains are a little off.
+simulate ramp drum-ramp --seed 21 --bits 10 --core powder --inductance 46.2uH --saturated-inductance 6uH --knee-current 2.6A \
+  --resistance 88mohm --supply 12V --switch-resistance 35mohm --peak-current 4.5A --freewheel --diode-voltage 6.2V \
+  --shunt 20.06mohm --shunt-inductance 1.4nH --skew 2.6ns --noise 12mV --current-noise 15mA --scale 1.004 \
+  --interval 10ns --samples 4800
+
+# The same at 100 kHz and a small level, through 1 ohm.
+simulate sine drum-sine --seed 22 --bits 12 --frequency 100kHz --amplitude 1.4V --inductance 46.2uH --resistance 0.31ohm \
+  --shunt 1.002ohm --shunt-inductance 2.2nH --skew 3.4ns --noise 0.6mV --current-noise 40uA --scale 0.997 \
+  --interval 40ns --samples 5000
+
+# Its winding by four wires: 88 mohm at 20 degC, the current turned round between readings.
+simulate resistance drum-resistance --seed 23 --resistance 88mohm --temperature 21.5degC --current 1A --thermal-offset 7uV \
+  --noise 2uV --current-noise 40uA --digit 1uV --current-digit 100uA --thermal-resistance 6
 }

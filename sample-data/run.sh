@@ -1,5 +1,5 @@
 #!/bin/sh
-# Installs what is missing, builds the program and measures the ring-downs of this folder: text here, a page each with figures
+# Installs what is missing, builds the program and measures the captures of this folder: text here, a page each with figures
 # in build/sample-reports/. A second run builds and installs nothing again.
 set -eu
 cd "$(dirname "$0")/.."
@@ -18,10 +18,10 @@ reports=$(pwd)/build/sample-reports
 mkdir -p "$reports"
 cd sample-data
 
-# measure NAME FILE... OPTION...: shows the command, its result, and leaves NAME.html.
+# measure COMMAND NAME FILE... OPTION...: shows the command, its result, and leaves NAME.html.
 measure() {
-  name=$1
-  shift
+  command=$1 name=$2
+  shift 2
   echo
   # As it would be typed: a bracket means something to the shell.
   typed=
@@ -31,23 +31,27 @@ measure() {
       *) typed="$typed $word" ;;
     esac
   done
-  echo "\$ coilassay ringdown$typed"
-  "$program" ringdown "$@" --report "$reports/$name.html"
+  echo "\$ coilassay $command$typed"
+  "$program" "$command" "$@" --report "$reports/$name.html"
 }
 
 # Without a capacitor: frequency, decay and Q, and what to try next.
-measure first-look drum-47.csv
+measure ringdown first-look drum-47.csv
 # Coils of the tide-gauge buoy (README.md has their story).
-measure drum-47 drum-47.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
-measure charging-coil charging-coil.csv --bench bench.toml --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0004±0.0001'
-measure loading-coil loading-coil.csv --bench bench.toml --capacitor '1.003nF±2pF(k=2)' --capacitor-dissipation '0.0002±0.0001'
-measure suppression-choke suppression-choke.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001' --across '143ohm±1%'
+measure ringdown drum-47 drum-47.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+measure ringdown charging-coil charging-coil.csv --bench bench.toml --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0004±0.0001'
+measure ringdown loading-coil loading-coil.csv --bench bench.toml --capacitor '1.003nF±2pF(k=2)' --capacitor-dissipation '0.0002±0.0001'
+measure ringdown suppression-choke suppression-choke.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001' --across '143ohm±1%'
 # One coil, three capacitors: its inductance and its own capacitance.
-measure old-coil old-coil-1n.csv old-coil-4n7.csv old-coil-22n.csv --bench bench.toml --capacitor '1.004nF±2pF(k=2)' --capacitor '4.688nF±5pF(k=2)' --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+measure ringdown old-coil old-coil-1n.csv old-coil-4n7.csv old-coil-22n.csv --bench bench.toml --capacitor '1.004nF±2pF(k=2)' --capacitor '4.688nF±5pF(k=2)' --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
 # Captures that went wrong in some way.
-measure drum-coarse drum-coarse.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
-measure drum-clipped drum-clipped.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
-measure charging-driven charging-driven.csv --bench bench.toml --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0004±0.0001'
+measure ringdown drum-coarse drum-coarse.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+measure ringdown drum-clipped drum-clipped.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
+measure ringdown charging-driven charging-driven.csv --bench bench.toml --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0004±0.0001'
+# The drum's coil driven: until its core gives way, with a steady sine, and by four wires.
+measure ramp drum-ramp drum-ramp.csv --bench ramp-bench.toml
+measure sine drum-sine drum-sine.csv --bench sine-bench.toml
+measure resistance drum-resistance drum-resistance.csv --temperature '21.4±0.5degC'
 
 echo
 echo "Pages with figures: build/sample-reports/"
