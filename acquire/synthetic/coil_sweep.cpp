@@ -40,7 +40,7 @@ Result<void> check(const CoilSweepBench& b) {
                         {"parallel capacitance", b.parallel_capacitance_f, Rule::not_negative},
                         {"parallel resistance", b.parallel_resistance_ohm, Rule::not_negative},
                         {"second frequency", b.second_frequency_hz, Rule::not_negative},
-                        {"second resistance", b.second_ohm, Rule::above_zero},
+                        {"second capacitance", b.second_capacitance_f, Rule::above_zero},
                         {"second Q", b.second_q, Rule::above_zero},
                         {"residual inductance", b.residual_inductance_h, Rule::any},
                         {"residual resistance", b.residual_resistance_ohm, Rule::any},
@@ -62,6 +62,9 @@ Result<void> check(const CoilSweepBench& b) {
     if (fine) continue;
     return refused(fmt::format("the {} is {}, which no bench can have", item.what, item.value),
                    item.rule == Rule::above_zero ? "give a value above zero" : item.rule == Rule::any ? "give a finite value" : "give zero or more");
+  }
+  if (b.proximity_ohm > 0 && !(kTwoPi * b.proximity_frequency_hz * b.inductance_h > b.proximity_ohm)) {
+    return refused("the proximity loss would take more than the whole inductance", "give a smaller resistance or a higher corner");
   }
   if (!(b.stop_hz > b.start_hz)) return refused("the sweep stops before it starts", "give a stop above the start");
   if (b.points < 2 || b.points > kMostPoints) {
@@ -148,17 +151,16 @@ Complex coil_impedance(const CoilSweepBench& b, double f) {
   Complex series(b.resistance_ohm, w * b.inductance_h);
   if (b.skin_ohm > 0) series += Complex(1, 1) * b.skin_ohm * std::sqrt(f / b.skin_frequency_hz);
   if (b.proximity_ohm > 0) {
-    const Complex x(0, f / b.proximity_frequency_hz);
-    series += b.proximity_ohm * x / (1.0 + x);
+    const double x = f / b.proximity_frequency_hz;
+    series += b.proximity_ohm * x * x / Complex(1, x);
   }
   Complex across(0, w * b.parallel_capacitance_f);
   if (b.parallel_resistance_ohm > 0) across += 1 / b.parallel_resistance_ohm;
-  Complex z = series / (1.0 + series * across);
   if (b.second_frequency_hz > 0) {
-    const double x = f / b.second_frequency_hz;
-    z += b.second_ohm / Complex(1, b.second_q * (x - 1 / x));
+    const double y = f / b.second_frequency_hz;
+    across += Complex(0, w * b.second_capacitance_f) / Complex(1 - y * y, y / b.second_q);
   }
-  return z;
+  return series / (1.0 + series * across);
 }
 
 Result<CoilSweepRecord> simulate_coil_sweep(const CoilSweepBench& b) {

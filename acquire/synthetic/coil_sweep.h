@@ -11,14 +11,13 @@
 
 namespace coilassay::synthetic {
 
-/// The coil is a series branch with a capacitance and a loss resistance across it, w = 2 pi f:
+/// The coil is a series branch with a capacitance, a loss resistance and perhaps a second tank across it, w = 2 pi f:
 ///
-///   Z_s = R + (1 + j) R_skin sqrt(f/f_skin) + R_prox j w tau/(1 + j w tau) + j w L,   tau = 1/(2 pi f_prox)
-///   Z   = 1/(1/Z_s + j w C + 1/R_par) + second resonance
+///   Z_s = R + j w L + (1 + j) R_skin sqrt(f/f_skin) + R_prox x^2/(1 + j x),   x = f/f_prox
+///   Z   = 1/(1/Z_s + j w C + 1/R_par + Y_2),   Y_2 = j w C_2/(1 - y^2 + j y/Q_2),   y = f/f_2
 ///
-/// The proximity term is a resistance that grows with f^2 below its corner and levels off above; what it takes from the
-/// inductance meanwhile is in it, so that L is the inductance far above the corner and L + R_prox tau that far below. The
-/// second resonance is a resistance, a coil and a capacitor in parallel, in series with the rest (one section of a winding).
+/// The proximity term grows with f^2 below its corner and levels off at R_prox above, where it has taken R_prox/(2 pi f_prox)
+/// from the inductance: a part of the coil with a resistance across it. L is the inductance at low frequency.
 struct CoilSweepBench {
   // coil; a resistance of 0 leaves its term out
   double inductance_h = 100e-6;
@@ -27,7 +26,7 @@ struct CoilSweepBench {
   double proximity_ohm = 0, proximity_frequency_hz = 10e6;
   double parallel_capacitance_f = 10e-12;
   double parallel_resistance_ohm = 0;
-  double second_frequency_hz = 0, second_ohm = 1e3, second_q = 20;   // frequency 0: none
+  double second_frequency_hz = 0, second_capacitance_f = 1e-12, second_q = 20;   // frequency 0: none
   // what stands between the coil and the analyser: Z_m = Z_short + 1/(1/Z + Y_open)
   double residual_inductance_h = 0, residual_resistance_ohm = 0, residual_capacitance_f = 0, residual_conductance_s = 0;
   // grid

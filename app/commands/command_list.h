@@ -21,6 +21,7 @@ Command simulate_ring_down_command();
 Command ramp_command();
 Command simulate_ramp_command();
 Command simulate_sine_command();
+Command simulate_sweep_command();
 Command resistance_command();
 Command simulate_resistance_command();
 Command help_command();

@@ -39,10 +39,20 @@ TEST(SyntheticSweep, LossLawsHaveTheirShapes) {
   EXPECT_NEAR(skin.real(), 4, 1e-12);
   EXPECT_NEAR(skin.imag() - kTwoPi * 4e6 * 1e-12, 4, 1e-12);
   bench.skin_ohm = 0;
+  bench.inductance_h = 1e-6;
   bench.proximity_ohm = 3;
   bench.proximity_frequency_hz = 1e6;
   EXPECT_NEAR(coil_impedance(bench, 1e6).real(), 1.5, 1e-12);
   EXPECT_NEAR(coil_impedance(bench, 2e3).real() / coil_impedance(bench, 1e3).real(), 4, 1e-4);
+  // Far above its corner a part of the inductance is gone.
+  EXPECT_NEAR(coil_impedance(bench, 1e9).imag() / (kTwoPi * 1e9), 1e-6 - 3 / (kTwoPi * 1e6), 1e-11);
+}
+
+// The second tank is a short where it resonates, but for 1/(w C Q).
+TEST(SyntheticSweep, SecondTankShortsTheCoilAtItsResonance) {
+  const CoilSweepBench bench{.second_frequency_hz = 2e7, .second_capacitance_f = 5e-12, .second_q = 100};
+  const double left = 1 / (kTwoPi * 2e7 * 5e-12 * 100);
+  EXPECT_NEAR(std::abs(coil_impedance(bench, 2e7)), left, 0.02 * left);
 }
 
 TEST(SyntheticSweep, NoiseHasTheStatedSizeAndTheSeedDecides) {

@@ -259,6 +259,7 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
   const std::map<std::string_view, std::vector<std::string>> lines = {
       {"ringdown", {ring, "--capacitor", "10nF"}},
       {"simulate ringdown", {"-o", folder / "new.csv"}},
+      {"simulate sweep", {"-o", folder / "new-sweep.csv"}},
   };
   for (const auto& [name, words] : lines) {
     const Command* command = find_command(name);
