@@ -33,6 +33,15 @@ Caution stored_energy(double energy_j, double peak_current_a, const char* where)
   return {"stored_energy", severity, message, energy_j, Unit::joule, kFromMemory};
 }
 
+/// `current`: what the clip would carry, in words.
+Caution earthed_scope(const std::string& current, double figure_a) {
+  return {"earthed_scope", Severity::note,
+          "on a scope whose inputs share earth the shunt must sit at the earthed end, with no clip between coil and shunt, or "
+          "the clip carries the coil's " + current +
+              "; the coil's voltage is then the difference of both inputs (--voltage-low)",
+          figure_a, Unit::ampere, kFromMemory};
+}
+
 }  // namespace
 
 std::vector<Caution> ring_down_cautions(double peak_voltage_v, double peak_current_a, double energy_j, bool at_release) {
@@ -74,6 +83,9 @@ std::vector<Caution> ramp_cautions(const RampLoad& load) {
                             " in the shunt: compare it with the shunt's pulse rating",
                         load.shunt_j, Unit::joule, kFromMemory});
   }
+  if (load.shares_earth) {
+    cautions.push_back(earthed_scope("peak of " + to_text(load.peak_a, Unit::ampere, Script::utf8, 3), load.peak_a));
+  }
   return cautions;
 }
 
@@ -95,12 +107,7 @@ std::vector<Caution> sine_cautions(const SineLoad& load) {
   }
   if (load.shares_earth) {
     const double rms_a = load.peak_a / std::sqrt(2.0);
-    cautions.push_back({"earthed_scope", Severity::note,
-                        "on a scope whose inputs share earth the shunt must sit at the earthed end, with no clip between coil "
-                        "and shunt, or the clip carries the coil's " +
-                            to_text(rms_a, Unit::ampere, Script::utf8, 3) +
-                            "; the coil's voltage is then the difference of both inputs (--voltage-low)",
-                        rms_a, Unit::ampere, kFromMemory});
+    cautions.push_back(earthed_scope(to_text(rms_a, Unit::ampere, Script::utf8, 3), rms_a));
   }
   return cautions;
 }

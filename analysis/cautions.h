@@ -23,9 +23,10 @@ struct RampLoad {
   bool winding_assumed = false;      // ... by a resistance nobody stated
   double shunt_j = std::nan("");     // in the shunt; NaN: none stated
   double period_s = std::nan("");    // of repeated pulses; NaN: one
+  bool shares_earth = false;         // shunt and coil on inputs of one earth, nothing subtracted
 };
 /// Energy at the peak current, flyback without a clamp (I sqrt(L/C) into an assumed 100 pF), heat per pulse and by
-/// repetition.
+/// repetition, where the shunt must sit on an earthed scope.
 std::vector<Caution> ramp_cautions(const RampLoad& load);
 
 /// What a steady sine does to coil and bench; peak values.

@@ -51,7 +51,11 @@ void add_ramp_cautions(Measurement& result, const RampStory& story) {
   load.fall_seen = pulse.returns;
   load.winding_j = story.resistance.error.value * square;
   load.winding_assumed = story.resistance.from == RampResistance::From::unknown;
-  if (story.request->bench.current.shunt) load.shunt_j = story.request->bench.current.shunt->value * square;
+  const BenchSetup& bench = story.request->bench;
+  if (bench.current.shunt) {
+    load.shunt_j = bench.current.shunt->value * square;
+    load.shares_earth = !bench.voltage.low_column && !bench.current.low_column;
+  }
   const auto& pulses = story.layout.pulses;
   if (pulses.size() > 1) {
     load.period_s = static_cast<double>(pulses.back().start - pulses.front().start) * story.layout.step_s /

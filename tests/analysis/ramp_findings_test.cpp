@@ -3,7 +3,11 @@
 
 #include <algorithm>
 #include <array>
+#include <map>
+#include <string>
+#include <vector>
 
+#include "analysis/cautions.h"
 #include "analysis/ramp.h"
 #include "tests/support/ramp_bench.h"
 
@@ -35,6 +39,27 @@ TEST(RampFindings, CleanRecordsRaiseNoAlarm) {
     alarms += alarm || m.find("I_sat_30") == nullptr ? 1 : 0;
   }
   EXPECT_LE(alarms, 1);
+}
+
+// 2 J at 20 A, an open end, a shunt on an earthed scope: each with its own number.
+TEST(RampCautions, SayEnergyFlybackHeatAndWhereTheShuntMustSit) {
+  const std::vector<Caution> cautions = ramp_cautions({.peak_a = 20,
+                                                       .energy_j = 2,
+                                                       .inductance_h = 10e-3,
+                                                       .fall_seen = false,
+                                                       .winding_j = 0.3,
+                                                       .shunt_j = 0.05,
+                                                       .period_s = 0.1,
+                                                       .shares_earth = true});
+  std::map<std::string, const Caution*> by_code;
+  for (const Caution& c : cautions) by_code[c.code] = &c;
+  ASSERT_EQ(by_code.size(), 5u);
+  EXPECT_EQ(by_code.at("stored_energy")->severity, Severity::caution);   // nothing is refused: it has been measured
+  EXPECT_NE(by_code.at("stored_energy")->message.find("stop"), std::string::npos);
+  EXPECT_NEAR(by_code.at("flyback")->figure, 20 * 1e4, 1);   // I sqrt(L/C), 10 mH into 100 pF
+  EXPECT_NE(by_code.at("pulse_heating")->message.find("3.0 W"), std::string::npos);
+  EXPECT_EQ(by_code.at("shunt_energy")->figure, 0.05);
+  EXPECT_EQ(by_code.at("earthed_scope")->figure, 20);
 }
 
 TEST(RampFindings, AKneeThatIsNotReachedIsABound) {
