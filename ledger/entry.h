@@ -51,10 +51,12 @@ struct EntryContent {
   std::string details;
 };
 
-/// Names in the body that come from the fields of EntryContent.
-inline constexpr std::array<std::string_view, 17> kEntryMembers{
-    "kind", "time", "part", "revision", "supplier", "sheet_sha256", "lot", "serial", "attempt", "verdict", "operator",
-    "instrument", "program", "sources", "corrects", "reason", "schema"};
+/// Names that `details` may not use: those of the fields of EntryContent.
+inline constexpr std::array<std::string_view, 22> kEntryMembers{
+    "schema", "kind", "time", "part", "revision", "supplier", "sheet_sha256", "lot", "serial", "attempt", "verdict",
+    "operator", "instrument", "program", "sources", "corrects", "reason",
+    // and those a document adds to a stored entry
+    "id", "previous", "hash", "body", "corrected_by"};
 
 /// A content that is stored.
 struct Entry {

@@ -14,6 +14,8 @@
 
 namespace coilassay {
 
+inline constexpr int kLedgerWait = 10;  // s
+
 enum class LedgerMode {
   create,     // for adding; made when it is not there
   append,     // for adding; must be there
@@ -26,6 +28,7 @@ struct LedgerRequest {
   /// A ledger holds one part. When given, one that holds another is refused; with create or append the first entry
   /// decides in any case.
   std::string part = {};
+  int wait_s = kLedgerWait;  // for other programs that hold the file
 };
 
 /// Largest number of entries that are stored, and synced, together.
@@ -66,7 +69,7 @@ inline constexpr std::size_t kMostFaults = 20;
 /// the object goes on working.
 ///
 /// Several processes may add to one file; each batch is one transaction that holds the file alone, waiting up to
-/// `kLedgerWait` seconds for the others. A ledger in use by one thread only.
+/// `wait_s` for the others. A ledger in use by one thread only.
 class Ledger {
  public:
   static Result<Ledger> open(const LedgerRequest& request);
@@ -113,7 +116,5 @@ class Ledger {
   explicit Ledger(std::unique_ptr<State> state);
   std::unique_ptr<State> state_;
 };
-
-inline constexpr int kLedgerWait = 10;
 
 }  // namespace coilassay
