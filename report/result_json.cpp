@@ -222,7 +222,13 @@ Json points(const std::vector<Point>& all) {
 
 }  // namespace
 
-std::string to_json(const Measurement& m, std::string_view program) {
+Json findings_document(const std::vector<Finding>& all) { return findings(all); }
+
+Json equipment_document(const std::vector<EquipmentItem>& items) { return equipment(items); }
+
+std::string to_json(const Measurement& m, std::string_view program) { return json_text(result_document(m, program)); }
+
+Json result_document(const Measurement& m, std::string_view program) {
   Json document = {{"schema", "coilassay.result/1"}, {"program", program}, {"test", m.test}};
   document["sources"] = sources(m.sources);
   document["conditions"] = conditions(m.conditions);
@@ -248,7 +254,7 @@ std::string to_json(const Measurement& m, std::string_view program) {
       document["points"] = rows(table);
     }
   }
-  return json_text(document);
+  return document;
 }
 
 std::string to_json(const Error& error) {

@@ -22,6 +22,7 @@ struct UnitTest {
   std::optional<std::string> bench_sheet;  // path
   BenchSetup stated;                       // replaces what the sheet says
   std::optional<double> from_s, to_s;
+  std::vector<double> at_hz;                           // where a fitted model is asked for values
   std::vector<StatedValue> dissipation_factors;        // ringdown: one for all capacitors, or one for each
   std::vector<StatedValue> biases;                     // sine: one for each capture
   std::optional<std::string> material;                 // resistance

@@ -1,0 +1,87 @@
+#include "app/runs/check_run.h"
+
+#include <algorithm>
+#include <cassert>
+#include <cmath>
+
+#include "base/outside_text.h"
+#include "report/json_writer.h"
+
+namespace coilassay {
+
+namespace {
+
+/// Whether an entry holds these very captures.
+bool same_sources(const EntryContent& a, const EntryContent& b) {
+  std::vector<std::string> x, y;
+  for (const EntrySource& source : a.sources) x.push_back(source.sha256);
+  for (const EntrySource& source : b.sources) y.push_back(source.sha256);
+  std::sort(x.begin(), x.end());
+  std::sort(y.begin(), y.end());
+  return x == y;
+}
+
+/// The measured value joins the readings, and the ledger unless it is in it.
+Result<void> take_reading(const Estimate& value, const std::vector<TestRun>& runs, const std::vector<Entry>& before,
+                          Ledger* ledger, const InspectionSetting& setting, std::vector<CheckReading>& readings) {
+  const EntryContent entry = check_entry(value, runs, setting);
+  const auto known = std::find_if(before.begin(), before.end(),
+                                  [&](const Entry& each) { return same_sources(each.content, entry); });
+  if (known != before.end()) return {};
+  if (ledger != nullptr) {
+    if (const Result<Entry> stored = ledger->append(entry); !stored) return failure(stored);
+  }
+  readings.push_back({setting.now, value.quantity.value});
+  return {};
+}
+
+}  // namespace
+
+std::optional<Estimate> check_value(const CheckStandard& standard, const std::vector<TestRun>& runs) {
+  for (const TestRun& run : runs) {
+    if (!standard.test.empty() && standard.test != run.test && standard.test != run.kind) continue;
+    const Estimate* estimate = run.measurement.find(standard.quantity);
+    if (estimate != nullptr && std::isfinite(estimate->quantity.value)) return *estimate;
+  }
+  return std::nullopt;
+}
+
+Result<CheckOutcome> run_check(const std::vector<PreparedTest>& tests, const std::optional<LotUnit>& captures,
+                               Ledger* ledger, const InspectionSetting& setting, const RunContext& context) {
+  assert(setting.sheet->check_standard);
+  const CheckStandard& standard = *setting.sheet->check_standard;
+  CheckOutcome outcome;
+  std::vector<CheckReading> readings;
+  std::vector<Entry> before;
+  if (ledger != nullptr) {
+    Result<std::vector<Entry>> entries = ledger->checks(json_safe(standard.serial));
+    if (!entries) return failure(entries);
+    before = std::move(*entries);
+    for (const Entry& entry : before) {
+      const Result<CheckReading> reading = check_reading_of(entry.content);
+      if (!reading) return failure(reading);
+      readings.push_back(*reading);
+    }
+  }
+  if (captures) {
+    const std::vector<TestRun> runs = run_tests(tests, *captures, false, context);
+    const std::optional<Estimate> value = check_value(standard, runs);
+    if (value) {
+      if (auto taken = take_reading(*value, runs, before, ledger, setting, readings); !taken) return failure(taken);
+    } else {
+      outcome.findings.push_back({"check_standard", Severity::caution,
+                                  "the captures of the check standard " + shown(standard.serial, 60) + " gave no " +
+                                      standard.quantity + ": capture it again",
+                                  standard.serial, 0, Unit::one});
+    }
+  }
+  outcome.chart = check_chart(standard, std::move(readings));
+  outcome.status = check_status(standard, outcome.chart, setting.now);
+  if (outcome.status.state != CheckState::good) {
+    outcome.findings.push_back({"check_standard", Severity::caution, outcome.status.why, standard.serial,
+                                static_cast<double>(outcome.chart.readings.size()), Unit::one});
+  }
+  return outcome;
+}
+
+}  // namespace coilassay
