@@ -11,7 +11,7 @@ packages_to_build='
 packages_to_run='gnuplot-nox'
 
 # What the tests need besides: their framework, the schema check, and other programs to compare with.
-packages_to_test='libgmock-dev libgtest-dev libvalijson-dev ngspice python3-numpy python3-scipy sqlite3'
+packages_to_test='dpkg-dev file libgmock-dev libgtest-dev libvalijson-dev ngspice python3-numpy python3-scipy sqlite3'
 
 # need_packages <package...>: installs those that are missing; without any missing it changes nothing and asks for nothing.
 need_packages() {

@@ -15,5 +15,6 @@ function(coilassay_room name)
   target_link_libraries(coilassay_${name}
     PUBLIC ${room_PUBLIC}
     PRIVATE ${room_PRIVATE} $<BUILD_INTERFACE:coilassay_warnings>)
-  set_target_properties(coilassay_${name} PROPERTIES VERIFY_INTERFACE_HEADER_SETS ON)
+  set_target_properties(coilassay_${name} PROPERTIES VERIFY_INTERFACE_HEADER_SETS ON EXPORT_NAME ${name})
+  set_property(GLOBAL APPEND PROPERTY COILASSAY_ROOMS coilassay_${name})
 endfunction()
