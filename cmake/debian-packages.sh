@@ -4,14 +4,14 @@
 # What the program is built with. The compiler cache is not needed, but once the tests brought it, all would be compiled again.
 packages_to_build='
   ccache cmake g++ ninja-build pkg-config
-  libboost-dev libceres-dev libcli11-dev libeigen3-dev libexpected-dev libfftw3-dev libfmt-dev libsndfile1-dev libsoci-dev libsqlite3-dev libssl-dev
-  libtomlplusplus-dev libutfcpp-dev libzstd-dev nlohmann-json3-dev zlib1g-dev'
+  libboost-dev libceres-dev libcli11-dev libeigen3-dev libexpected-dev libfftw3-dev libfmt-dev libre2-dev libserialport-dev libsndfile1-dev
+  libsoci-dev libsqlite3-dev libssl-dev libtomlplusplus-dev libutfcpp-dev libzstd-dev nlohmann-json3-dev zlib1g-dev'
 
 # What the program starts as a child: figures. PDF reports also need chromium, which is large and therefore left to who wants them.
 packages_to_run='gnuplot-nox'
 
 # What the tests need besides: their framework, the schema check, and other programs to compare with.
-packages_to_test='dpkg-dev file libgmock-dev libgtest-dev libvalijson-dev ngspice python3-numpy python3-scipy sqlite3'
+packages_to_test='dpkg-dev file libgmock-dev libgtest-dev libvalijson-dev ngspice python3-numpy python3-scipy socat sqlite3'
 
 # need_packages <package...>: installs those that are missing; without any missing it changes nothing and asks for nothing.
 need_packages() {

@@ -12,6 +12,8 @@ find_package(OpenSSL 3 REQUIRED COMPONENTS Crypto)
 find_package(utf8cpp REQUIRED)
 find_package(Boost 1.74 REQUIRED)  # headers only: Boost.Math distributions
 pkg_check_modules(FFTW REQUIRED IMPORTED_TARGET fftw3)
+pkg_check_modules(RE2 REQUIRED IMPORTED_TARGET re2)
+pkg_check_modules(SERIALPORT REQUIRED IMPORTED_TARGET libserialport)
 pkg_check_modules(SNDFILE REQUIRED IMPORTED_TARGET sndfile)
 pkg_check_modules(ZSTD REQUIRED IMPORTED_TARGET libzstd)
 find_package(ZLIB REQUIRED)
