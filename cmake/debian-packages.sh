@@ -13,6 +13,9 @@ packages_to_run='gnuplot-nox'
 # What the tests need besides: their framework, the schema check, and other programs to compare with.
 packages_to_test='dpkg-dev file libgmock-dev libgtest-dev libvalijson-dev ngspice python3-numpy python3-scipy socat sqlite3'
 
+# What tests/proof.sh compares speed with, besides.
+packages_to_compare='python3-pandas'
+
 # need_packages <package...>: installs those that are missing; without any missing it changes nothing and asks for nothing.
 need_packages() {
   if ! command -v dpkg-query >/dev/null 2>&1 || ! command -v apt-get >/dev/null 2>&1; then

@@ -38,8 +38,8 @@ double drawn(Random& random, bool any_bits) {
 
 }  // namespace
 
-int main() {
-  constexpr std::size_t kEach = 2'000'000;
+int main(int argc, char** argv) {
+  const std::size_t kEach = argc > 1 ? static_cast<std::size_t>(std::atoll(argv[1])) : 2'000'000;
   std::size_t wrong = 0;
   for (const bool any_bits : {false, true}) {
     for (const char* form : {"{:.8e}", "{:.6f}", "{:.5e}", "{:g}", "{:.9g}", "{:.12g}", "{:.15g}", "{:.17g}", "{:.18e}", "{}", "{:.3f}", "{:.0f}",
