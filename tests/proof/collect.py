@@ -57,6 +57,13 @@ def machine():
             "python": platform.python_version(), "compiler": compiler[0] if compiler else "unknown", "program": program}
 
 
+def shortened(lines, head=12, tail=30):
+    """Long tables of cells are left to docs/proof.json; what they come to stands at their end."""
+    if len(lines) <= head + tail + 5:
+        return lines
+    return [*lines[:head], f"... {len(lines) - head - tail} more lines in proof.json ...", *lines[-tail:]]
+
+
 def page(document):
     m = document["machine"]
     text = ["# Proof", "",
@@ -65,7 +72,7 @@ def page(document):
             f"{m['program']}, {document['date']}; {m['processor']}, {m['cores']} cores, load {m['load_before']} before the run; "
             f"{m['compiler']}; {m['system']}.", ""]
     if document["quick"]:
-        text += ["**A quick run**: few trials each, so that the figures scatter. The full sizes are the programs' defaults.", ""]
+        text += ["**A quick run**: few trials each, so that the figures scatter and the limits give way for it. The full sizes are the programs' defaults.", ""]
     text += ["| program | | seconds |", "|---|---|---|"]
     for r in document["results"]:
         text.append(f"| [{r['name']}](#{r['name']}) | {'holds' if r['holds'] else '**does not hold**'} | {r['seconds']} |")
@@ -76,7 +83,7 @@ def page(document):
             command = " ".join([f"build/bin/{'proof_' if kind == 'proof' else ''}{r['name']}", *r["arguments"]])
             text += [f"### {r['name']}", "", "```", *r["claim"].splitlines(), "```", "",
                      f"`{command}`: {'holds' if r['holds'] else '**does not hold**, exit code ' + str(r['exit_code'])}", "",
-                     "```", *r["output"], "```", ""]
+                     "```", *shortened(r["output"]), "```", ""]
     return "\n".join(text).rstrip() + "\n"
 
 

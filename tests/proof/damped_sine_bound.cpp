@@ -22,6 +22,7 @@
 #include "base/random.h"
 #include "fitting/damped_sine.h"
 #include "tests/fitting/ringing.h"
+#include "tests/proof/slack.h"
 
 namespace {
 
@@ -32,6 +33,7 @@ constexpr unsigned kThreads = 2;
 
 int percent = 100;
 bool all_kept = true;
+Slack slack;
 
 std::size_t of_full(std::size_t records) {
   return std::max<std::size_t>(1, records * static_cast<std::size_t>(percent) / 100);
@@ -64,6 +66,12 @@ struct Errors {
   double honesty() const { return std::sqrt(stated / square); }
   double coverage() const { return 100 * static_cast<double>(covered) / static_cast<double>(count); }
 };
+
+/// 93 to 97 %, as far as so few records can tell.
+bool within(const Errors& e) {
+  const double give = 100 * slack.share(static_cast<double>(e.count));
+  return e.coverage() >= 93 - give && e.coverage() <= 97 + give;
+}
 
 struct Record {
   bool fitted = false;
@@ -141,10 +149,10 @@ void prove_bound() {
       failed += lost;
     }
   }
-  claim(pooled[0].ratio() <= 1.05, "variance of a over the bound, pooled", pooled[0].ratio(), 1.05);
-  claim(pooled[1].ratio() <= 1.05, "variance of the frequency over the bound, pooled", pooled[1].ratio(), 1.05);
+  claim(pooled[0].ratio() <= 1.05 + slack.variance(static_cast<double>(pooled[0].count)), "variance of a over the bound, pooled", pooled[0].ratio(), 1.05);
+  claim(pooled[1].ratio() <= 1.05 + slack.variance(static_cast<double>(pooled[1].count)), "variance of the frequency over the bound, pooled", pooled[1].ratio(), 1.05);
   for (const Errors& e : pooled) {
-    claim(e.coverage() >= 93 && e.coverage() <= 97, "coverage, pooled (93 to 97)", e.coverage(), 95);
+    claim(within(e), "coverage, pooled (93 to 97)", e.coverage(), 95);
   }
   claim(failed == 0, "failed fits", static_cast<double>(failed), 0);
 }
@@ -220,10 +228,10 @@ void prove_rounding(bool fixed_signal) {
       }
     }
   }
-  claim(worst >= 88, "worst cell with noise of at least half a step, coverage", worst, 88);
-  claim(dithered.coverage() >= 93 && dithered.coverage() <= 97, "coverage with dither, pooled (93 to 97)",
+  claim(worst >= 88 || !slack.judges_cells(), "worst cell with noise of at least half a step, coverage", worst, 88);
+  claim(within(dithered), "coverage with dither, pooled (93 to 97)",
         dithered.coverage(), 95);
-  claim(undithered.coverage() >= 93, "coverage with noise under 0.3 steps, pooled", undithered.coverage(), 93);
+  claim(undithered.coverage() >= 93 - 100 * slack.share(static_cast<double>(undithered.count)), "coverage with noise under 0.3 steps, pooled", undithered.coverage(), 93);
   claim(failed == 0, "failed fits", static_cast<double>(failed), 0);
 }
 
@@ -304,13 +312,14 @@ void prove_two_modes() {
     }
   }
   claim(failed == 0, "failed fits of two modes", static_cast<double>(failed), 0);
-  claim(pooled.ratio() <= 1.3, "variance of the decay rates over the bound, pooled", pooled.ratio(), 1.3);
+  claim(pooled.ratio() <= 1.3 + slack.variance(static_cast<double>(pooled.count)), "variance of the decay rates over the bound, pooled", pooled.ratio(), 1.3);
 }
 
 }  // namespace
 
 int main(int argc, char** argv) {
   if (argc > 1) percent = std::max(1, std::atoi(argv[1]));
+  slack.full = percent >= 100;
   prove_bound();
   prove_no_failures();
   prove_rounding(false);
