@@ -10,7 +10,10 @@ set(CMAKE_CXX_FLAGS_RELWITHDEBINFO "-O2 -g1")
 # Reproducible digits: no fused multiply-add behind our back. Reproducible objects: no absolute paths.
 add_compile_options(-ffp-contract=off -ffile-prefix-map=${PROJECT_SOURCE_DIR}=.)
 
-if(COILASSAY_SANITIZE)
+if(COILASSAY_SANITIZE STREQUAL "thread")
+  add_compile_options(-O1 -fno-omit-frame-pointer -fsanitize=thread)
+  add_link_options(-fsanitize=thread)
+elseif(COILASSAY_SANITIZE)
   # vptr needs type information that some Debian libraries do not export.
   add_compile_options(-O1 -fno-omit-frame-pointer -fsanitize=address,undefined -fno-sanitize=vptr
                       -fno-sanitize-recover=undefined)
