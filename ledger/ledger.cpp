@@ -199,8 +199,17 @@ Result<Entry> Ledger::entry(std::int64_t id) const {
   Result<std::vector<Entry>> found = entries(state_->store, "e.id = ?", {id}, View::recorded);
   if (!found) return failure(found);
   if (found->empty()) {
-    return refused(path(), "there is no entry " + std::to_string(id), "coilassay ledger list shows what there is");
+    return failure(Problem::usage, path(), "there is no entry " + std::to_string(id), "coilassay ledger list shows what there is");
   }
+  return std::move(found->front());
+}
+
+Result<std::optional<Entry>> Ledger::entry_of_hash(const std::string& beginning) const {
+  // By comparing, not by a pattern: nothing in the text has a meaning of its own.
+  Result<std::vector<Entry>> found = entries(state_->store, "substr(e.hash, 1, length(?)) = ? ORDER BY e.id LIMIT 1",
+                                             {beginning, beginning}, View::recorded);
+  if (!found) return failure(found);
+  if (found->empty()) return std::nullopt;
   return std::move(found->front());
 }
 

@@ -86,8 +86,10 @@ class Ledger {
   Result<LedgerHead> head() const;
   /// Of the first entry; empty when there is none yet.
   Result<std::string> part() const;
-  /// As it was recorded. ledger when there is none of that number.
+  /// As it was recorded. usage when there is none of that number.
   Result<Entry> entry(std::int64_t id) const;
+  /// The entry whose hash begins so; none, or the first of several.
+  Result<std::optional<Entry>> entry_of_hash(const std::string& beginning) const;
   /// As they were recorded, in the order of their ids.
   Result<std::vector<Entry>> find(const EntryQuery& query) const;
   /// Corrections that point to an entry, oldest first.

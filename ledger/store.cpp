@@ -4,6 +4,7 @@
 #include <fcntl.h>
 #include <soci/soci.h>
 #include <soci/sqlite3/soci-sqlite3.h>
+#include <sys/resource.h>
 #include <sys/stat.h>
 #include <unistd.h>
 
@@ -83,7 +84,12 @@ tl::unexpected<Error> LedgerStore::trouble(int code) const {
     case SQLITE_IOERR: {
       int system = 0;
       api::sqlite3_file_control(session_->handle(), "main", SQLITE_FCNTL_LAST_ERRNO, &system);
-      if (system == EFBIG) return failed(path_, "the file would be larger than is allowed here", "raise the limit (ulimit -f)");
+      // Of a journal's write nothing more is known than that it failed.
+      rlimit limit{};
+      const bool limited = ::getrlimit(RLIMIT_FSIZE, &limit) == 0 && limit.rlim_cur != RLIM_INFINITY;
+      if (system == EFBIG || (system == 0 && limited && code == SQLITE_IOERR_WRITE)) {
+        return failed(path_, "the file would be larger than is allowed here", "raise the limit (ulimit -f)");
+      }
       if (system == EDQUOT || system == ENOSPC) return trouble(SQLITE_FULL);
       return failed(path_, "the disk reports an error" + (system == 0 ? "" : ": " + std::generic_category().message(system)),
                     "keep the file as it is, and look after the disk");

@@ -191,7 +191,10 @@ Result<Arguments> read_arguments(const Command& command, const std::vector<std::
   const std::size_t given = arguments.words().size();
   const std::string name = "coilassay " + std::string(command.name);
   if (given < expected.least) {
-    return failure(Problem::usage, name, "no " + std::string(expected.name) + " is given", usage_of(command));
+    const bool several = expected.name.find(' ') != std::string_view::npos;
+    return failure(Problem::usage, name,
+                   several ? "it needs " + std::string(expected.name) : "no " + std::string(expected.name) + " is given",
+                   usage_of(command));
   }
   if (given > expected.most) {
     return failure(Problem::usage, name,

@@ -33,7 +33,8 @@ std::string usage_of(const Command& command) {
   const Positional& words = command.positional;
   if (!words.name.empty()) {
     std::string word(words.name);
-    if (words.most > 1) word += "...";
+    const bool one_each = word.find(' ') != std::string::npos;  // "FILE ID"
+    if (words.most > 1 && !one_each) word += "...";
     usage += words.least == 0 ? " [" + word + "]" : " " + word;
   }
   return usage + " [options]";

@@ -66,7 +66,7 @@ struct OptionGroup {
 
 /// The words of a command that are no options.
 struct Positional {
-  std::string_view name = {};  // "FILE"; empty: there are none
+  std::string_view name = {};  // "FILE"; "FILE ID" for one of each; empty: there are none
   std::string_view help = {};
   std::size_t least = 0;
   std::size_t most = 0;

@@ -20,6 +20,7 @@ std::string_view environment(const char* name) {
 
 void prepare_process() {
   std::signal(SIGPIPE, SIG_IGN);
+  std::signal(SIGXFSZ, SIG_IGN);  // a file at its size limit fails like a full disk, with a sentence
   // The wrong direction on purpose: reading from or writing to it fails as it does on a closed stream.
   for (const int stream : {STDIN_FILENO, STDOUT_FILENO, STDERR_FILENO}) {
     if (fcntl(stream, F_GETFD) != -1) continue;
