@@ -12,6 +12,7 @@
 #include "base/quantity.h"
 #include "base/result.h"
 #include "base/unit.h"
+#include "base/utc_time.h"
 
 namespace coilassay {
 
@@ -110,6 +111,7 @@ struct Sampling {
   std::uint64_t seed = 1;       // of the draw of positions
   std::uint64_t accept = 0;     // all: nonconforming units a lot may hold
   bool undecided_set_aside = false;  // else counted as nonconforming; not_comparable too
+  std::optional<UtcTime> resumed;    // lots before it do not count: inspection begins anew with `severity`
 };
 
 enum class RetestUse { first, mean };

@@ -7,8 +7,8 @@
 #include <string>
 #include <vector>
 
-#include "base/finding.h"
 #include "base/result.h"
+#include "base/utc_time.h"
 #include "inspection/part_sheet.h"
 #include "inspection/verdict.h"
 
@@ -53,8 +53,8 @@ struct LotDecision {
   std::string why;
   /// variables: mean, standard deviation between units, the indices (U - mean)/s and (mean - L)/s.
   std::optional<double> mean, deviation, upper_index, lower_index;
+  std::optional<double> fraction_estimated;  // variables: nonconforming in the lot, estimated from these
   bool between_accept_and_reject = false;  // reduced: accepted, and back to normal
-  std::vector<Finding> findings;
 };
 
 /// Decides from the sample's verdicts (those of choose_sample, one for each unit, as they stand after retests).
@@ -75,13 +75,15 @@ std::vector<OperatingPoint> operating_characteristic(const SamplingPlan& plan);
 
 /// One lot of the past, oldest first, original inspections only.
 struct LotHistory {
+  UtcTime time{};
   LotResult decision = LotResult::undecided;
   Severity105 severity = Severity105::normal;
   bool between_accept_and_reject = false;
 };
 
-/// Severity of the next lot by the switching rules of MIL-STD-105E, 4.7, and ISO 2859-1 for the end (five lots in all not
-/// accepted on tightened inspection); reduced only when the sheet allows it.
+/// Severity of the next lot (docs/formulas.md#switching): normal to tightened when 2 of 5 or fewer lots in a row were
+/// rejected, back after 5 accepted in a row, discontinued after 5 in all rejected on tightened; reduced after 10 accepted
+/// in a row where the sheet allows it. Lots before the sheet's `resumed` date do not count.
 struct NextSeverity {
   Severity105 severity = Severity105::normal;
   std::string why;

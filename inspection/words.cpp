@@ -6,6 +6,7 @@
 #include "inspection/readiness.h"
 #include "inspection/sampling.h"
 #include "inspection/verdict.h"
+#include "inspection/words.h"
 
 namespace coilassay {
 
@@ -68,6 +69,8 @@ std::string_view name(CheckState state) {
   }
   return "";
 }
+
+std::string percent_in_words(double ratio) { return fmt::format("{:.4g} %", 100 * ratio); }
 
 std::string limits_in_words(const Limit& limit) {
   const auto text = [&](double value) { return to_text(value, limit.unit); };
