@@ -336,7 +336,7 @@ Result<void> Inspection::decide() {
   record_.statistics = lot_values(all);
   std::vector<LotHistory> with_this = history_;
   if (record_.decision.decision != LotResult::undecided) {
-    with_this.push_back({record_.decision.decision, record_.plan->severity, record_.decision.between_accept_and_reject});
+    with_this.push_back({record_.when, record_.decision.decision, record_.plan->severity, record_.decision.between_accept_and_reject});
   }
   record_.next = next_severity(record_.sheet.sampling, with_this);
   if (!ledger_) return {};

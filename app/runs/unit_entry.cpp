@@ -162,6 +162,7 @@ Result<LotHistory> lot_history_of(const EntryContent& entry) {
   const auto plan = details.find("plan");
   if (entry.kind != EntryKind::lot || plan == details.end() || !plan->is_object()) return broken(entry);
   LotHistory history;
+  history.time = entry.time;
   const auto between = details.find("between_accept_and_reject"), word = plan->find("severity");
   if (word == plan->end() || !word->is_string()) return broken(entry);
   history.between_accept_and_reject = between != details.end() && between->is_boolean() && between->get<bool>();
