@@ -64,6 +64,40 @@ std::vector<std::complex<double>> fourier(std::span<const double> samples) {
   return bins;
 }
 
+struct RepeatedFourier::State {
+  struct Free {
+    void operator()(double* p) const { fftw_free(p); }
+    void operator()(fftw_complex* p) const { fftw_free(p); }
+  };
+  std::size_t samples = 0;
+  std::unique_ptr<double, Free> in;
+  std::unique_ptr<fftw_complex, Free> out;
+  Plan plan;
+};
+
+RepeatedFourier::RepeatedFourier(std::size_t samples) : state_(std::make_unique<State>()) {
+  assert(samples > 0);
+  state_->samples = samples;
+  state_->in.reset(fftw_alloc_real(samples));
+  state_->out.reset(fftw_alloc_complex(samples / 2 + 1));
+  const std::lock_guard lock(planner());
+  state_->plan.reset(fftw_plan_dft_r2c_1d(static_cast<int>(samples), state_->in.get(), state_->out.get(),
+                                          FFTW_ESTIMATE | FFTW_DESTROY_INPUT));
+  assert(state_->plan && "FFTW plans every length");
+}
+
+RepeatedFourier::~RepeatedFourier() {
+  const std::lock_guard lock(planner());
+  state_->plan.reset();
+}
+
+std::span<double> RepeatedFourier::input() { return {state_->in.get(), state_->samples}; }
+
+std::span<const std::complex<double>> RepeatedFourier::run() {
+  fftw_execute(state_->plan.get());
+  return {reinterpret_cast<const std::complex<double>*>(state_->out.get()), state_->samples / 2 + 1};
+}
+
 std::vector<double> power_spectrum(std::span<const double> samples) {
   double mean = 0;
   for (const double v : samples) mean += v;
