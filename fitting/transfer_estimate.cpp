@@ -158,27 +158,36 @@ double random_error_of(double coherence, double averages) {
 }
 
 WhiteNoise white_noise_of(const TransferSpectra& spectra, std::span<const std::size_t> bins) {
-  // 1 - g of a bin scatters in proportion to itself, by 1/sqrt(averages): weights from a first look, then again from the
-  // model, so that a bin that happens to be low does not pull more than others.
-  const double averages = spectra.averages();
+  // 1 - g of a bin scatters in proportion to itself, by 1/sqrt(averages). Weights come from the bins themselves first: a bin
+  // with leakage then counts little; afterwards from the model, and such bins are left out.
+  const double averages = spectra.averages(), chance = 1 / std::sqrt(averages);
+  constexpr double kTooMuch = 2.5;
   WhiteNoise noise;
-  double least_seen = 0;
-  for (int round = 0; round < 3; ++round) {
-    double aa = 0, ab = 0, bb = 0, ac = 0, bc = 0;
+  for (int round = 0; round < 12; ++round) {
+    double aa = 0, ab = 0, bb = 0, ac = 0, bc = 0, squares = 0;
+    std::size_t used = 0;
     for (const std::size_t k : bins) {
-      const double a = 1 / spectra.xx[k], b = 1 / spectra.yy[k], c = 1 - spectra.coherence(k);
-      const double model = round == 0 ? c + 1e-12 : noise.x * a + noise.y * b;
-      if (!(model > 0)) continue;
+      const double a = 1 / spectra.xx[k], b = 1 / spectra.yy[k], left = 1 - spectra.coherence(k);
+      // The coherence comes out too large by left²/averages.
+      const double c = left + left * left / averages + a * noise.x * b * noise.y;
+      const double model = round == 0 ? c : noise.x * a + noise.y * b;
+      if (!(model > 0) || c > model * (1 + kTooMuch * chance)) continue;
+      // Once the level is about right, on both sides: what is left over by chance must not be cut off on one.
+      if (round > 3 && c < model * (1 - kTooMuch * chance)) continue;
       const double weight = averages / (model * model);
       aa += weight * a * a;
       ab += weight * a * b;
       bb += weight * b * b;
       ac += weight * a * c;
       bc += weight * b * c;
+      squares += averages * (c / model - 1) * (c / model - 1);
+      ++used;
     }
+    if (used == 0) break;
+    noise.used = used;
+    noise.misfit = squares / static_cast<double>(used);
     const double determinant = aa * bb - ab * ab;
-    least_seen = aa > 0 && bb > 0 ? determinant / (aa * bb) : 0;
-    noise.told_apart = least_seen > 1e-6;
+    noise.told_apart = determinant > 1e-6 * aa * bb;
     if (noise.told_apart) {
       noise.x = (ac * bb - bc * ab) / determinant;
       noise.y = (bc * aa - ac * ab) / determinant;
@@ -195,6 +204,8 @@ WhiteNoise white_noise_of(const TransferSpectra& spectra, std::span<const std::s
     }
     if (!(noise.x + noise.y > 0)) break;
   }
+  noise.u_x *= std::fmax(1, noise.misfit);
+  noise.u_y *= std::fmax(1, noise.misfit);
   return noise;
 }
 

@@ -43,11 +43,14 @@ double random_error_of(double coherence, double averages);
 struct WhiteNoise {
   double x = 0, y = 0;
   double u_x = 0, u_y = 0;      // standard uncertainties
-  bool told_apart = false;      // false: the bins cannot tell whose noise it is; the total may be either's
+  bool told_apart = false;      // false: the bins cannot tell whose noise it is
+  std::size_t used = 0;         // bins that agree with it
+  double misfit = 0;            // their mean squared deviation by what chance leaves: 1 when the noise is white
 };
 
-/// What one common signal leaves over, 1 - g = x/xx + y/yy, over the given bins: least squares with x, y not negative. It needs
-/// the ratio of the records to vary over frequency, which that of a coil does.
+/// What one common signal leaves over when both records have white noise, (1 - x/xx)(1 - y/yy) = g, over the given bins: least
+/// squares with x, y not negative. It needs the ratio of the records to vary over frequency, which that of a coil does.
+/// Bins that leave over more than the others say (leakage near a resonance or a steep edge) are not used.
 WhiteNoise white_noise_of(const TransferSpectra& spectra, std::span<const std::size_t> bins);
 
 }  // namespace coilassay
