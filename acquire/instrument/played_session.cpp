@@ -64,7 +64,6 @@ class PlayedSession final : public ByteStream {
         waiting_.erase(0, n);
         return n;
       }
-      if (next_ == events_.size() && patience > Span::zero()) return lost("the recorded session is over");
       if (now >= deadline) return 0;
       SteadyTime until = deadline;
       if (next_ < events_.size() && !events_[next_].sent) until = std::min(until, due(events_[next_]));

@@ -29,6 +29,8 @@ Command ledger_show_command();
 Command ledger_verify_command();
 Command ledger_export_command();
 Command ledger_correct_command();
+Command acquire_command();
+Command simulate_instrument_command();
 Command help_command();
 Command man_command();
 Command completion_command();

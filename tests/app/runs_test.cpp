@@ -14,6 +14,7 @@
 #include "base/digest.h"
 #include "tests/app/fake_console.h"
 #include "tests/report/schema_check.h"
+#include "tests/support/instrument_bench.h"
 #include "tests/support/program.h"
 
 namespace coilassay::test {
@@ -256,9 +257,14 @@ TEST(RingDownCommand, EndsWithThreeWhenThereIsNothingToMeasure) {
 TEST(Commands, LookAtEveryOptionTheyDeclare) {
   const TemporaryFolder folder;
   const std::string ring = folder.file("ring.csv", ring_csv());
+  synthetic::StandInSetup setup;
+  setup.profile = parsed_profile(meter_profile_text("localhost:1"));
+  const ServedStandIn meter(setup);
+  const std::string profile = folder.file("meter.toml", meter_profile_text(meter.address()));
   const std::map<std::string_view, std::vector<std::string>> lines = {
       {"ringdown", {ring, "--capacitor", "10nF"}},
       {"simulate ringdown", {"-o", folder / "new.csv"}},
+      {"acquire", {profile, "-o", folder / "run.csv", "--count", "1"}},
       {"simulate sweep", {"-o", folder / "new-sweep.csv"}},
   };
   for (const auto& [name, words] : lines) {

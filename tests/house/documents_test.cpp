@@ -8,6 +8,7 @@
 #include <set>
 #include <string>
 
+#include "analysis/reading.h"
 #include "analysis/resistance.h"
 #include "analysis/ring_down.h"
 #include "base/number_text.h"
@@ -195,6 +196,7 @@ TEST(Documents, DefaultTolerancesAreThoseOfTheCode) {
       {"gain of a voltmeter, readings of a winding", "±" + to_shortest(100 * resistance_defaults::kMeterVoltageRatio) + " %"},
       {"gain of an ammeter, readings of a winding", "±" + percent(resistance_defaults::kMeterCurrentRatio)},
       {"thermal offset, one polarity only", "±" + to_text(resistance_defaults::kThermalOffset_v, Unit::volt, Script::utf8, 2)},
+      {"accuracy of an instrument, not stated in its profile", "±" + percent(reading_defaults::kAccuracyRatio)},
       {"temperature of a winding or of the air", "±" + to_text(resistance_defaults::kTemperature_k, Unit::kelvin, Script::utf8, 1)},
       {"temperature coefficient of the wire", "±" + percent(resistance_defaults::kCoefficientRatio)},
       {"cold resistance of a winding", "±" + percent(resistance_defaults::kColdRatio)},
