@@ -78,6 +78,13 @@ std::size_t CircuitEquations::numbers() const {
   return count;
 }
 
+double CircuitEquations::rounding() const {
+  constexpr double kDigits = 4e-15;   // of ln z and S, after some ten operations
+  double chi = 0;
+  for (const Row& row : rows_) chi += kDigits * kDigits * (row.w11 * row.w11 + row.w22 * row.w22);
+  return chi;
+}
+
 void CircuitEquations::weigh(std::span<const double> weights) {
   assert(weights.size() == rows_.size());
   for (std::size_t i = 0; i < rows_.size(); ++i) rows_[i].weight = weights[i];
@@ -92,6 +99,17 @@ std::complex<double> CircuitEquations::raw_residual(const Row& row, Complex z) c
 
 std::complex<double> CircuitEquations::residual(const Circuit& circuit, std::size_t row) const {
   return raw_residual(rows_[row], impedance(circuit, rows_[row].f));
+}
+
+std::complex<double> CircuitEquations::whitened(std::size_t row, Complex error) const {
+  const Row& at = rows_[row];
+  return {at.w11 * error.real(), at.w21 * error.real() + at.w22 * error.imag()};
+}
+
+std::complex<double> CircuitEquations::unwhitened(std::size_t row, Complex residual) const {
+  const Row& at = rows_[row];
+  const double real = residual.real() / at.w11;
+  return {real, at.w22 > 0 ? (residual.imag() - at.w21 * real) / at.w22 : 0};
 }
 
 double CircuitEquations::chi_square(const Circuit& circuit) const {
@@ -140,11 +158,83 @@ void CircuitEquations::look(const Circuit& circuit, std::span<const double> unit
   }
 }
 
+namespace {
+
+/// A sweep may show L far better than what is left of it above the corner of a relaxation, or the other way round; in the wrong
+/// coordinates the valley is bent, and a descent crawls. The others are the logarithms of (1-k)L, kL and tau in place of L, k and R_rel.
+class Coordinates {
+ public:
+  Coordinates(const Circuit& circuit, HeldParameters held, const CircuitMatrix& normal) {
+    using P = CircuitParameter;
+    if (!circuit.family.relaxation || circuit[P::relaxation_share] > 0.99 || held != 0) return;
+    const auto order = parameters_of(circuit.family);
+    for (std::size_t i = 0; i < order.size(); ++i) {
+      if (order[i] == P::inductance) inductance_ = static_cast<Eigen::Index>(i);
+      if (order[i] == P::relaxation_resistance) resistance_ = static_cast<Eigen::Index>(i);
+      if (order[i] == P::relaxation_share) share_ = static_cast<Eigen::Index>(i);
+    }
+    // Variances of ln L and of ln (1-k)L, by the inverse of the normal matrix.
+    const double k = circuit[P::relaxation_share], weight = -k / (1 - k);
+    CircuitMatrix regular = normal;
+    for (std::size_t i = 0; i < kCircuitParameters; ++i) {
+      const auto at = static_cast<Eigen::Index>(i);
+      regular(at, at) = i < order.size() ? regular(at, at) * (1 + 1e-12) + 1e-300 : 1;
+    }
+    const Eigen::LDLT<CircuitMatrix> solver(regular);
+    CircuitVector whole = CircuitVector::Zero(), rest = CircuitVector::Zero();
+    whole[inductance_] = rest[inductance_] = 1;
+    rest[share_] = weight;
+    other_ = rest.dot(solver.solve(rest)) < whole.dot(solver.solve(whole));
+    if (!other_) return;
+    // Row by row: ln L, ln R_rel, ln k by ln (1-k)L, ln tau, ln kL, which take their places.
+    turn_.setIdentity();
+    turn_(inductance_, inductance_) = 1 - k;
+    turn_(inductance_, share_) = k;
+    turn_(resistance_, share_) = 1;
+    turn_(share_, share_) = 1 - k;
+    turn_(share_, inductance_) = k - 1;
+  }
+
+  void turn(CircuitMatrix& normal, CircuitVector& gradient) const {
+    if (!other_) return;
+    normal = turn_.transpose() * normal * turn_;
+    gradient = turn_.transpose() * gradient;
+  }
+
+  /// The circuit one step further.
+  Circuit stepped(const Circuit& from, const CircuitVector& step, HeldParameters held) const {
+    using P = CircuitParameter;
+    constexpr double kLargestStep = 3;   // in a logarithm: a factor of 20
+    const auto order = parameters_of(from.family);
+    std::array<double, kCircuitParameters> factor{};
+    Circuit to = from;
+    for (std::size_t i = 0; i < order.size(); ++i) {
+      factor[i] = std::exp(std::clamp(step[static_cast<Eigen::Index>(i)], -kLargestStep, kLargestStep));
+      if ((held >> i & 1U) == 0) to[order[i]] = std::clamp(to[order[i]] * factor[i], 1e-60, 1e60);
+      if (order[i] == P::relaxation_share) to[order[i]] = std::min(to[order[i]], 1.0);
+    }
+    if (!other_) return to;
+    const auto at = [&](Eigen::Index i) { return factor[static_cast<std::size_t>(i)]; };
+    const double l = from[P::inductance], k = from[P::relaxation_share];
+    const double rest = (1 - k) * l * at(inductance_), share = k * l * at(share_);
+    to[P::inductance] = rest + share;
+    to[P::relaxation_share] = share / (rest + share);
+    to[P::relaxation_resistance] = from[P::relaxation_resistance] * at(share_) * at(resistance_);
+    return to;
+  }
+
+ private:
+  bool other_ = false;
+  Eigen::Index inductance_ = 1, resistance_ = 0, share_ = 0;
+  CircuitMatrix turn_;
+};
+
+}  // namespace
+
 SettledCircuit descend(const CircuitEquations& equations, const Circuit& start, HeldParameters held, int most_iterations,
                        double settled) {
   const auto order = parameters_of(start.family);
   const std::size_t n = order.size();
-  constexpr double kLargestStep = 3;   // in a logarithm: a factor of 20
   SettledCircuit best;
   best.circuit = start;
   std::array<double, kCircuitParameters> unit{};
@@ -157,11 +247,14 @@ SettledCircuit descend(const CircuitEquations& equations, const Circuit& start, 
   if (!std::isfinite(best.chi)) return best;
   best.stop = FitStop::max_iterations;
   const auto rows = static_cast<double>(equations.size());
+  const double rounding = equations.rounding();
   double damping = 1e-3;
   CircuitNormal trial_normal;
   for (; best.iterations < most_iterations; ++best.iterations) {
     CircuitMatrix damped = best.last.normal;
     CircuitVector gradient = best.last.gradient;
+    const Coordinates coordinates(best.circuit, held, best.last.normal);
+    coordinates.turn(damped, gradient);
     for (std::size_t k = 0; k < kCircuitParameters; ++k) {
       const auto i = static_cast<Eigen::Index>(k);
       const bool stuck = k < n && order[k] == CircuitParameter::relaxation_share &&
@@ -182,19 +275,12 @@ SettledCircuit descend(const CircuitEquations& equations, const Circuit& start, 
       break;
     }
     const double gain = -gradient.dot(step);
-    const bool small = gain < settled * best.chi / rows;
+    const bool small = gain < std::fmax(settled * best.chi / rows, rounding);
     if (small && damping <= 1e-3) {   // not worth another look; what is left of chi-square is known
       best.stop = FitStop::converged;
       break;
     }
-    Circuit trial = best.circuit;
-    for (std::size_t i = 0; i < n; ++i) {
-      const double s = std::clamp(step[static_cast<Eigen::Index>(i)], -kLargestStep, kLargestStep);
-      double& value = trial[order[i]];
-      if ((held >> i & 1U) == 0) value *= std::exp(s);
-      if (order[i] == CircuitParameter::relaxation_share) value = std::min(value, 1.0);
-      value = std::clamp(value, 1e-60, 1e60);
-    }
+    const Circuit trial = coordinates.stepped(best.circuit, step, held);
     equations.look(trial, units_of(trial), trial_normal);
     if (trial_normal.chi <= best.chi) {
       best.circuit = trial;

@@ -33,6 +33,7 @@ class CircuitEquations {
   std::size_t size() const { return rows_.size(); }
   std::size_t numbers() const;   // real residuals: two a row where both parts are measured
   double frequency_hz(std::size_t row) const { return rows_[row].f; }
+  double rounding() const;       // chi-square that the last digits of the arithmetic make
   /// Further weight of each row (Huber); 1 without.
   void weigh(std::span<const double> weights);
 
@@ -41,6 +42,9 @@ class CircuitEquations {
   double chi_square(const Circuit& circuit) const;
   /// Whitened residual of one row, without Huber's weight.
   std::complex<double> residual(const Circuit& circuit, std::size_t row) const;
+  /// An error of ln z (or S) of one row in units of its standard deviations, and back (0 where nothing was measured).
+  std::complex<double> whitened(std::size_t row, std::complex<double> error) const;
+  std::complex<double> unwhitened(std::size_t row, std::complex<double> residual) const;
 
  private:
   struct Row {

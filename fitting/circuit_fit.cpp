@@ -18,12 +18,14 @@ using P = CircuitParameter;
 constexpr int kMostIterations = 200;
 constexpr double kSettled = 1e-9;      // of a step, in squared standard uncertainties
 constexpr double kFewSettled = 1e-3;
+constexpr int kQuickIterations = 40;
+constexpr double kQuickSettled = 1e-4;
 constexpr std::size_t kManyPoints = 800;
 constexpr double kVisible = 4;         // information of a logarithm below which it is called not seen by the descent
 
 /// A logarithm whose parameter has become too small to matter has no slope and never comes back: it is put where it would be
 /// just visible, and the better result kept.
-void rescue(const CircuitEquations& equations, SettledCircuit& best) {
+void rescue(const CircuitEquations& equations, SettledCircuit& best, int most_iterations, double settled) {
   const auto order = parameters_of(best.circuit.family);
   for (std::size_t i = 0; i < order.size(); ++i) {
     const auto k = static_cast<Eigen::Index>(i);
@@ -42,7 +44,7 @@ void rescue(const CircuitEquations& equations, SettledCircuit& best) {
     for (const double factor : {3.0, 30.0}) {
       Circuit start = best.circuit;
       start[order[i]] = factor * visible;
-      const SettledCircuit next = descend(equations, start, 0, kMostIterations, kSettled);
+      const SettledCircuit next = descend(equations, start, 0, most_iterations, settled);
       if (next.chi < best.chi) best = next;
     }
   }
@@ -169,9 +171,11 @@ Result<CircuitFit> fit_circuit(const CircuitData& data, const CircuitFamily& fam
     const SettledCircuit nearer = descend(some, *start, 0, kMostIterations, kFewSettled);
     if (nearer.stop == FitStop::converged) start = nearer.circuit;
   }
-  SettledCircuit settled = descend(equations, *start, 0, kMostIterations, kSettled);
-  rescue(equations, settled);
-  if (settled.stop != FitStop::converged || !std::isfinite(settled.chi)) {
+  const int most = options.quick ? kQuickIterations : kMostIterations;
+  const double settled_at = options.quick ? kQuickSettled : kSettled;
+  SettledCircuit settled = descend(equations, *start, 0, most, settled_at);
+  rescue(equations, settled, most, settled_at);
+  if ((settled.stop != FitStop::converged && !options.quick) || !std::isfinite(settled.chi)) {
     return failure(Problem::not_converged, "sweep", "no circuit of the kind " + name(family) + " follows the sweep", "");
   }
   fill_statistics(data, points, equations, settled, result);

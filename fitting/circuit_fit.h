@@ -80,6 +80,7 @@ struct CircuitFitOptions {
   double reference_hz = 0;          // of R_skin and R_rel; 0: geometric mean of the lowest and the highest frequency
   std::optional<Circuit> start{};   // begin here and nowhere else
   bool limits = true;               // false: no profile likelihoods; `limits` stays empty
+  bool quick = false;               // stop at a hundredth of a standard uncertainty: enough to compare circuits
 };
 
 /// Fits one family by least squares of (ln z_model - ln z)/u, or of (S_model - S)/u, over the logarithms of the parameters with

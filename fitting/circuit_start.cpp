@@ -135,7 +135,7 @@ std::vector<Circuit> with_skin(const Circuit& from) {
   return list;
 }
 
-std::vector<Circuit> with_relaxation(const Circuit& from) {
+std::vector<Circuit> with_relaxation(const Circuit& from, double largest_z) {
   std::vector<Circuit> list;
   const double w_ref = kTwoPi * from.reference_hz, x = w_ref * from[P::inductance];
   // Corners below, at and above the middle of the sweep, each with small and large shares; R_rel = k L w_ref^2/w_corner.
@@ -147,6 +147,14 @@ std::vector<Circuit> with_relaxation(const Circuit& from) {
       c[P::relaxation_resistance] = share * x / corner;
       list.push_back(c);
     }
+  }
+  // And all of L with a resistance across it, as a parallel loss.
+  for (const double factor : {0.03, 0.3, 1.0}) {
+    Circuit c = from;
+    c.family.relaxation = true;
+    c[P::relaxation_share] = 1;
+    c[P::relaxation_resistance] = x * x * factor / largest_z;
+    list.push_back(c);
   }
   return list;
 }
@@ -209,14 +217,12 @@ Circuit extend_circuit(const CircuitEquations& equations, const Circuit& smaller
     for (const Circuit& start : starts) follow(equations, start, best);
   };
   if (family.skin && !best.circuit.family.skin) grow(with_skin(best.circuit));
-  if (family.relaxation && !best.circuit.family.relaxation) grow(with_relaxation(best.circuit));
-  if (family.parallel_loss && !best.circuit.family.parallel_loss) {
-    double largest = 0;
-    for (std::size_t i = 0; i < equations.size(); ++i) {
-      largest = std::fmax(largest, std::abs(impedance(best.circuit, equations.frequency_hz(i))));
-    }
-    grow(with_parallel_loss(best.circuit, largest));
+  double largest = 0;
+  for (std::size_t i = 0; i < equations.size(); ++i) {
+    largest = std::fmax(largest, std::abs(impedance(best.circuit, equations.frequency_hz(i))));
   }
+  if (family.relaxation && !best.circuit.family.relaxation) grow(with_relaxation(best.circuit, largest));
+  if (family.parallel_loss && !best.circuit.family.parallel_loss) grow(with_parallel_loss(best.circuit, largest));
   if (family.second_resonance && !best.circuit.family.second_resonance) grow(with_second_resonance(best.circuit, equations));
   return best.circuit;
 }

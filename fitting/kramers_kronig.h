@@ -3,6 +3,7 @@
 
 #include <complex>
 #include <cstddef>
+#include <optional>
 #include <vector>
 
 #include "base/result.h"
@@ -13,23 +14,26 @@ namespace coilassay {
 struct KramersKronig {
   std::vector<double> frequency_hz;             // of the points used, rising
   std::vector<std::size_t> index;               // of each of them in the data
-  std::vector<std::complex<double>> residual;   // relative: (z - z_model)/|z|, of each of them
-  std::vector<double> predicted_u;              // of each residual's parts by the errors of the data
-  std::size_t elements = 0;                     // of the chain of relaxations
-  double mu = 1;                                // how far positive and negative elements have begun to play against each other
-  double chi_square = 0, dof = 0;
-  double probability = 1;                       // of so large a chi-square by chance; small: the sweep as a whole is not causal
-  double scale = 1;                             // residuals are this many times u (1 when the scale is known)
+  std::vector<std::complex<double>> residual;   // of ln z (relative error, phase in rad): data less causal model, of each of them
+  std::vector<double> predicted_u;              // standard deviation of the parts of each residual by the errors of the data
+  std::size_t elements = 0;                     // relaxations in the model
+  double mu = 1;                                // how little positive and negative ones play against each other
+  double chi_square = 0, dof = 0;               // of the points that are not in not_causal, by u
+  double scale = 1;                             // errors are this many times u (1 when the scale is known)
+  double probability = 1;                       // of so large a chi-square, or such likeness of neighbours, by chance
   std::vector<std::size_t> not_causal;          // indices in the data of points beyond what chance explains
   bool passed = true;                           // no such point, and the probability not below 1 in 2000
 };
 
-/// The linear Kramers-Kronig test (Boukamp, J. Electrochem. Soc. 142 (1995) 1885): a model that is causal whatever its
+/// The linear Kramers-Kronig test (Boukamp, J. Electrochem. Soc. 142 (1995) 1885) of ln z: a model that is causal whatever its
 /// coefficients is fitted by linear least squares, so what it does not follow is not causal. The number of elements follows the
-/// data (Schoenleber, Klotz, Ivers-Tiffee, Electrochim. Acta 131 (2014) 20).
+/// data (Schoenleber, Klotz, Ivers-Tiffee, Electrochim. Acta 131 (2014) 20, and chi-square).
 ///
-/// @return too_few_samples: fewer than 10 points, or no phase; rank_deficient.
+/// `about`: a circuit near the data, the chosen one; being causal itself it does not change the question, it only lets
+/// resonances be followed. Nothing: R L C with skin and parallel loss is fitted first.
+///
+/// @return too_few_samples: fewer than 12 points, or no phase; what fit_circuit returns when `about` is missing.
 /// @see docs/formulas.md#causality
-Result<KramersKronig> test_kramers_kronig(const CircuitData& data);
+Result<KramersKronig> test_kramers_kronig(const CircuitData& data, const std::optional<Circuit>& about = std::nullopt);
 
 }  // namespace coilassay

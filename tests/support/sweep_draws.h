@@ -1,4 +1,4 @@
-// Sweeps of R, L, C, parallel loss and skin loss over a broad range of coils, made by a formula of their own.
+// Sweeps of R, L, C, parallel loss, skin loss and a relaxation over a broad range of coils, made by a formula of their own.
 #pragma once
 
 #include <cmath>
@@ -12,6 +12,7 @@ namespace coilassay::test {
 
 struct SweepTruth {
   double r = 0, l = 0, c = 0, g = 0, skin = 0;   // g: parallel; skin: at the reference frequency
+  double share = 0, corner_hz = 1;               // of l, with a resistance across it that ends its work beyond the corner
   double low_hz = 0, high_hz = 0;
   double reference_hz() const { return std::sqrt(low_hz * high_hz); }
   double resonance_hz() const { return 1 / (2 * std::numbers::pi * std::sqrt(l * c)); }
@@ -20,7 +21,8 @@ struct SweepTruth {
 inline std::complex<double> impedance_of(const SweepTruth& t, double f) {
   const double w = 2 * std::numbers::pi * f;
   const std::complex<double> j(0, 1);
-  const std::complex<double> series = t.r + (1.0 + j) * t.skin * std::sqrt(f / t.reference_hz()) + j * w * t.l;
+  const std::complex<double> series = t.r + (1.0 + j) * t.skin * std::sqrt(f / t.reference_hz()) + j * w * t.l * (1 - t.share) +
+                                      j * w * t.l * t.share / (1.0 + j * f / t.corner_hz);
   return 1.0 / (1.0 / series + j * w * t.c + t.g);
 }
 
