@@ -266,6 +266,7 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
       {"simulate ringdown", {"-o", folder / "new.csv"}},
       {"acquire", {profile, "-o", folder / "run.csv", "--count", "1"}},
       {"simulate sweep", {"-o", folder / "new-sweep.csv"}},
+      {"simulate burst", {"-o", folder / "new-burst.csv"}},
   };
   for (const auto& [name, words] : lines) {
     const Command* command = find_command(name);
