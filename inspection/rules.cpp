@@ -10,6 +10,7 @@ namespace {
 /// The value between two limits at which a unit is most likely to conform; the probability rises to it and falls after it.
 double best_value(const ValueLaw& law, double min, double max) {
   double low = min, high = max;
+  if (law.symmetric()) return (min + max) / 2;
   for (int i = 0; i < 100; ++i) {
     const double a = low + (high - low) / 3, b = high - (high - low) / 3;
     if (law.about(a).inside(min, max) < law.about(b).inside(min, max)) {
@@ -30,7 +31,7 @@ double guard_inside(const ValueLaw& law, double risk, std::optional<double> min,
   none = law.about(best).inside(min, max) < 1 - risk;
   if (none) return near_min ? law.reach_down(risk) : law.reach_up(risk);
   double in = best, out = near_min ? *min : *max;
-  for (int i = 0; i < 100; ++i) {
+  for (int i = 0; i < 60; ++i) {
     const double middle = (in + out) / 2;
     (law.about(middle).inside(min, max) >= 1 - risk ? in : out) = middle;
   }

@@ -70,7 +70,7 @@ double dof_of(double k, double confidence) {
   const double upto = (1 + confidence) / 2;
   if (k >= student_t_quantile(upto, 1)) return 1;
   double low = 0, high = std::log(kManyDof);
-  for (int i = 0; i < 80; ++i) {
+  for (int i = 0; i < 45; ++i) {
     const double middle = (low + high) / 2;
     (student_t_quantile(upto, std::exp(middle)) > k ? low : high) = middle;
   }

@@ -34,6 +34,7 @@ class ValueLaw {
 
   double value() const { return value_; }
   double u() const { return u_; }
+  bool symmetric() const { return u_down_ == u_up_; }
   double half_width() const;      // of the 95 % interval, the larger half
   double low() const;             // the 95 % interval
   double high() const;
