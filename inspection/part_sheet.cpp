@@ -28,6 +28,8 @@ void read_part(SheetSection& section, PartSheet& sheet) {
   sheet.revision = section.text("revision").value_or("");
   sheet.supplier = section.text("supplier").value_or("");
   sheet.description = section.text("description").value_or("");
+  sheet.serial_pattern = section.text("serial").value_or("");
+  sheet.serial_place = section.place("serial");
 }
 
 /// The symbol a key names; std::nullopt, and an error, when there is none such.
@@ -212,6 +214,7 @@ void read_sampling(SheetSection& section, Sampling& sampling) {
 void read_retest(SheetSection& section, Retest& retest) {
   if (const auto attempts = section.count("attempts", 1, 1000)) retest.attempts = *attempts;
   if (section.choice("use", {"first", "mean"}) == "mean") retest.use = RetestUse::mean;
+  retest.reasons = section.texts("reasons");
 }
 
 CheckStandard read_check_standard(SheetSection& section) {

@@ -118,6 +118,7 @@ enum class RetestUse { first, mean };
 struct Retest {
   std::uint64_t attempts = 1;
   RetestUse use = RetestUse::first;
+  std::vector<std::string> reasons;  // why a unit may be measured again; a station takes their numbers, from 1
 };
 
 /// A named artefact measured at the start of a shift, to see what certificates cannot.
@@ -136,6 +137,7 @@ struct PartSheet {
   std::string path;
   std::string sha256;             // of the sheet's bytes
   std::string name, revision, supplier, description;
+  std::string serial_pattern, serial_place;  // RE2 pattern of a whole serial number, for stations; empty: any
   std::vector<Limit> limits;
   ConditionTolerances tolerances;
   std::vector<TestPlan> tests;

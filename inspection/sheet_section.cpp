@@ -149,6 +149,15 @@ std::optional<std::chrono::year_month_day> SheetSection::date(std::string_view k
   return std::nullopt;
 }
 
+std::vector<std::string> SheetSection::texts(std::string_view key) {
+  const auto list = table_.texts(key);
+  if (!list) {
+    note(list.error());
+    return {};
+  }
+  return list->value_or(std::vector<std::string>{});
+}
+
 std::optional<std::string> SheetSection::text(std::string_view key) {
   const auto read = table_.text(key);
   if (!read) {

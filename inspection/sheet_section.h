@@ -41,6 +41,7 @@ class SheetSection {
   std::optional<bool> flag(std::string_view key);
   std::optional<std::chrono::year_month_day> date(std::string_view key);
   std::optional<std::string> text(std::string_view key);             // not empty
+  std::vector<std::string> texts(std::string_view key);              // a list; empty when the key is absent
   std::optional<std::string> raw_text(std::string_view key) const;   // as it stands, when it is text at all
   std::optional<std::string> choice(std::string_view key, std::initializer_list<std::string_view> allowed);
   std::optional<SheetSection> section(std::string_view key);
