@@ -135,22 +135,25 @@ Answer<void> Conversation::silence(SteadyTime until) {
   for (;;) {
     const SteadyTime now = Clock::now();
     const SteadyTime end = std::max(until, last_byte + quiet);
-    if (now >= end) break;
+    if (now >= end) {
+      // This process may have slept while bytes came: it was quiet only if nothing waits either.
+      const auto waiting = drained();
+      if (!waiting) return tl::make_unexpected(waiting.error());
+      if (*waiting == 0) return {};
+      last_byte = Clock::now();
+    }
     if (now > std::max(until, begun) + most) {
       return tl::make_unexpected(upset(Trouble::never_quiet, "it talks without being asked and without end",
                                        "leave 'ask' out of [reading] if it prints lines by itself"));
     }
     if (was_stopped()) return tl::make_unexpected(upset(Trouble::stopped, "stopped"));
-    auto got = stream_->read(block, std::min<Span>(end - now, kSlice));
+    auto got = stream_->read(block, std::clamp<Span>(end - now, Span::zero(), kSlice));
     if (!got) return tl::make_unexpected(lost(got.error()));
     if (*got > 0) {
       counts_.stale_bytes += *got;
       last_byte = Clock::now();
     }
   }
-  const auto rest = drained();
-  if (!rest) return tl::make_unexpected(rest.error());
-  return {};
 }
 
 /// What waits in the line this very moment, thrown away.

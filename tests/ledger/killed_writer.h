@@ -41,7 +41,7 @@ struct KillTally {
   }
 }
 
-/// One start, one kill after up to 60 ms, then a look at the file.
+/// One start, one kill a moment after up to ten batches were acknowledged, then a look at the file.
 inline void kill_once(const std::string& path, Random& random, std::uint64_t seed, KillTally& tally) {
   int ends[2];
   if (::pipe(ends) != 0) return;
@@ -51,13 +51,17 @@ inline void kill_once(const std::string& path, Random& random, std::uint64_t see
     add_until_killed(path, ends[1], seed);
   }
   ::close(ends[1]);
-  std::this_thread::sleep_for(std::chrono::microseconds(static_cast<int>(60e3 * random.uniform())));
+  // Counted in batches and not in time alone: a slow disk or a busy machine must not leave the writers without a chance.
+  std::int64_t last = 0;
+  const auto batches = static_cast<int>(11 * random.uniform());
+  for (int i = 0; i < batches && ::read(ends[0], &last, sizeof last) == sizeof last; ++i) tally.acknowledged = last;
+  std::this_thread::sleep_for(std::chrono::microseconds(static_cast<int>(15e3 * random.uniform())));
   ::kill(child, SIGKILL);
   int status = 0;
   ::waitpid(child, &status, 0);
   ++tally.kills;
   if (WIFEXITED(status)) tally.trouble = "the writer ended by itself with " + std::to_string(WEXITSTATUS(status));
-  for (std::int64_t last = 0; ::read(ends[0], &last, sizeof last) == sizeof last;) tally.acknowledged = last;
+  while (::read(ends[0], &last, sizeof last) == sizeof last) tally.acknowledged = last;
   ::close(ends[0]);
 
   const auto ledger = Ledger::open({.path = path});
