@@ -118,10 +118,11 @@ double CircuitEquations::chi_square(const Circuit& circuit) const {
   return chi;
 }
 
-void CircuitEquations::look(const Circuit& circuit, std::span<const double> unit, CircuitNormal& result) const {
-  const std::size_t n = unit.size();
-  std::array<double, kCircuitParameters> re{}, im{}, gradient{};
-  std::array<std::array<double, kCircuitParameters>, kCircuitParameters> normal{};
+/// With a number of parameters that the compiler knows, the sums stay in registers.
+template <std::size_t n>
+void CircuitEquations::look_at(const Circuit& circuit, std::span<const double> unit, CircuitNormal& result) const {
+  std::array<double, n> re{}, im{}, gradient{};
+  std::array<std::array<double, n>, n> normal{};
   std::array<Complex, kCircuitParameters> slopes;
   result.chi = 0;
   for (const Row& row : rows_) {
@@ -155,6 +156,19 @@ void CircuitEquations::look(const Circuit& circuit, std::span<const double> unit
       const auto a = static_cast<Eigen::Index>(i), b = static_cast<Eigen::Index>(j);
       result.normal(a, b) = result.normal(b, a) = normal[i][j];
     }
+  }
+}
+
+void CircuitEquations::look(const Circuit& circuit, std::span<const double> unit, CircuitNormal& result) const {
+  switch (unit.size()) {
+    case 3: return look_at<3>(circuit, unit, result);
+    case 4: return look_at<4>(circuit, unit, result);
+    case 5: return look_at<5>(circuit, unit, result);
+    case 6: return look_at<6>(circuit, unit, result);
+    case 7: return look_at<7>(circuit, unit, result);
+    case 8: return look_at<8>(circuit, unit, result);
+    case 9: return look_at<9>(circuit, unit, result);
+    default: assert(unit.size() == kCircuitParameters); return look_at<kCircuitParameters>(circuit, unit, result);
   }
 }
 

@@ -54,6 +54,8 @@ class CircuitEquations {
     double weight = 1;
   };
   std::complex<double> raw_residual(const Row& row, std::complex<double> z) const;
+  template <std::size_t N>
+  void look_at(const Circuit& circuit, std::span<const double> unit, CircuitNormal& result) const;
 
   bool ratio_ = true;
   double reference_ = 50;

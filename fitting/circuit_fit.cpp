@@ -65,10 +65,21 @@ void fill_statistics(const CircuitData& data, const std::vector<std::size_t>& po
   result.scale = data.scale_known ? 1 : std::sqrt(result.chi_square / result.dof);
   for (auto& r : result.residual) r /= result.scale > 0 ? result.scale : 1;
 
-  std::array<double, kCircuitParameters> one{};
-  std::fill_n(one.begin(), n, 1.0);
-  CircuitNormal natural;
-  equations.look(settled.circuit, std::span<const double>(one).first(n), natural);
+  // From logarithms to the parameters themselves; where one is so small that this loses digits, by another look.
+  CircuitNormal natural = settled.last;
+  bool lost = false;
+  for (std::size_t i = 0; i < n; ++i) {
+    const double value = settled.circuit[result.order[i]];
+    const auto k = static_cast<Eigen::Index>(i);
+    lost = lost || !(settled.last.normal(k, k) > 1e-200);
+    natural.normal.row(k) /= value;
+    natural.normal.col(k) /= value;
+  }
+  if (lost) {
+    std::array<double, kCircuitParameters> one{};
+    std::fill_n(one.begin(), n, 1.0);
+    equations.look(settled.circuit, std::span<const double>(one).first(n), natural);
+  }
   // Equal diagonal first: the parameters differ by many orders of magnitude.
   Eigen::MatrixXd normal = natural.normal.topLeftCorner(count, count);
   const Eigen::VectorXd unit = normal.diagonal().cwiseMax(std::numeric_limits<double>::min()).cwiseSqrt().cwiseInverse();
