@@ -4,12 +4,9 @@
 #include <cstring>
 #include <new>
 
+#include "acquire/read_block.h"
+
 namespace coilassay {
-namespace {
-
-constexpr std::size_t kBlock = std::size_t{1} << 20U;
-
-}  // namespace
 
 DigestedBytes::DigestedBytes(ByteSource& inner) : inner_(inner), reader_([this] { read_ahead(); }) {}
 
@@ -50,7 +47,7 @@ void DigestedBytes::read_ahead() {
 /// An exception must not leave the reading thread.
 Result<std::size_t> DigestedBytes::fill(std::vector<char>& block) {
   try {
-    block.resize(kBlock);
+    block.resize(kReadBlock);
     return inner_.read(block);
   } catch (const std::bad_alloc&) {
     return failure(Problem::unreadable, name(), "there is not enough memory to read it", "close other programs and try again");

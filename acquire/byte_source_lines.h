@@ -6,6 +6,7 @@
 #include <string_view>
 #include <vector>
 
+#include "acquire/read_block.h"
 #include "acquire/reader.h"
 
 namespace coilassay {
@@ -20,7 +21,7 @@ struct LineBlock {
 
 class LineBlocks {
  public:
-  static constexpr std::size_t kBlock = std::size_t{1} << 20U;
+  static constexpr std::size_t kBlock = kReadBlock;
 
   explicit LineBlocks(ByteSource& source) : source_(source) {}
 

@@ -8,12 +8,13 @@
 #include <cmath>
 #include <cstring>
 
+#include "acquire/read_block.h"
 #include "base/outside_text.h"
 
 namespace coilassay {
 namespace {
 
-constexpr std::size_t kBlock = std::size_t{1} << 20U;
+constexpr std::size_t kBlock = kReadBlock;
 constexpr std::size_t kMostBytes = std::size_t{8} << 30U;
 constexpr int kMostChannels = 256;
 

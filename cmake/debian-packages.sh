@@ -16,6 +16,9 @@ packages_to_test='dpkg-dev file libgmock-dev libgtest-dev libvalijson-dev ngspic
 # What tests/proof.sh compares speed with, besides.
 packages_to_compare='python3-pandas'
 
+# What looking for broken inputs needs besides (tests/fuzz.sh).
+packages_to_fuzz='clang-19 libclang-rt-19-dev'
+
 # need_packages <package...>: installs those that are missing; without any missing it changes nothing and asks for nothing.
 need_packages() {
   if ! command -v dpkg-query >/dev/null 2>&1 || ! command -v apt-get >/dev/null 2>&1; then

@@ -5,6 +5,7 @@
 #include "app/commands/measuring.h"
 #include "app/commands/shared_options.h"
 #include "app/runs/ledger_run.h"
+#include "app/runs/measure_again.h"
 #include "base/outside_text.h"
 #include "report/ledger_csv.h"
 #include "report/ledger_json.h"
@@ -78,16 +79,28 @@ Result<ExitCode> run_show(const Arguments& arguments, Console& console) {
   if (!entry) return failure(entry);
   const Result<std::vector<Entry>> corrections = ledger->corrections_of(*id);
   if (!corrections) return failure(corrections);
+  std::optional<MeasuredAgain> again;
+  const AgainJob job{arguments.text("--sheet"), arguments.text("--folder")};
+  if (arguments.has("--again")) {
+    RunSession session(arguments, console, arguments.has("--quiet"));
+    Result<MeasuredAgain> measured = measure_again(entry->content, job, session.context());
+    session.end_progress();
+    if (!measured) return failure(measured);
+    again = std::move(*measured);
+  } else if (job.sheet || job.folder) {
+    return failure(Problem::usage, job.sheet ? "--sheet" : "--folder", "nothing is measured without --again", "add --again, or leave it out");
+  }
   if (arguments.has("--json")) {
     std::vector<Entry> all{*entry};
     all.insert(all.end(), corrections->begin(), corrections->end());
     const Result<LedgerHead> head = ledger->head();
     if (!head) return failure(head);
-    console.out() << ledger_json(all, entry->content.part, *head);
+    console.out() << ledger_json(all, entry->content.part, *head, again);
   } else {
     console.out() << entry_text(*entry, *corrections, console.out_style());
+    if (again) console.out() << again_text(*again, console.out_style());
   }
-  return ExitCode::done;
+  return again && !again->same() ? ExitCode::rejected : ExitCode::done;
 }
 
 Result<ExitCode> run_verify(const Arguments& arguments, Console& console) {
@@ -155,11 +168,22 @@ Command ledger_list_command() {
 
 Command ledger_show_command() {
   return {.name = "ledger show",
-          .summary = "one entry with limits, files, corrections and hash",
-          .description = "Everything an entry says, the corrections that point to it, and its place in the chain.",
+          .summary = "one entry; --again measures it again from its files",
+          .description =
+              "Everything an entry says, the corrections that point to it, and its place in the chain.\n"
+              "With --again the unit is measured and judged again from its raw captures by the part sheet of then, and every digit "
+              "that comes out otherwise is listed: exit code 0 when there is none, 1 when there are some. Captures and sheet must "
+              "have the digests that were recorded.",
           .positional = file_and_id(),
-          .groups = {{.title = "Output", .options = {json_option()}}, everywhere_options()},
-          .examples = {{"ledger show drum-47.ledger 17", "entry 17"}},
+          .groups = {{.title = "Measuring again",
+                      .options = {{.name = "--again", .help = "measures again from the raw files and compares"},
+                                  {.name = "--folder", .kind = ValueKind::file, .value_name = "FOLDER",
+                                   .help = "where the captures are now, unless where they were", .example = "archive/0412"},
+                                  {.name = "--sheet", .kind = ValueKind::file, .value_name = "FILE.toml",
+                                   .help = "where the part sheet is now, unless where it was", .example = "archive/drum-47.toml"}}},
+                     {.title = "Output", .options = {json_option()}}, everywhere_options()},
+          .examples = {{"ledger show drum-47.ledger 17", "entry 17"},
+                       {"ledger show drum-47.ledger 17 --again", "does it still come out so?"}},
           .run = run_show};
 }
 

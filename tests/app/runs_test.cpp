@@ -12,6 +12,7 @@
 #include "app/runs/ring_down_run.h"
 #include "app/runs/simulate_run.h"
 #include "base/digest.h"
+#include "ledger/ledger.h"
 #include "tests/app/fake_console.h"
 #include "tests/report/schema_check.h"
 #include "tests/support/instrument_bench.h"
@@ -261,7 +262,10 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
   setup.profile = parsed_profile(meter_profile_text("localhost:1"));
   const ServedStandIn meter(setup);
   const std::string profile = folder.file("meter.toml", meter_profile_text(meter.address()));
+  ASSERT_TRUE(Ledger::open({.path = folder / "a.ledger", .mode = LedgerMode::create}));
   const std::map<std::string_view, std::vector<std::string>> lines = {
+      {"ledger verify", {folder / "a.ledger"}},
+      {"ledger export", {folder / "a.ledger", "-o", folder / "a.json"}},
       {"ringdown", {ring, "--capacitor", "10nF"}},
       {"simulate ringdown", {"-o", folder / "new.csv"}},
       {"acquire", {profile, "-o", folder / "run.csv", "--count", "1"}},
