@@ -29,6 +29,10 @@ Complex impedance(const SweepPlan& plan, double frequency_hz, double a, double b
       if (plan.parameter == 'S') return reference_ohm * (1.0 + value) / (1.0 - value);
       return value;
     }
+    case SweepPair::magnitude: {
+      const double size = plan.decibels ? std::pow(10.0, a / 20) : std::fabs(a);
+      return {plan.parameter == 'Y' ? 1 / size : size, std::nan("")};
+    }
     case SweepPair::l_s_r_s: return {b, w * a};
     case SweepPair::l_s_q: return {std::fabs(w * a) / b, w * a};
     case SweepPair::l_s_d: return {std::fabs(w * a) * b, w * a};
@@ -48,6 +52,7 @@ std::string as_read(const SweepPlan& plan) {
   switch (plan.pair) {
     case SweepPair::re_im:
     case SweepPair::magnitude_phase: return std::string(1, plan.parameter);
+    case SweepPair::magnitude: return "|Z|";
     case SweepPair::l_s_r_s: return "L_s R_s";
     case SweepPair::l_s_q: return "L_s Q";
     case SweepPair::l_s_d: return "L_s D";
@@ -134,7 +139,8 @@ Result<Sweep> sweep_of(Capture capture, const SweepPlan& plan) {
     const double f = frequency->samples[i];
     const Complex z = impedance(plan, f, first->samples[i], second->samples[i], radians, reference);
     const bool marked = status != nullptr && status->samples[i] != 0;
-    const bool usable = f >= 0 && std::isfinite(f) && std::isfinite(z.real()) && std::isfinite(z.imag());
+    const bool usable = f >= 0 && std::isfinite(f) && std::isfinite(z.real()) &&
+                        (std::isfinite(z.imag()) || plan.pair == SweepPair::magnitude);
     sweep.frequency_hz.push_back(f);
     sweep.z_ohm.push_back({usable ? z : Complex(std::nan(""), std::nan(""))});
     sweep.bad.push_back(marked || !usable);

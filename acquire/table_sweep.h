@@ -17,6 +17,7 @@ namespace coilassay {
 enum class SweepPair {
   re_im,             // of Z, Y or S
   magnitude_phase,   // of Z, Y or S; magnitude perhaps in dB
+  magnitude,         // of Z alone: the imaginary part of Z is missing (NaN), the real part holds the size
   l_s_r_s,           // Z = R_s + j w L_s
   l_s_q,             // R_s = |w L_s| / Q
   l_s_d,             // R_s = D |w L_s|
@@ -50,7 +51,7 @@ std::optional<SweepPlan> plan_sweep(const TableHeader& header);
 /// The sweep of a table that was read as channels in the order of its columns, without time.
 ///
 /// A point with a missing number, a status or no finite impedance is marked bad. S without a stated reference is taken
-/// at 50 ohm, with a finding. A phase without a unit: beyond +-6.4 it is degrees, with a finding; otherwise it is
+/// at 50 ohm, with a finding. A file of sizes alone is read as "|Z|". A phase without a unit: beyond +-6.4 it is degrees, with a finding; otherwise it is
 /// ambiguous, unless it cannot be degrees.
 Result<Sweep> sweep_of(Capture capture, const SweepPlan& plan);
 

@@ -170,7 +170,21 @@ std::optional<SweepPlan> plan_sweep(const TableHeader& header) {
     plan.parameter_stated = !bare_pair || ohms || siemens || meanings[*first].parameter != 0 || meanings[*second].parameter != 0;
     return plan;
   }
-  return std::nullopt;
+  // A size on its own says less, but not nothing; the heading must say that it is one of an impedance.
+  const auto size = find(Role::magnitude);
+  if (!size) return std::nullopt;
+  const auto& unit = header.columns[*size].unit;
+  const bool ohms = unit && unit->unit == Unit::ohm, siemens = unit && unit->unit == Unit::siemens;
+  const char parameter = ohms ? 'Z' : siemens ? 'Y' : meanings[*size].parameter;
+  if (parameter != 'Z' && parameter != 'Y') return std::nullopt;
+  SweepPlan plan;
+  plan.frequency = *frequency;
+  plan.pair = SweepPair::magnitude;
+  plan.parameter = parameter;
+  plan.first = plan.second = *size;
+  plan.decibels = (unit && unit->decibels) || reduced(header.columns[*size].name).ends_with("db");
+  plan.status = find(Role::status);
+  return plan;
 }
 
 }  // namespace coilassay

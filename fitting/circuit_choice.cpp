@@ -1,5 +1,6 @@
 #include <algorithm>
 #include <cmath>
+#include <numeric>
 #include <functional>
 
 #include "fitting/circuit_equations.h"
@@ -241,6 +242,23 @@ Result<CircuitChoice> choose_circuit(const CircuitData& data, const CircuitChoic
   last.quick = false;
   last.start = tried->fits[tried->best].circuit;
   Result<CircuitFit> best = fit_circuit(rest, tried->candidates[tried->best].family, last);
+  if (!best || !best->usable()) {
+    // Elements that play against each other may not settle, or not be determined: then the best that is stands.
+    std::vector<std::size_t> order(tried->candidates.size());
+    std::iota(order.begin(), order.end(), std::size_t{0});
+    std::stable_sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) {
+      return tried->candidates[a].criterion < tried->candidates[b].criterion;
+    });
+    for (const std::size_t k : order) {
+      last.start = tried->fits[k].circuit;
+      Result<CircuitFit> other = fit_circuit(rest, tried->candidates[k].family, last);
+      if (!other || !other->usable()) continue;
+      best = std::move(other);
+      if (tried->second == k) tried->second = tried->best;
+      tried->best = k;
+      break;
+    }
+  }
   if (!best) return failure(best);
   choice.best = std::move(*best);
   if (tried->second != tried->best) {

@@ -156,6 +156,12 @@ std::optional<double> Arguments::plain(std::string_view option) const {
   return all.empty() ? std::nullopt : std::optional(all.front().stated.value);
 }
 
+std::vector<double> Arguments::all_plain(std::string_view option) const {
+  std::vector<double> result;
+  for (const Value& value : values(option, {ValueKind::plain})) result.push_back(value.stated.value);
+  return result;
+}
+
 std::optional<std::uint64_t> Arguments::count(std::string_view option) const {
   const std::vector<Value>& all = values(option, {ValueKind::count});
   return all.empty() ? std::nullopt : std::optional(all.front().count);

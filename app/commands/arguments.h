@@ -37,6 +37,7 @@ class Arguments {
   std::optional<StatedValue> stated(std::string_view option) const;
   std::vector<StatedValue> all_stated(std::string_view option) const;
   std::optional<double> plain(std::string_view option) const;
+  std::vector<double> all_plain(std::string_view option) const;
   std::optional<std::uint64_t> count(std::string_view option) const;
   /// Of a text, a file or a choice.
   std::optional<std::string> text(std::string_view option) const;

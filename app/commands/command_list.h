@@ -17,6 +17,7 @@ const Command* find_command(std::string_view name);
 Command describe_command();
 Command ring_down_command();
 Command sine_command();
+Command sweep_command();
 Command simulate_ring_down_command();
 Command ramp_command();
 Command simulate_ramp_command();

@@ -5,6 +5,8 @@
 #include <nlohmann/json.hpp>
 #include <sstream>
 
+#include "acquire/sweep_writer.h"
+#include "acquire/synthetic/coil_sweep.h"
 #include "app/commands/arguments.h"
 #include "app/commands/command_list.h"
 #include "app/runs/captures.h"
@@ -255,6 +257,12 @@ TEST(RingDownCommand, EndsWithThreeWhenThereIsNothingToMeasure) {
 }
 
 // An option that is declared but never looked at would be one that does nothing.
+std::string sweep_csv() {
+  std::ostringstream text;
+  write_sweep_csv(text, synthetic::simulate_coil_sweep({.noise_ratio = 1e-3})->sweep, SweepColumns::impedance);
+  return text.str();
+}
+
 TEST(Commands, LookAtEveryOptionTheyDeclare) {
   const TemporaryFolder folder;
   const std::string ring = folder.file("ring.csv", ring_csv());
@@ -270,6 +278,7 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
       {"simulate ringdown", {"-o", folder / "new.csv"}},
       {"acquire", {profile, "-o", folder / "run.csv", "--count", "1"}},
       {"simulate sweep", {"-o", folder / "new-sweep.csv"}},
+      {"sweep", {folder.file("coil.csv", sweep_csv())}},
       {"simulate burst", {"-o", folder / "new-burst.csv"}},
   };
   for (const auto& [name, words] : lines) {
