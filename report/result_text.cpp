@@ -6,62 +6,14 @@
 
 #include "base/outside_text.h"
 #include "report/text_layout.h"
+#include "report/text_page.h"
 #include "report/wording.h"
 
 namespace coilassay {
 
 namespace {
 
-constexpr std::string_view kIndent = "  ";
-
-/// Writes lines in one style. Everything that is shown passes through words() and so through the script.
-class Page {
- public:
-  explicit Page(const TextStyle& style) : style_(style) {}
-
-  std::string words(std::string_view text) const { return in_script(text, style_.script); }
-
-  void heading(std::string_view text) {
-    if (!text_.empty()) text_ += '\n';
-    text_ += painted(wrapped(words(text), "", style_.width), "1");
-  }
-  void paragraph(std::string_view text, std::string_view first = kIndent) {
-    text_ += wrapped(words(text), first, style_.width);
-  }
-  /// A sentence behind its severity in words; the colour only repeats the word.
-  void remark(Severity severity, std::string_view text) {
-    const std::string label(name(severity));
-    std::string lines = wrapped(words(text), std::string(kIndent) + padded(label, 9), style_.width);
-    if (style_.color) lines.replace(kIndent.size(), label.size(), painted(label, code_of(severity)));
-    text_ += lines;
-  }
-  void table(const std::vector<std::vector<std::string>>& rows) { text_ += aligned(rows, kIndent); }
-
-  const TextStyle& style() const { return style_; }
-  std::string take() { return std::move(text_); }
-
- private:
-  std::string painted(const std::string& text, std::string_view code) const {
-    if (!style_.color) return text;
-    std::string_view line = text;  // a line feed stays outside: some terminals paint to the edge
-    const bool fed = line.ends_with('\n');
-    if (fed) line.remove_suffix(1);
-    return fmt::format("\x1b[{}m{}\x1b[0m{}", code, line, fed ? "\n" : "");
-  }
-  static std::string_view code_of(Severity severity) {
-    switch (severity) {
-      case Severity::refusal: return "1;31";
-      case Severity::caution: return "1;33";
-      case Severity::note: return "36";
-    }
-    return "0";
-  }
-
-  TextStyle style_;
-  std::string text_;
-};
-
-void write_head(Page& page, const Measurement& m) {
+void write_head(TextPage& page, const Measurement& m) {
   const Script script = page.style().script;
   if (m.sources.size() == 1) {
     page.heading(test_in_words(m.test) + " of " + source_in_words(m.sources.front(), script));
@@ -71,14 +23,14 @@ void write_head(Page& page, const Measurement& m) {
   }
 }
 
-void write_refusal(Page& page, const Measurement& m) {
+void write_refusal(TextPage& page, const Measurement& m) {
   page.heading("Not measured: the " + named(leading_symbol(m.test)));
   for (const Finding& each : by_weight(m.findings)) {
     if (each.severity == Severity::refusal) page.remark(each.severity, shown(each.message, 1000));
   }
 }
 
-void write_values(Page& page, const Measurement& m) {
+void write_values(TextPage& page, const Measurement& m) {
   const auto values = values_of(m, page.style().script);
   const auto conditions = conditions_in_words(m.conditions, page.style().script);
   if (!values.empty()) {
@@ -93,7 +45,7 @@ void write_values(Page& page, const Measurement& m) {
   if (!conditions.empty()) page.paragraph(fmt::format("{}", fmt::join(conditions, ", ")), "  Conditions: ");
 }
 
-void write_points(Page& page, const Measurement& m) {
+void write_points(TextPage& page, const Measurement& m) {
   constexpr std::size_t kRows = 12;
   auto table = points_of(m, page.style().script);
   if (table.empty()) return;
@@ -104,20 +56,20 @@ void write_points(Page& page, const Measurement& m) {
   if (left > 0) page.paragraph(fmt::format("and {} more with --verbose", left));
 }
 
-void write_composition(Page& page, const Measurement& m) {
+void write_composition(TextPage& page, const Measurement& m) {
   const auto symbols = main_symbols(m);
   if (symbols.empty()) return;
   page.heading("What the uncertainty is made of");
   std::size_t widest = 0;
   for (const std::string& each : symbols) widest = std::max(widest, each.size());
   for (const std::string& each : symbols) {
-    page.paragraph(made_of(m.budget.at(each)), std::string(kIndent) + padded(each, widest + 2));
+    page.paragraph(made_of(m.budget.at(each)), std::string(kTextIndent) + padded(each, widest + 2));
   }
   const auto defaults = defaults_taken(m, symbols);
   if (!defaults.empty()) page.paragraph(fmt::format("{}", fmt::join(defaults, "; ")), "  Not stated, so taken: ");
 }
 
-void write_warnings(Page& page, const Measurement& m) {
+void write_warnings(TextPage& page, const Measurement& m) {
   constexpr std::size_t kNotes = 3;  // a reader in a hurry; --verbose has all
   const bool refused = !was_measured(m);
   std::vector<Finding> said;
@@ -143,7 +95,7 @@ void write_warnings(Page& page, const Measurement& m) {
   }
 }
 
-void write_advice(Page& page, const Measurement& m) {
+void write_advice(TextPage& page, const Measurement& m) {
   if (m.advice.empty()) return;
   page.heading("What to do next");
   for (const std::string& each : m.advice) page.paragraph(shown(each, 1000), "  - ");
@@ -151,7 +103,7 @@ void write_advice(Page& page, const Measurement& m) {
 
 // ---- only with --verbose
 
-void write_budget(Page& page, const Measurement& m) {
+void write_budget(TextPage& page, const Measurement& m) {
   const Script script = page.style().script;
   for (const auto& [of, lines] : m.budget) {
     const Estimate* estimate = m.find(of);
@@ -167,7 +119,7 @@ void write_budget(Page& page, const Measurement& m) {
   }
 }
 
-void write_origin(Page& page, const Measurement& m) {
+void write_origin(TextPage& page, const Measurement& m) {
   const Script script = page.style().script;
   if (!m.correlations.empty()) {
     page.heading("Correlations");
@@ -218,7 +170,7 @@ void write_origin(Page& page, const Measurement& m) {
 }  // namespace
 
 std::string to_text(const Measurement& m, const TextStyle& style) {
-  Page page(style);
+  TextPage page(style);
   write_head(page, m);
   if (!was_measured(m)) {
     write_refusal(page, m);

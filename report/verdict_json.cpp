@@ -51,6 +51,15 @@ bool take(const Json& from, const char* key, std::string& into) {
   return true;
 }
 
+Unit unit_named(const std::string& text) {
+  for (const Unit each : {Unit::volt, Unit::ampere, Unit::ohm, Unit::siemens, Unit::henry, Unit::farad, Unit::hertz,
+                          Unit::second, Unit::per_second, Unit::radian, Unit::weber, Unit::joule, Unit::watt,
+                          Unit::degree_celsius, Unit::kelvin, Unit::ampere_per_volt, Unit::tesla, Unit::metre}) {
+    if (symbol(each) == text) return each;
+  }
+  return Unit::one;
+}
+
 template <class Word>
 std::optional<Word> word_of(const std::string& text, std::initializer_list<Word> words) {
   for (const Word each : words) {
@@ -124,14 +133,32 @@ Result<std::vector<Finding>> findings_of_document(const Json& document) {
     if (!word) return broken();
     finding.severity = *word;
     finding.figure = figure.value_or(std::nan(""));
-    for (const Unit each : {Unit::volt, Unit::ampere, Unit::ohm, Unit::siemens, Unit::henry, Unit::farad, Unit::hertz,
-                            Unit::second, Unit::per_second, Unit::radian, Unit::weber, Unit::joule, Unit::watt,
-                            Unit::degree_celsius, Unit::kelvin, Unit::ampere_per_volt, Unit::tesla, Unit::metre}) {
-      if (symbol(each) == unit) finding.unit = each;
-    }
+    finding.unit = unit_named(unit);
     findings.push_back(std::move(finding));
   }
   return findings;
+}
+
+Result<std::vector<Caution>> cautions_of_document(const Json& document) {
+  if (!document.is_array()) return broken();
+  std::vector<Caution> cautions;
+  for (const Json& item : document) {
+    Caution caution;
+    std::optional<double> figure;
+    std::string severity, unit;
+    if (!item.is_object() || !take(item, "code", caution.code) || !take(item, "message", caution.message) ||
+        !take(item, "severity", severity) || !take(item, "figure", figure) || !take(item, "basis", caution.basis) ||
+        !take(item, "unit", unit)) {
+      return broken();
+    }
+    const auto word = word_of(severity, {Severity::note, Severity::caution, Severity::refusal});
+    if (!word) return broken();
+    caution.severity = *word;
+    caution.figure = figure.value_or(std::nan(""));
+    caution.unit = unit_named(unit);
+    cautions.push_back(std::move(caution));
+  }
+  return cautions;
 }
 
 }  // namespace coilassay

@@ -3,6 +3,7 @@
 
 #include <nlohmann/json_fwd.hpp>
 
+#include "analysis/measurement.h"
 #include "base/result.h"
 #include "inspection/verdict.h"
 
@@ -15,5 +16,7 @@ Result<LimitVerdict> limit_of_document(const nlohmann::ordered_json& document, c
 
 /// Findings as they stand in a document; ledger when they are none.
 Result<std::vector<Finding>> findings_of_document(const nlohmann::ordered_json& document);
+/// Cautions of a measurement's document; ledger when they are none.
+Result<std::vector<Caution>> cautions_of_document(const nlohmann::ordered_json& document);
 
 }  // namespace coilassay

@@ -7,6 +7,7 @@ namespace coilassay {
 std::span<const Command> commands() {
   static const std::vector<Command> all = {
       describe_command(), ring_down_command(), sine_command(), sweep_command(), simulate_ring_down_command(),
+      inspect_command(),
       resistance_command(), simulate_resistance_command(), ramp_command(), simulate_ramp_command(), simulate_sine_command(), simulate_sweep_command(), simulate_burst_command(),
       ledger_list_command(), ledger_show_command(), ledger_verify_command(), ledger_export_command(), ledger_correct_command(),
       acquire_command(), simulate_instrument_command(),

@@ -14,6 +14,7 @@ std::span<const Command> commands();
 const Command* find_command(std::string_view name);
 
 // One declaration per command file.
+Command inspect_command();
 Command describe_command();
 Command ring_down_command();
 Command sine_command();

@@ -44,6 +44,7 @@ class Inspection {
   void keep(std::size_t index, std::optional<std::int64_t> entry);
   Result<void> decide();
   void tell_of_tests();
+  void tell_cautions(const std::vector<Caution>& cautions);
   void keep_figures();
 
   const InspectJob& job_;
@@ -274,6 +275,9 @@ Result<void> Inspection::measure_batch(std::size_t first, std::size_t end) {
   for (std::size_t i = first; i < end; ++i) {
     if (units_[i].past.recorded) {
       units_[i].attempt = units_[i].past.attempts.back();
+      const Result<std::vector<Caution>> cautions = cautions_of_entry(units_[i].past.entries.back().content);
+      if (!cautions) return failure(cautions);
+      tell_cautions(*cautions);
       keep(i, units_[i].past.entries.back().id);
     } else {
       keep(i, (*ids)[next++]);
@@ -284,10 +288,23 @@ Result<void> Inspection::measure_batch(std::size_t first, std::size_t end) {
   return {};
 }
 
+/// Each once, with the largest figure.
+void Inspection::tell_cautions(const std::vector<Caution>& cautions) {
+  for (const Caution& caution : cautions) {
+    const auto same = std::find_if(record_.cautions.begin(), record_.cautions.end(),
+                                   [&](const Caution& c) { return c.code == caution.code; });
+    if (same == record_.cautions.end()) record_.cautions.push_back(caution);
+    else if (caution.figure > same->figure) *same = caution;
+  }
+}
+
 /// Of each test the first unit with values stands as the example; cautions about people count once.
 void Inspection::tell_of_tests() {
   if (record_.tests.empty()) {
     for (const PreparedTest& test : tests_) {
+      const bool captured = std::any_of(folder_.units.begin(), folder_.units.end(),
+                                        [&](const LotUnit& unit) { return unit.find(test.plan.name) != nullptr; });
+      if (!captured) continue;
       record_.tests.push_back({test.plan.name, test.plan.kind, test.plan.bench, test.bench_sha256, test.equipment,
                                test.room_temperature, std::nullopt, ""});
     }
@@ -299,12 +316,7 @@ void Inspection::tell_of_tests() {
         test.example = run.measurement;
         test.example_serial = unit.attempt.serial;
       }
-      for (const Caution& caution : run.measurement.cautions) {
-        const auto same = std::find_if(record_.cautions.begin(), record_.cautions.end(),
-                                       [&](const Caution& c) { return c.code == caution.code; });
-        if (same == record_.cautions.end()) record_.cautions.push_back(caution);
-        else if (caution.figure > same->figure) *same = caution;
-      }
+      tell_cautions(run.measurement.cautions);
     }
   }
 }

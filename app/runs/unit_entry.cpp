@@ -110,6 +110,22 @@ Result<UnitVerdict> verdict_of_entry(const EntryContent& entry, const PartSheet&
   return broken(entry);
 }
 
+Result<std::vector<Caution>> cautions_of_entry(const EntryContent& entry) {
+  std::vector<Caution> all;
+  const Json details = details_of(entry);
+  const auto tests = details.find("tests");
+  if (tests == details.end() || !tests->is_array()) return broken(entry);
+  for (const Json& test : *tests) {
+    if (!test.is_object() || !test.contains("result") || !test["result"].is_object()) return broken(entry);
+    const auto list = test["result"].find("cautions");
+    if (list == test["result"].end()) continue;
+    Result<std::vector<Caution>> cautions = cautions_of_document(*list);
+    if (!cautions) return failure(cautions);
+    all.insert(all.end(), cautions->begin(), cautions->end());
+  }
+  return all;
+}
+
 EntryContent check_entry(const Estimate& value, const std::vector<TestRun>& tests, const InspectionSetting& setting) {
   EntryContent entry = common(EntryKind::check, setting);
   entry.serial = json_safe(setting.sheet->check_standard ? setting.sheet->check_standard->serial : "");

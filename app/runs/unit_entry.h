@@ -47,6 +47,9 @@ EntryContent unit_entry(const UnitRun& unit, const InspectionSetting& setting);
 /// The verdict of a stored attempt. ledger when it was judged by another sheet or is not one of these entries.
 Result<UnitVerdict> verdict_of_entry(const EntryContent& entry, const PartSheet& sheet);
 
+/// Cautions about people and equipment that were raised when a unit was measured.
+Result<std::vector<Caution>> cautions_of_entry(const EntryContent& entry);
+
 /// A check standard that was measured: its quantity, and how.
 EntryContent check_entry(const Estimate& value, const std::vector<TestRun>& tests, const InspectionSetting& setting);
 Result<CheckReading> check_reading_of(const EntryContent& entry);

@@ -46,7 +46,9 @@ Measurement refused(const std::string& kind, const std::vector<std::string>& fil
   for (const std::string& file : files) {
     SourceRecord record;
     record.source.name = file;
-    if (const Result<std::string> digest = digest_of_file(file)) record.source.sha256 = *digest;
+    const Result<std::string> digest = digest_of_file(file);
+    if (!digest) continue;  // the finding names it
+    record.source.sha256 = *digest;
     measurement.sources.push_back(std::move(record));
   }
   const std::string place = std::filesystem::path(error.place).filename().string();

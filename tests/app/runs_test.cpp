@@ -1,6 +1,7 @@
 #include <gmock/gmock.h>
 
 #include <cmath>
+#include <filesystem>
 #include <map>
 #include <nlohmann/json.hpp>
 #include <sstream>
@@ -271,6 +272,10 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
   const ServedStandIn meter(setup);
   const std::string profile = folder.file("meter.toml", meter_profile_text(meter.address()));
   ASSERT_TRUE(Ledger::open({.path = folder / "a.ledger", .mode = LedgerMode::create}));
+  const std::string lot = folder / "lot";
+  std::filesystem::create_directory(lot);
+  folder.file("lot/01.ringdown.csv", ring_csv());
+  const std::string part = folder.file("part.toml", "[part]\nname = \"any\"\n[[limit]]\nquantity = \"f_0\"\nmin = \"1 Hz\"\n");
   const std::map<std::string_view, std::vector<std::string>> lines = {
       {"ledger verify", {folder / "a.ledger"}},
       {"ledger export", {folder / "a.ledger", "-o", folder / "a.json"}},
@@ -280,6 +285,7 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
       {"simulate sweep", {"-o", folder / "new-sweep.csv"}},
       {"sweep", {folder.file("coil.csv", sweep_csv())}},
       {"simulate burst", {"-o", folder / "new-burst.csv"}},
+      {"inspect", {part, lot}},
   };
   for (const auto& [name, words] : lines) {
     const Command* command = find_command(name);

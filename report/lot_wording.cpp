@@ -1,0 +1,111 @@
+#include "report/lot_wording.h"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <cmath>
+
+#include "base/outside_text.h"
+#include "report/wording.h"
+
+namespace coilassay {
+
+std::string_view decision_in_words(LotResult decision) {
+  switch (decision) {
+    case LotResult::accept: return "Accepted";
+    case LotResult::reject: return "Rejected";
+    case LotResult::undecided: return "Undecided";
+  }
+  return "";
+}
+
+std::string_view verdict_in_words(Verdict verdict) {
+  switch (verdict) {
+    case Verdict::pass: return "passes";
+    case Verdict::fail: return "fails";
+    case Verdict::undecided: return "undecided";
+    case Verdict::not_comparable: return "not comparable";
+  }
+  return "";
+}
+
+std::string lot_in_words(const LotRecord& lot) {
+  const bool says_so = lot.lot.starts_with("lot") || lot.lot.starts_with("Lot");
+  std::string words = (says_so ? "" : "lot ") + shown(lot.lot, 80) + " of " + shown(lot.sheet.name, 80);
+  if (!lot.sheet.revision.empty()) words += ", revision " + shown(lot.sheet.revision, 40);
+  if (!lot.sheet.supplier.empty()) words += ", from " + shown(lot.sheet.supplier, 80);
+  return words;
+}
+
+std::string value_in_words(const LimitVerdict& limit, Script script) {
+  if (!limit.value) return "no value";
+  if (!limit.U || !(*limit.U > 0)) return to_text(*limit.value, limit.unit, script);
+  return to_text_expanded(*limit.value, *limit.U, limit.unit, script);
+}
+
+std::string limits_in_words(const LimitVerdict& limit, Script script) {
+  const auto words = [&](double value) { return setting_in_words(value, limit.unit, script); };
+  if (limit.min && limit.max) return words(*limit.min) + " to " + words(*limit.max);
+  if (limit.min) return "at least " + words(*limit.min);
+  return limit.max ? "at most " + words(*limit.max) : "";
+}
+
+std::string probability_in_words(const LimitVerdict& limit) {
+  if (!limit.p_conform) return "";
+  const double p = *limit.p_conform;
+  if (p < 0.001) return "under 0.1 %";
+  if (p > 0.999) return "over 99.9 %";
+  return fmt::format("{:.1f} %", 100 * p);
+}
+
+std::vector<const LotUnitRecord*> not_passing(const LotRecord& lot) {
+  const auto weight = [](Verdict verdict) {
+    switch (verdict) {
+      case Verdict::fail: return 0;
+      case Verdict::not_comparable: return 2;
+      case Verdict::undecided: return 1;
+      case Verdict::pass: break;
+    }
+    return 3;
+  };
+  std::vector<const LotUnitRecord*> units;
+  for (const LotUnitRecord& each : lot.units) {
+    if (each.verdict.verdict != Verdict::pass) units.push_back(&each);
+  }
+  std::stable_sort(units.begin(), units.end(), [&](const LotUnitRecord* a, const LotUnitRecord* b) {
+    return weight(a->verdict.verdict) < weight(b->verdict.verdict);
+  });
+  return units;
+}
+
+std::string values_in_words(const LotValues& values, Script script) {
+  const auto words = [&](double value, int digits) { return to_text(value, values.unit, script, digits); };
+  std::string text = values.U_mean ? to_text_expanded(values.mean, *values.U_mean, values.unit, script) + " on average"
+                                   : words(values.mean, 5);
+  if (values.n > 1) text += ", from " + words(values.least, 5) + " to " + words(values.most, 5);
+  if (values.spread) {
+    text += "; the parts spread by " + (*values.spread > 0 ? words(*values.spread, 2) : "less than their own errors");
+  }
+  text += "; standard uncertainty " + words(values.u_own, 2) + " of each unit for itself, " + words(values.u_common, 2) +
+          " common to all";
+  return text;
+}
+
+std::string protection_in_words(const LotRecord& lot) {
+  if (!lot.plan || lot.plan->scheme == SamplingScheme::all || lot.plan->whole_lot) return "";
+  return passes_in_words(*lot.plan, 0.05);
+}
+
+std::string record_in_words(const LotRecord& lot) {
+  if (!lot.ledger) return "Nothing was recorded: a ledger keeps verdicts, with --ledger FILE.";
+  const LotLedger& place = *lot.ledger;
+  if (place.last == 0) {
+    return fmt::format("Nothing was added to the ledger {}, whose last hash is {}.", shown(place.file), place.head);
+  }
+  std::string text = fmt::format("Recorded in {} as entries {} to {}; the ledger's last hash is {}.", shown(place.file),
+                                 place.first, place.last, place.head);
+  if (place.replaces) text += fmt::format(" The decision replaces that of entry {}.", *place.replaces);
+  return text;
+}
+
+}  // namespace coilassay
