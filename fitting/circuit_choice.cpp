@@ -193,7 +193,7 @@ std::vector<std::size_t> outliers(const CircuitData& data, std::span<const std::
   if (data.scale_known) sigma = std::isnan(sigma) ? 1 : std::fmax(sigma, 1);
   std::vector<std::size_t> list;
   if (!(sigma > 0)) return list;
-  const auto out = standing_out(residuals, sigma, kFalseAlarms);
+  const auto out = standing_out(residuals, sigma, data.scale_known, kFalseAlarms);
   for (std::size_t a = 0, b = 0; a < out.size(); a = b) {
     while (b < out.size() && out[b] == out[a] + (b - a)) ++b;
     if (b - a > kSinglePoints) continue;

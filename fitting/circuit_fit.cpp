@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <cmath>
 #include <limits>
+#include <numeric>
 
 #include "fitting/circuit_equations.h"
 #include "fitting/circuit_limits.h"
@@ -21,11 +22,12 @@ constexpr double kFewSettled = 1e-3;
 constexpr int kQuickIterations = 40;
 constexpr double kQuickSettled = 1e-4;
 constexpr std::size_t kManyPoints = 800;
+constexpr double kLeastPivot = 1e-12;   // of the normal matrix with a diagonal of ones: below, nothing is left of 16 digits
 constexpr double kVisible = 4;         // information of a logarithm below which it is called not seen by the descent
 
 /// A logarithm whose parameter has become too small to matter has no slope and never comes back: it is put where it would be
 /// just visible, and the better result kept.
-void rescue(const CircuitEquations& equations, SettledCircuit& best, int most_iterations, double settled) {
+void rescue(const CircuitEquations& equations, bool phase, SettledCircuit& best, int most_iterations, double settled) {
   const auto order = parameters_of(best.circuit.family);
   for (std::size_t i = 0; i < order.size(); ++i) {
     const auto k = static_cast<Eigen::Index>(i);
@@ -39,15 +41,44 @@ void rescue(const CircuitEquations& equations, SettledCircuit& best, int most_it
     Circuit without = best.circuit;
     without[order[i]] = 0;
     equations.look(without, std::span<const double>(one).first(order.size()), natural);
-    if (!(natural.normal(k, k) > 0)) continue;
-    const double visible = std::sqrt(noise / natural.normal(k, k));
-    for (const double factor : {3.0, 30.0}) {
+    std::vector<double> tries;
+    if (natural.normal(k, k) > 0) {
+      const double visible = std::sqrt(noise / natural.normal(k, k));
+      tries = {3 * visible, 30 * visible};
+    }
+    if (!phase) {
+      // The modulus of a lossless circuit has no slope to a loss: small parts of the reactance at resonance are tried.
+      const double reactance = std::sqrt(best.circuit[P::inductance] / best.circuit[P::capacitance]);
+      const bool conductance = order[i] == P::parallel_conductance;
+      if (conductance || order[i] == P::series_resistance || order[i] == P::skin_resistance) {
+        for (const double part : {1e-3, 3e-2}) tries.push_back(conductance ? part / reactance : part * reactance);
+      }
+    }
+    for (const double value : tries) {
       Circuit start = best.circuit;
-      start[order[i]] = factor * visible;
+      start[order[i]] = value;
       const SettledCircuit next = descend(equations, start, 0, most_iterations, settled);
       if (next.chi < best.chi) best = next;
     }
   }
+}
+
+/// Of the rows and columns of these parameters; empty where it does not exist. The diagonal is made equal first: the parameters differ by
+/// many orders of magnitude.
+Eigen::MatrixXd inverse_of(const CircuitMatrix& normal, const std::vector<std::size_t>& parameters) {
+  const auto count = static_cast<Eigen::Index>(parameters.size());
+  Eigen::MatrixXd some(count, count);
+  for (Eigen::Index i = 0; i < count; ++i) {
+    for (Eigen::Index j = 0; j < count; ++j) {
+      some(i, j) = normal(static_cast<Eigen::Index>(parameters[static_cast<std::size_t>(i)]),
+                          static_cast<Eigen::Index>(parameters[static_cast<std::size_t>(j)]));
+    }
+  }
+  const Eigen::VectorXd unit = some.diagonal().cwiseMax(std::numeric_limits<double>::min()).cwiseSqrt().cwiseInverse();
+  some = unit.asDiagonal() * some * unit.asDiagonal();
+  const Eigen::LDLT<Eigen::MatrixXd> solver(some);
+  if (count == 0 || solver.info() != Eigen::Success || !(solver.vectorD().minCoeff() > kLeastPivot)) return {};
+  return unit.asDiagonal() * solver.solve(Eigen::MatrixXd::Identity(count, count)) * unit.asDiagonal();
 }
 
 void fill_statistics(const CircuitData& data, const std::vector<std::size_t>& points, const CircuitEquations& equations,
@@ -80,11 +111,6 @@ void fill_statistics(const CircuitData& data, const std::vector<std::size_t>& po
     std::fill_n(one.begin(), n, 1.0);
     equations.look(settled.circuit, std::span<const double>(one).first(n), natural);
   }
-  // Equal diagonal first: the parameters differ by many orders of magnitude.
-  Eigen::MatrixXd normal = natural.normal.topLeftCorner(count, count);
-  const Eigen::VectorXd unit = normal.diagonal().cwiseMax(std::numeric_limits<double>::min()).cwiseSqrt().cwiseInverse();
-  normal = unit.asDiagonal() * normal * unit.asDiagonal();
-  const Eigen::LDLT<Eigen::MatrixXd> solver(normal);
   Fit& fit = result.fit;
   fit.parameters.resize(count);
   for (std::size_t i = 0; i < n; ++i) fit.parameters[static_cast<Eigen::Index>(i)] = settled.circuit[result.order[i]];
@@ -93,8 +119,30 @@ void fill_statistics(const CircuitData& data, const std::vector<std::size_t>& po
   fit.reduced_chi_square = result.chi_square / result.dof;
   fit.residual_rms = std::sqrt(result.chi_square / static_cast<double>(points.size()));
   fit.at_bound.assign(n, false);
-  if (solver.info() == Eigen::Success && solver.rcond() > 1e-15) {
-    fit.covariance = unit.asDiagonal() * solver.solve(Eigen::MatrixXd::Identity(count, count)) * unit.asDiagonal();
+  std::vector<std::size_t> shown(n);
+  std::iota(shown.begin(), shown.end(), 0);
+  fit.covariance = inverse_of(natural.normal, shown);
+  if (fit.covariance.size() == 0) {
+    // What has no slope here and is nearly alike in its effect (losses without phases) cannot be told apart: without those not
+    // seen; they keep the variance they have beside all the others, until their limits say more.
+    std::erase_if(shown, [&](std::size_t i) {
+      const auto k = static_cast<Eigen::Index>(i);
+      return settled.last.normal(k, k) < kVisible * result.scale * result.scale;
+    });
+    fit.covariance = inverse_of(natural.normal, shown);
+    if (fit.covariance.size() > 0) {
+      const Eigen::MatrixXd some = fit.covariance;
+      fit.covariance = Eigen::MatrixXd::Zero(count, count);
+      for (Eigen::Index i = 0; i < count; ++i) fit.covariance(i, i) = 1 / std::fmax(natural.normal(i, i), 1e-300);
+      for (std::size_t i = 0; i < shown.size(); ++i) {
+        for (std::size_t j = 0; j < shown.size(); ++j) {
+          fit.covariance(static_cast<Eigen::Index>(shown[i]), static_cast<Eigen::Index>(shown[j])) =
+              some(static_cast<Eigen::Index>(i), static_cast<Eigen::Index>(j));
+        }
+      }
+    }
+  }
+  if (fit.covariance.size() > 0) {
     fit.covariance *= result.scale * result.scale;
     const Eigen::VectorXd inverse = fit.parameters.cwiseInverse();
     result.log_covariance = inverse.asDiagonal() * fit.covariance * inverse.asDiagonal();
@@ -185,7 +233,7 @@ Result<CircuitFit> fit_circuit(const CircuitData& data, const CircuitFamily& fam
   const int most = options.quick ? kQuickIterations : kMostIterations;
   const double settled_at = options.quick ? kQuickSettled : kSettled;
   SettledCircuit settled = descend(equations, *start, 0, most, settled_at);
-  rescue(equations, settled, most, settled_at);
+  rescue(equations, result.phase_used, settled, most, settled_at);
   if ((settled.stop != FitStop::converged && !options.quick) || !std::isfinite(settled.chi)) {
     return failure(Problem::not_converged, "sweep", "no circuit of the kind " + name(family) + " follows the sweep", "");
   }

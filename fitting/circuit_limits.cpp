@@ -63,6 +63,11 @@ void find_limits(const CircuitEquations& equations, CircuitFit& fit) {
     limit.circuit = near;
     limit.circuit[parameter] = limit.value;
     fit.limits.push_back(limit);
+    // Where the effect grows with the square (losses without phases) the slope at the minimum promises too much.
+    const auto k = static_cast<Eigen::Index>(i);
+    const double wide = limit.at_most ? limit.value / fit.coverage_factor() : 0;
+    fit.fit.covariance(k, k) = std::fmax(fit.fit.covariance(k, k), wide * wide);
+    fit.log_covariance(k, k) = fit.fit.covariance(k, k) / (value * value);
     fit.fit.at_bound[i] = true;
   }
 }

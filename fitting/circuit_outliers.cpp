@@ -10,6 +10,7 @@ namespace coilassay {
 namespace {
 
 constexpr std::size_t kNeighbours = 3;        // on either side
+constexpr std::size_t kFewest = 16;           // of fewer points the circuit itself takes too much to judge one by the others
 constexpr double kMedianVariance = 1.3;       // 1 and that of a median of six
 
 std::vector<std::size_t> present(std::span<const std::complex<double>> residuals) {
@@ -36,12 +37,20 @@ double neighbour_noise(std::span<const std::complex<double>> residuals) {
   return 1.4826 * median(differences) / std::sqrt(2.0);
 }
 
-std::vector<std::size_t> standing_out(std::span<const std::complex<double>> residuals, double sigma, double false_alarms) {
+double worst_by_chance(std::size_t n, double false_alarms, bool sigma_known) {
+  const double count = static_cast<double>(n), odds = count / false_alarms;
+  if (sigma_known) return 2 * std::log(odds);
+  const double half = 0.15 * count;   // of the degrees of freedom; for two in the numerator the tail is (1 + x/half)^-half
+  return 2 * half * (std::pow(odds, 1 / half) - 1);
+}
+
+std::vector<std::size_t> standing_out(std::span<const std::complex<double>> residuals, double sigma, bool sigma_known,
+                                      double false_alarms) {
   const auto list = present(residuals);
   std::vector<std::size_t> out;
   const std::size_t n = list.size();
-  if (n < 3 * kNeighbours) return out;
-  const double limit = 2 * kMedianVariance * sigma * sigma * std::log(static_cast<double>(n) / false_alarms);
+  if (n < kFewest) return out;
+  const double limit = kMedianVariance * sigma * sigma * worst_by_chance(n, false_alarms, sigma_known);
   std::vector<double> real, imaginary;
   for (std::size_t k = 0; k < n; ++k) {
     // At an end the window moves inward: six neighbours everywhere.

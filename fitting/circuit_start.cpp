@@ -91,6 +91,9 @@ std::vector<Circuit> read_off(const Thinned& data, double reference_hz) {
   std::vector<double> capacitances;
   const auto resonant = [&](double f) { capacitances.push_back(1 / (l * kTwoPi * f * kTwoPi * f)); };
   if (crossing > 0) resonant(crossing);
+  const auto largest = std::max_element(data.z.begin(), data.z.end(), [](Complex a, Complex b) { return std::abs(a) < std::abs(b); });
+  const auto peak = static_cast<std::size_t>(largest - data.z.begin());
+  if (peak > 0 && peak + 1 < data.f.size()) resonant(data.f[peak]);
   for (const double factor : {1.5, 4.5, 15.0}) resonant(factor * top);
   const double c_top = (1.0 / data.z.back()).imag() / (kTwoPi * top);
   if (c_top > 0) capacitances.push_back(c_top);

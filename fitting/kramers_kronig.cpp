@@ -38,7 +38,8 @@ struct Resonance {
 class LogarithmEquations {
  public:
   LogarithmEquations(const CircuitData& data, const std::vector<std::size_t>& points, const Circuit& about)
-      : equations_(data, points, true), about_(about), y_(rows(points.size())) {
+      : equations_(data, points, false), about_(about), y_(rows(points.size())), share_(points.size(), 1.0) {
+    if (data.errors == SweepErrors::reflection) reference_ = data.reference_ohm;
     for (std::size_t i = 0; i < points.size(); ++i) omega_.push_back(2 * std::numbers::pi * equations_.frequency_hz(i));
     look();
   }
@@ -51,6 +52,11 @@ class LogarithmEquations {
       value *= std::exp(std::clamp(solution[kBroad + static_cast<Eigen::Index>(k)], -1.0, 1.0));
       if (order[k] == CircuitParameter::relaxation_share) value = std::fmin(value, 1.0);
     }
+    look();
+  }
+  const Circuit& about() const { return about_; }
+  void move_to(const Circuit& about) {
+    about_ = about;
     look();
   }
 
@@ -107,7 +113,8 @@ class LogarithmEquations {
       const Complex r = -equations_.residual(about_, i);
       y_[row(i)] = r.real();
       y_[row(i) + 1] = r.imag();
-      impedance_and_log_slopes(about_, equations_.frequency_hz(i), slope);
+      const Complex z = impedance_and_log_slopes(about_, equations_.frequency_hz(i), slope);
+      if (reference_ > 0) share_[i] = 2 * reference_ * z / ((z + reference_) * (z + reference_));
       for (std::size_t k = 0; k < parameters; ++k) put(fixed_, i, kBroad + static_cast<Eigen::Index>(k), unit[k] * slope[k]);
       put(fixed_, i, 0, 1.0);
       put(fixed_, i, 1, Complex(0, omega_[i] / omega_.back()));
@@ -127,7 +134,7 @@ class LogarithmEquations {
   }
 
   void put(Matrix& a, std::size_t i, Eigen::Index column, Complex value) const {
-    const Complex w = equations_.whitened(i, value);
+    const Complex w = equations_.whitened(i, value * share_[i]);
     a(row(i), column) = w.real();
     a(row(i) + 1, column) = w.imag();
   }
@@ -138,6 +145,8 @@ class LogarithmEquations {
   Matrix fixed_;
   Vector y_;
   std::vector<double> omega_;
+  double reference_ = 0;            // of S; 0: errors are alike in ln z
+  std::vector<Complex> share_;      // dS/d ln z, or 1
   std::vector<Resonance> resonances_;
 };
 
@@ -212,8 +221,14 @@ Solved grown(LogarithmEquations& equations, const std::vector<bool>& used, bool 
   }
   // A narrow resonance bends within its own uncertainty: follow it.
   for (int round = 0; round < 2; ++round) {
+    const Circuit before = equations.about();
     equations.move(best.coefficients);
-    best = solve(equations, used, best.elements);
+    const Solved next = solve(equations, used, best.elements);
+    if (!(next.chi <= best.chi * (1 + 1e-6))) {   // further than its slopes hold
+      equations.move_to(before);
+      break;
+    }
+    best = next;
   }
   return best;
 }
@@ -255,12 +270,6 @@ double likeness_probability(const std::vector<Complex>& residuals) {
   return 1 - normal_cdf((lag_one_correlation(real) + lag_one_correlation(imaginary)) * std::sqrt(n / 2));
 }
 
-/// A scale from the data is itself uncertain (about 6 % at 201 points): the limit leaves room for that.
-double limit_of(std::size_t points, bool scale_known) {
-  const double n = static_cast<double>(points);
-  return 2 * std::log(n / kFalseAlarms) * (scale_known ? 1 : 1 + 3 / std::sqrt(n));
-}
-
 struct Judged {
   Solved solved;
   double sigma = 1;
@@ -269,7 +278,7 @@ struct Judged {
 /// Takes out points that lie off, the worst first, until none does.
 Judged judge(LogarithmEquations& equations, std::vector<bool>& used, bool scale_known) {
   Judged now;
-  const double limit = limit_of(used.size(), scale_known);
+  const double limit = worst_by_chance(used.size(), kFalseAlarms, scale_known);
   for (std::size_t round = 0; round < kMostRounds; ++round) {
     now.solved = grown(equations, used, scale_known);
     if (!scale_known) now.sigma = neighbour_noise(even_residuals(now.solved, used));
@@ -350,11 +359,9 @@ Result<KramersKronig> test_kramers_kronig(const CircuitData& data, const std::op
   }
   std::optional<Circuit> circuit = about;
   if (!circuit) {
-    CircuitFitOptions options;
-    options.limits = false;
-    const auto fit = fit_circuit(data, {.parallel_loss = true, .skin = true}, options);
-    if (!fit) return failure(fit);
-    circuit = fit->circuit;
+    auto choice = choose_circuit(data);
+    if (!choice) return failure(choice);
+    circuit = choice->best.circuit;
   }
   LogarithmEquations equations(data, points, *circuit);
   std::vector<bool> used(points.size(), true);

@@ -14,7 +14,8 @@ namespace coilassay {
 struct KramersKronig {
   std::vector<double> frequency_hz;             // of the points used, rising
   std::vector<std::size_t> index;               // of each of them in the data
-  std::vector<std::complex<double>> residual;   // of ln z (relative error, phase in rad): data less causal model, of each of them
+  std::vector<std::complex<double>> residual;   // data less causal model of each of them: of ln z (relative error, phase in rad),
+                                                // or of S for reflections
   std::vector<double> predicted_u;              // standard deviation of the parts of each residual by the errors of the data
   std::size_t elements = 0;                     // relaxations in the model
   double mu = 1;                                // how little positive and negative ones play against each other
@@ -30,9 +31,9 @@ struct KramersKronig {
 /// data (Schoenleber, Klotz, Ivers-Tiffee, Electrochim. Acta 131 (2014) 20, and chi-square).
 ///
 /// `about`: a circuit near the data, the chosen one; being causal itself it does not change the question, it only lets
-/// resonances be followed. Nothing: R L C with skin and parallel loss is fitted first.
+/// resonances be followed. Nothing: choose_circuit looks for one first, which costs ten times the test.
 ///
-/// @return too_few_samples: fewer than 12 points, or no phase; what fit_circuit returns when `about` is missing.
+/// @return too_few_samples: fewer than 12 points, or no phase; what choose_circuit returns when `about` is missing.
 /// @see docs/formulas.md#causality
 Result<KramersKronig> test_kramers_kronig(const CircuitData& data, const std::optional<Circuit>& about = std::nullopt);
 

@@ -102,24 +102,13 @@ TEST(CircuitFit, WhatIsNotSeenIsALimit) {
   EXPECT_NEAR(chi - fit->chi_square, 1.96 * 1.96, 0.1);
 }
 
-/// Errors of 1e-4 in S about 50 ohm.
-test::MadeSweep reflection_sweep(const test::SweepTruth& truth, double u, Random& random) {
-  auto sweep = test::make_sweep(truth, 201, 0, random);
-  for (Complex& z : sweep.z) {
-    const double a = random.normal(), b = random.normal();
-    const Complex s = (z - 50.0) / (z + 50.0) + u * Complex(a, b);
-    z = 50.0 * (1.0 + s) / (1.0 - s);
-  }
-  return sweep;
-}
-
 TEST(CircuitFit, WeightsReflectionsByTheirOwnErrors) {
   // 22 uH and 12 pF reach 20 kohm at resonance: |S| is 1 within 0.005, and the errors of 1e-3 make of z what they like there.
   double in_s = 0, in_z = 0, chi = 0;
   for (std::uint64_t d = 0; d < 60; ++d) {
     Random random(d, 4);
     const auto truth = coil();
-    const auto sweep = reflection_sweep(truth, 1e-3, random);
+    const auto sweep = test::make_reflection_sweep(truth, 201, 1e-3, random);
     CircuitData data = data_of(sweep, 1e-3);
     data.errors = SweepErrors::reflection;
     const auto right = fit_circuit(data, {.parallel_loss = true});
@@ -139,7 +128,7 @@ TEST(CircuitFit, AResistanceThatAReflectionHardlySeesIsALimit) {
   auto truth = coil();
   truth.r = 1e-3;              // moves S by 4e-5 at most
   truth.g = 1e-9;              // and this by 1e-7
-  const auto sweep = reflection_sweep(truth, 1e-3, random);
+  const auto sweep = test::make_reflection_sweep(truth, 201, 1e-3, random);
   CircuitData data = data_of(sweep, 1e-3);
   data.errors = SweepErrors::reflection;
   const auto fit = fit_circuit(data, {.parallel_loss = true});
@@ -165,6 +154,24 @@ TEST(CircuitFit, DoesWithoutPhases) {
     EXPECT_LT(std::fabs(fit->value(p) - value), 4 * fit->standard_uncertainty(p)) << name(p);
     EXPECT_LT(fit->standard_uncertainty(p), 0.05 * value);
   }
+}
+
+TEST(CircuitFit, FindsTheMinimumWithoutPhasesToo) {
+  int missed = 0;
+  for (std::uint64_t d = 0; d < 60; ++d) {
+    Random random(d, 11);
+    const int elements = 3 + static_cast<int>(d % 3);
+    const auto truth = test::draw_sweep(random, elements);
+    auto sweep = test::make_sweep(truth, 201, 1e-2, random);
+    for (Complex& z : sweep.z) z = std::abs(z);
+    CircuitData data = data_of(sweep, 1e-2);
+    data.u_phase = {HUGE_VAL};
+    const auto fit = fit_circuit(data, {.parallel_loss = elements > 3, .skin = elements > 4});
+    double of_truth = 0;
+    for (std::size_t i = 0; i < data.size(); ++i) of_truth += std::pow(std::log(std::abs(impedance_of(truth, sweep.f[i]) / sweep.z[i])) / 1e-2, 2);
+    if (!fit || !fit->usable() || fit->chi_square > of_truth + 9) ++missed;
+  }
+  EXPECT_LE(missed, 1);
 }
 
 TEST(CircuitFit, TakesUnequalAndCorrelatedErrors) {

@@ -63,4 +63,15 @@ inline MadeSweep make_sweep(const SweepTruth& t, int points, double relative, Ra
   return sweep;
 }
 
+/// The same with errors `u` of the real and the imaginary part of S about 50 ohm.
+inline MadeSweep make_reflection_sweep(const SweepTruth& t, int points, double u, Random& random) {
+  MadeSweep sweep = make_sweep(t, points, 0, random);
+  for (std::complex<double>& z : sweep.z) {
+    const double a = random.normal(), b = random.normal();
+    const std::complex<double> s = (z - 50.0) / (z + 50.0) + u * std::complex<double>(a, b);
+    z = 50.0 * (1.0 + s) / (1.0 - s);
+  }
+  return sweep;
+}
+
 }  // namespace coilassay::test
