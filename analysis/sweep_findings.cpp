@@ -13,6 +13,7 @@ namespace {
 using Complex = std::complex<double>;
 constexpr double kPi = std::numbers::pi;
 constexpr double kDegree = kPi / 180;
+constexpr double kRounding = 1e-6;         // of |Z|: what the digits of a file leave, and no analyser sees
 constexpr double kNear = 0.1;              // f/f_r from which the capacitance shows: 1 % of L
 constexpr double kThroughout = 0.9;        // share of the points
 constexpr double kLowQ = 5;                // from where series and parallel values differ by 4 %
@@ -89,6 +90,7 @@ void judge_causality(Measurement& m, const SweepModel& model) {
     if (named && off > kBeyondStated * model.stated[i]) where.push_back(model.points.frequency_hz[i]);
   }
   if (where.empty() && rms <= allowed) return;
+  if (worst < kRounding) return;
   const std::string what = where.empty()
                                ? "the sweep as a whole is not what a passive, linear circuit can do"
                                : "no passive, linear circuit can have made the points at " + frequencies(where);

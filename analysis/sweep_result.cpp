@@ -135,9 +135,11 @@ FittedInputs sweep_fitted(const SweepModel& model) {
 
 double nearby_resonance_hz(const Circuit& circuit, double start_hz) {
   double f = start_hz;
-  for (int k = 0; k < 4; ++k) {
+  // By the susceptance: it crosses zero where the reactance does, but nearly straight, however narrow the resonance.
+  for (int k = 0; k < 6; ++k) {
     const ImpedanceSlopes at = impedance_slopes(circuit, f);
-    const double next = f - at.z.imag() / at.by_frequency.imag();
+    const std::complex<double> y = 1.0 / at.z, slope = -at.by_frequency * y * y;
+    const double next = f - y.imag() / slope.imag();
     if (!(next > 0.5 * start_hz && next < 2 * start_hz)) return std::nan("");
     f = next;
   }
