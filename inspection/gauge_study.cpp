@@ -11,7 +11,6 @@
 
 #include "base/outside_text.h"
 #include "base/random.h"
-#include "inspection/words.h"
 
 namespace coilassay {
 
@@ -124,13 +123,13 @@ void judge(GaugeStudy& study) {
   const std::string base = study.grr_of_tolerance ? "of the tolerance" : "of the study's variation";
   const auto verdict = [&](bool good, bool conditional) { return good ? "good" : conditional ? "conditional" : "poor"; };
   study.judgement = verdict(grr < kGood, grr <= kConditional);
-  study.why.push_back(fmt::format("%GRR is {} {}: below 10 % is good, up to 30 % conditional", percent_in_words(grr), base));
+  study.why.push_back(fmt::format("%GRR is {:.1f} % {}: below 10 % is good, up to 30 % conditional", 100 * grr, base));
   if (study.ndc < kEnoughCategories) {
     // Against a tolerance parts need not differ; for telling them apart they must.
     if (!study.grr_of_tolerance) study.judgement = "poor";
-    study.why.push_back(fmt::format("the readings tell {} categories of these parts apart, where 5 are asked for", study.ndc));
+    study.why.push_back(fmt::format("The readings tell {} categories of these parts apart, where 5 are asked for", study.ndc));
   } else {
-    study.why.push_back(fmt::format("the readings tell {} categories of these parts apart", study.ndc));
+    study.why.push_back(fmt::format("The readings tell {} categories of these parts apart", study.ndc));
   }
 }
 

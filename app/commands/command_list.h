@@ -34,6 +34,7 @@ Command ledger_export_command();
 Command ledger_correct_command();
 Command acquire_command();
 Command simulate_instrument_command();
+Command gauge_command();
 Command help_command();
 Command man_command();
 Command completion_command();

@@ -284,6 +284,7 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
       {"acquire", {profile, "-o", folder / "run.csv", "--count", "1"}},
       {"simulate sweep", {"-o", folder / "new-sweep.csv"}},
       {"sweep", {folder.file("coil.csv", sweep_csv())}},
+      {"gauge", {folder.file("gauge.csv", "part,operator,trial,value\n1,a,1,1\n1,a,2,2\n2,a,1,5\n2,a,2,7\n")}},
       {"simulate burst", {"-o", folder / "new-burst.csv"}},
       {"inspect", {part, lot}},
   };
