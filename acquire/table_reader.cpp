@@ -1,13 +1,12 @@
 #include "acquire/table_reader.h"
 
 #include <fmt/format.h>
-#include <utf8cpp/utf8.h>
 
 #include <algorithm>
 
 #include "acquire/byte_source_lines.h"
 #include "acquire/table_dialect.h"
-#include "acquire/table_header.h"
+#include "acquire/table_head.h"
 #include "acquire/table_join.h"
 #include "acquire/table_meaning.h"
 #include "acquire/table_pipeline.h"
@@ -18,18 +17,7 @@
 namespace coilassay {
 namespace {
 
-/// Lines in which preamble and dialect are looked for.
-constexpr std::size_t kLinesLookedAt = 4000;
-
-constexpr std::string_view kByteOrderMark = "\xEF\xBB\xBF";
-
 std::string place(const std::string& name, std::size_t line) { return fmt::format("{}:{}", name, line); }
-
-/// A large-file store leaves a note in place of a file that was not fetched.
-bool is_placeholder(std::string_view text) {
-  return text.size() < 1024 && text.starts_with("version ") && text.find("\noid sha256:") != std::string_view::npos &&
-         text.find("\nsize ") != std::string_view::npos;
-}
 
 class TableRead {
  public:
@@ -56,25 +44,12 @@ class TableRead {
 
  private:
   Result<void> understand() {
-    std::string_view text = block_.text();
-    if (text.starts_with(kByteOrderMark)) text.remove_prefix(kByteOrderMark.size());
-    if (text.empty()) return failure(Problem::not_a_capture, name_, "the file is empty", "export the waveform again");
-    if (text.find('\0') != std::string_view::npos) {
-      return failure(Problem::not_a_capture, name_, "it is a binary file, not a table in text", "export the waveform as CSV");
-    }
-    if (is_placeholder(text)) {
-      return failure(Problem::not_a_capture, name_, "it is the placeholder of a large-file store, not the data themselves",
-                     "fetch the real file from the store it belongs to");
-    }
-    std::vector<TableLine> lines = lines_of(text, true);
-    if (lines.size() > kLinesLookedAt) lines.resize(kLinesLookedAt);
-    lines.erase(lines.begin(), lines.begin() + static_cast<std::ptrdiff_t>(std::min(options_.skip, lines.size())));
-    const auto dialect = find_dialect(name_, lines, options_);
-    if (!dialect) return failure(dialect);
-    dialect_ = *dialect;
-    const std::string_view preamble = text.substr(0, static_cast<std::size_t>(lines[dialect_.first_row].text.data() - text.data()));
-    if (!utf8::is_valid(preamble.begin(), preamble.end())) encoding_ = "windows-1252";
-    header_ = understand_header(lines, dialect_);
+    const auto head = understand_head(name_, block_.text(), options_);
+    if (!head) return failure(head);
+    const std::vector<TableLine>& lines = head->lines;
+    dialect_ = head->dialect;
+    header_ = head->header;
+    if (!head->utf8) encoding_ = "windows-1252";
     if (!options_.columns.empty()) {
       const auto fits = apply_reading_key(name_, lines[dialect_.first_row].number, options_.columns, header_);
       if (!fits) return fits;

@@ -110,6 +110,16 @@ std::optional<ColumnUnit> understand_column_unit(std::string_view text) {
   return std::nullopt;
 }
 
+std::string column_unit_text(const ColumnUnit& unit) {
+  std::string text = unit.degrees ? "deg" : unit.decibels ? "dB" : std::string(symbol(unit.unit));
+  if (unit.exponent != 0) {
+    const auto prefix = std::find_if(kPrefixes.begin(), kPrefixes.end(),
+                                     [&](const Prefix& each) { return each.exponent == unit.exponent; });
+    text = prefix == kPrefixes.end() ? std::string() : std::string(prefix->text) + text;
+  }
+  return understand_column_unit(text) == unit ? text : std::string();
+}
+
 Heading understand_heading(const std::string& heading) {
   for (const auto& [open, close] : {std::pair{'(', ')'}, std::pair{'[', ']'}, std::pair{'{', '}'}}) {
     if (heading.empty() || heading.back() != close) continue;

@@ -15,10 +15,14 @@ struct ColumnUnit {
   int exponent = 0;
   bool degrees = false;   // an angle in degrees: the factor is no power of ten
   bool decibels = false;  // twenty times the decimal logarithm
+  friend bool operator==(const ColumnUnit&, const ColumnUnit&) = default;
 };
 
 /// "V", "mV", "Volt", "volts", "us", "µs", "seconds", "Amp", "kHz", "Ohm", "Ω", "deg"; std::nullopt when it is none.
 std::optional<ColumnUnit> understand_column_unit(std::string_view text);
+
+/// The way back: "mV", "deg", "dB"; empty for a unit that headings do not write.
+std::string column_unit_text(const ColumnUnit& unit);
 
 /// A heading taken apart: "CH1 (V)" and "CH1 [V]" are CH1 in volts; "time_us" keeps its whole name, and has a unit when
 /// the ending can mean only one thing. What stands in brackets and is no unit stays in the name.

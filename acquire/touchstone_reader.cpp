@@ -135,6 +135,7 @@ class TouchstoneRead {
       if (value.kind == CellKind::text || (frequency && value.kind != CellKind::number)) {
         return damaged(fmt::format("'{}' is no number", shown(cell, 40)));
       }
+      if (frequency && value.value < 0) return damaged(fmt::format("a frequency of {} is below zero", shown(cell, 40)));
       pending_.push_back(value.value);
       if (pending_.size() == numbers_per_point()) {
         if (const auto done = take_point(); !done) return done;

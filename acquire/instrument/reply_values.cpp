@@ -54,7 +54,8 @@ tl::unexpected<Error> unreadable(const std::string& place, std::string finding) 
 
 /// One step of the last digit of a decimal number: "4.70e-5" gives 1e-7.
 double last_digit(std::string_view number) {
-  int digits = 0, exponent = 0;
+  int digits = 0;
+  double exponent = 0;  // whatever was sent, beyond all numbers too
   bool point = false;
   std::size_t i = 0;
   for (; i < number.size(); ++i) {
@@ -65,9 +66,10 @@ double last_digit(std::string_view number) {
     else if (c != '+' && c != '-') return std::nan("");
   }
   if (i < number.size()) {
-    if (const auto e = parse_plain_number(number.substr(i + 1))) exponent = static_cast<int>(*e);
+    if (const auto e = parse_plain_number(number.substr(i + 1))) exponent = *e;
   }
-  return std::pow(10.0, exponent - digits);
+  const double step = std::pow(10.0, exponent - digits);
+  return std::isfinite(step) ? step : std::nan("");
 }
 
 struct Number {

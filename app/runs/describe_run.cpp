@@ -3,6 +3,7 @@
 #include <algorithm>
 #include <filesystem>
 
+#include "acquire/table_head.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
 
@@ -88,7 +89,8 @@ std::string likely_columns(const Description& d) {
 
 }  // namespace
 
-Result<std::string> reading_key(const Description& description, const ReadOptions& reading) {
+Result<std::string> reading_key(const Description& description, const ReadOptions& reading,
+                                const std::vector<std::string>& found) {
   const Dialect& dialect = description.dialect;
   if (dialect.format != "table" || dialect.delimiter.empty() || dialect.decimal.empty()) {
     return failure(Problem::usage, "--bench-out",
@@ -99,9 +101,10 @@ Result<std::string> reading_key(const Description& description, const ReadOption
   text += "delimiter = " + toml_text(delimiter_text(dialect.delimiter.front())) + "\n";
   text += "decimal = " + toml_text(dialect.decimal) + "\n";
   if (reading.skip > 0) text += "skip = " + std::to_string(reading.skip) + "\n";
-  if (!reading.columns.empty()) {
+  const std::vector<std::string>& headings = reading.columns.empty() ? found : reading.columns;
+  if (!headings.empty()) {
     std::string columns;
-    for (const std::string& heading : reading.columns) columns += (columns.empty() ? "" : ", ") + toml_text(heading);
+    for (const std::string& heading : headings) columns += (columns.empty() ? "" : ", ") + toml_text(heading);
     text += "columns = [" + columns + "]\n";
   }
   if (reading.sample_interval_s) {
@@ -127,7 +130,13 @@ Result<std::vector<DescribedFile>> run_describe(const DescribeJob& job, const Ru
         {file, recording ? Result<Description>(describe(*recording, job.options)) : failure(recording)});
   }
   if (job.bench_out && described.front().description) {
-    const Result<std::string> key = reading_key(*described.front().description, *reading);
+    const Description& first = *described.front().description;
+    std::vector<std::string> columns;
+    // Standard input is used up, and a file that is gone by now has been described all the same.
+    if (job.files.front() != "-" && first.dialect.format == "table") {
+      columns = reading_key_columns(job.files.front(), *reading).value_or(std::vector<std::string>());
+    }
+    const Result<std::string> key = reading_key(first, *reading, columns);
     if (!key) return failure(key);
     if (const Result<void> written = context.write(*job.bench_out, *key); !written) return failure(written);
   }

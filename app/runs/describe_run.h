@@ -27,6 +27,8 @@ Result<std::vector<DescribedFile>> run_describe(const DescribeJob& job, const Ru
 
 /// The sheet that makes the next files be read as this one: [file] with what was found and what was stated, and the
 /// likely columns as comments, to be completed by hand. usage for a format that has no reading key.
-Result<std::string> reading_key(const Description& description, const ReadOptions& reading);
+/// @param columns  headings of the file; not needed when the options state them, empty when they are not known
+Result<std::string> reading_key(const Description& description, const ReadOptions& reading,
+                                const std::vector<std::string>& columns = {});
 
 }  // namespace coilassay

@@ -27,6 +27,14 @@ TEST(Reply, ValuesAreTurnedIntoSi) {
   EXPECT_TRUE(reading->good());
 }
 
+// A zero with an exponent beyond all numbers is a zero, of no known resolution.
+TEST(Reply, AnExponentBeyondAllNumbersDoesNoHarm) {
+  const auto reading = parse_reading(setup_of(kTwo), "0E3537322222222222222222222222222222222222222222222225,0.35,0", "port");
+  ASSERT_TRUE(reading) << reading.error().finding;
+  EXPECT_EQ(reading->values[0].value, 0);
+  EXPECT_TRUE(std::isnan(reading->values[0].resolution));
+}
+
 TEST(Reply, AValueMayBringItsOwnUnit) {
   const auto reading = parse_reading(setup_of("separator = \"space\"\nfields = [\"L_s [H]\", \"R_s [ohm]\"]\n"), " 47.02uH   350mΩ ", "port");
   ASSERT_TRUE(reading) << reading.error().finding;

@@ -223,6 +223,7 @@ struct Damage {
 TEST_F(Touchstone, DamageIsNamedWithItsLine) {
   for (const Damage& d : {Damage{"a.s1p", "# Hz Z RI R 50\n1000 2 1\n2000 2\n", "a.s1p:3", "2 numbers of 3"},
                           Damage{"a.s1p", "# Hz Z RI R 50\n1000 2 x\n", "a.s1p:2", "'x' is no number"},
+                          Damage{"a.s1p", "# Hz Z RI R 50\n-1000 2 1\n", "a.s1p:2", "below zero"},
                           Damage{"a.s1p", "# Hz Z RI R fifty\n1000 2 1\n", "a.s1p:1", "R without a resistance"},
                           Damage{"a.s1p", "# Hz Q RI R 50\n1000 2 1\n", "a.s1p:1", "'q'"},
                           Damage{"a.s1p", "! nothing\n", "a.s1p", "no network data"},

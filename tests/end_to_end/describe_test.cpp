@@ -131,15 +131,42 @@ TEST(DescribeProgram, AReadingKeyIsABenchSheetThatReadsTheFileAgain) {
   EXPECT_EQ(first.exit_code, 0) << first.error;
   const std::string written = contents_of(sheet);
   EXPECT_NE(written.find("delimiter = \";\"\ndecimal = \",\"\n"), std::string::npos) << written;
+  EXPECT_NE(written.find("columns = [\"Zeit [us]\", \"U [V]\"]\n"), std::string::npos) << written;
   EXPECT_NE(written.find("# column = \"U\""), std::string::npos) << written;
 
   const Json again = described_json({file, "--bench", sheet});
   EXPECT_EQ(again["samples"], 400);
   EXPECT_EQ(again["suggestion"]["command"], "coilassay ringdown " + file + " --bench " + sheet);
 
+  // A file whose columns changed places no longer fits.
+  std::string other = text.str();
+  other.replace(0, other.find('\n'), "U [V];Zeit [us]");
+  const ProgramEnd changed = run_program_process({"describe", folder.file("other.csv", other), "--bench", sheet});
+  EXPECT_EQ(changed.exit_code, 2);
+  EXPECT_NE(changed.error.find("column 1 is 'U' where the reading key names 'Zeit'"), std::string::npos) << changed.error;
+
   const ProgramEnd second = run_program_process({"describe", file, "--bench-out", sheet});
   EXPECT_EQ(second.exit_code, 2);
   EXPECT_EQ(contents_of(sheet), written);
+}
+
+// Every table among the readers' own files: with the key that was made of it, it is described as without.
+TEST(DescribeProgram, TheReadingKeyOfATableReadsItTheSameWay) {
+  std::size_t with_columns = 0;
+  for (const auto& entry : std::filesystem::directory_iterator("tests/acquire/data")) {
+    const std::string file = entry.path().string();
+    if (file.ends_with(".wav")) continue;
+    const TemporaryFolder folder;
+    const std::string sheet = folder / "key.toml";
+    const ProgramEnd made = run_program_process({"describe", file, "--bench-out", sheet});
+    if (made.exit_code != 0) continue;  // no table with a key
+    with_columns += contents_of(sheet).find("columns = [") != std::string::npos ? 1u : 0u;
+    Json plain = described_json({file}), keyed = described_json({file, "--bench", sheet});
+    plain.erase("suggestion");
+    keyed.erase("suggestion");
+    EXPECT_EQ(plain, keyed) << file << "\n" << contents_of(sheet);
+  }
+  EXPECT_GT(with_columns, 8u);
 }
 
 TEST(DescribeProgram, AReadingKeyIsForOneTableOnly) {

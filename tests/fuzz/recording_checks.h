@@ -39,8 +39,10 @@ inline void check_capture(const Capture& capture) {
 inline void check_sweep(const Sweep& sweep) {
   const std::size_t points = sweep.frequency_hz.size();
   require(points > 0, "a sweep has a point");
+  require(sweep.z_ohm.size() == points && sweep.bad.size() == points, "each point has its matrix and mark");
+  for (const auto& matrix : sweep.z_ohm) require(matrix.size() == sweep.ports * sweep.ports, "a matrix is as large as its ports say");
   for (std::size_t i = 0; i < points; ++i) {
-    require(std::isfinite(sweep.frequency_hz[i]) && sweep.frequency_hz[i] >= 0, "a frequency is a number");
+    require(sweep.bad[i] || (std::isfinite(sweep.frequency_hz[i]) && sweep.frequency_hz[i] >= 0), "a usable point has a frequency");
   }
 }
 
