@@ -56,6 +56,8 @@ std::vector<LotValues> lot_values(std::span<const UnitVerdict> units) {
     statistic.limit = i;
     statistic.quantity = units.front().limits[i].quantity;
     statistic.unit = units.front().limits[i].unit;
+    statistic.capability = capability_of(values.x, units.front().limits[i].min, units.front().limits[i].max);
+    if (const auto chart = individuals_chart(values.x)) statistic.signals = chart->signals;
     all.push_back(statistic);
   }
   return all;

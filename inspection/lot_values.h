@@ -7,6 +7,7 @@
 #include <string>
 #include <vector>
 
+#include "inspection/capability.h"
 #include "inspection/verdict.h"
 
 namespace coilassay {
@@ -23,6 +24,8 @@ struct LotValues {
   double u_common = 0;               // root mean square of the errors that all units share
   std::optional<double> spread;      // of the parts themselves: deviation with u_own taken out; 0 when u_own explains it all
   std::optional<double> U_mean;      // half-width of the 95 % interval of the mean of these units' kind: scatter and common
+  std::optional<Capability> capability;   // of the process, from the values in the order of the lot
+  std::vector<RunSignal> signals;         // what shows that it is not steady
 };
 
 /// One for each limit with at least one value, in the order of the sheet.

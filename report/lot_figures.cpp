@@ -4,6 +4,7 @@
 #include <cmath>
 #include <numeric>
 
+#include "inspection/capability.h"
 #include "report/wording.h"
 
 namespace coilassay {
@@ -12,7 +13,6 @@ namespace {
 
 using Mark = FigureSeries::Mark;
 
-constexpr double kMovingRangeFactor = 2.66;  // 3 / 1.128, d2 of two values
 constexpr double kLeastBins = 6, kMostBins = 40;
 
 struct Values {
@@ -100,17 +100,13 @@ FigurePanel histogram_panel(const Limit& limit, const std::vector<double>& y) {
 }
 
 FigurePanel run_panel(const LotRecord& lot, const Limit& limit, const Values& values) {
-  const auto n = static_cast<double>(values.y.size());
-  const double mean = std::accumulate(values.y.begin(), values.y.end(), 0.0) / n;
-  double moving = 0;
-  for (std::size_t i = 1; i < values.y.size(); ++i) moving += std::fabs(values.y[i] - values.y[i - 1]);
-  moving /= n - 1;
   FigurePanel panel{.x_label = "units in the order of the lot", .y_label = limit.quantity, .y_unit = limit.unit, .height = 1.2};
   const auto last = static_cast<double>(lot.units.size() + 1);
-  const double reach = kMovingRangeFactor * moving;
-  panel.series.push_back(level(Mark::dashes, "process limits", 0, last, mean + reach));
-  panel.series.push_back(level(Mark::dashes, "", 0, last, mean - reach));
-  panel.series.push_back(level(Mark::trace, "mean", 0, last, mean));
+  if (const auto chart = individuals_chart(values.y)) {
+    panel.series.push_back(level(Mark::dashes, "process limits", 0, last, chart->high));
+    panel.series.push_back(level(Mark::dashes, "", 0, last, chart->low));
+    panel.series.push_back(level(Mark::trace, "mean", 0, last, chart->centre));
+  }
   panel.series.push_back({Mark::line, "", values.x, values.y, {}});
   panel.series.push_back({Mark::error_bars, "value", values.x, values.y, std::vector<double>(values.y.size(), std::nan(""))});
   return panel;

@@ -11,8 +11,7 @@ namespace coilassay {
 
 /// One limit of the sheet over all units with a value: values from the lowest to the highest with their intervals between
 /// the limits; how often each value occurs; and the values in the order of the lot, with their mean and the limits of a
-/// process that only scatters (mean +- 2.66 times the mean moving range, ISO 7870-2:2013, individuals chart; from memory,
-/// 2.66 = 3/1.128 computed). No panels when fewer than two units have a value.
+/// process that only scatters (inspection/capability.h). No panels when fewer than two units have a value.
 Figure lot_values_figure(const LotRecord& lot, std::size_t limit);
 
 /// How often the plan accepts a lot, against the part of it that is bad. No panels for a plan that looks at every unit.

@@ -61,6 +61,28 @@ Json unit(const LotUnitRecord& record) {
   return document;
 }
 
+Json index_document(const std::optional<Index>& index) {
+  if (!index) return nullptr;
+  return Json{{"value", number(index->value)}, {"interval", {number(index->low), number(index->high)}}};
+}
+
+Json capability(const LotValues& values) {
+  if (!values.capability) return nullptr;
+  const Capability& c = *values.capability;
+  return Json{{"Cp", index_document(c.cp)},
+              {"Cpk", index_document(c.cpk)},
+              {"Pp", index_document(c.pp)},
+              {"Ppk", index_document(c.ppk)},
+              {"deviation_within", number(c.deviation_within)},
+              {"deviation_overall", number(c.deviation_overall)}};
+}
+
+Json signals(const LotValues& values) {
+  Json list = Json::array();
+  for (const RunSignal& each : values.signals) list.push_back({{"rule", name(each.rule)}, {"at", each.at + 1}});
+  return list;
+}
+
 Json statistics(const LotRecord& lot) {
   Json list = Json::array();
   for (const LotValues& each : lot.statistics) {
@@ -74,7 +96,9 @@ Json statistics(const LotRecord& lot) {
                     {"deviation", if_known(each.deviation)},
                     {"spread", if_known(each.spread)},
                     {"u_own", number(each.u_own)},
-                    {"u_common", number(each.u_common)}});
+                    {"u_common", number(each.u_common)},
+                    {"capability", capability(each)},
+                    {"signals", signals(each)}});
   }
   return list;
 }

@@ -117,12 +117,14 @@ void write_values(HtmlBuilder& page, const LotRecord& lot) {
   for (const LotValues& each : lot.statistics) {
     page.open("h3").symbol(each.quantity).close();
     page.element("p", values_in_words(each, kScript) + ".");
+    if (const std::string capability = capability_in_words(each); !capability.empty()) page.element("p", capability + ".");
     const std::string number = std::to_string(each.limit);
     write_figure(page, lot_values_figure(lot, each.limit), "v" + number);
   }
   page.element("p",
                "The interval of the mean holds the scatter of the units and the errors common to all of them (standards, "
-               "gains), which no number of units averages out.",
+               "gains), which no number of units averages out. Cp and Cpk are from the scatter between neighbours, Pp and Ppk from that of "
+               "all units, each with its 95 % interval.",
                {{"class", "small"}});
   page.close();
 }

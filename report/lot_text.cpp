@@ -20,14 +20,17 @@ void write_decision(TextPage& page, const LotRecord& lot) {
 std::vector<std::string> reasons(const UnitVerdict& unit, Script script) {
   std::vector<std::string> sentences;
   std::string symbols, why;
+  Verdict verdict = Verdict::undecided;
   const auto flush = [&] {
-    if (!symbols.empty()) sentences.push_back(fmt::format("no value of {}: {}", symbols, shown(why, 600)));
+    const char* form = verdict == Verdict::not_comparable ? "{} cannot be compared: {}" : "no value of {}: {}";
+    if (!symbols.empty()) sentences.push_back(fmt::format(fmt::runtime(form), symbols, shown(why, 600)));
     symbols.clear();
   };
   for (const LimitVerdict& limit : unit.limits) {
     if (limit.verdict == Verdict::pass) continue;
     if (!limit.value) {
-      if (limit.why != why) flush();
+      if (limit.why != why || limit.verdict != verdict) flush();
+      verdict = limit.verdict;
       symbols += (symbols.empty() ? "" : ", ") + limit.quantity;
       why = limit.why;
       continue;
@@ -90,6 +93,8 @@ void write_values(TextPage& page, const LotRecord& lot) {
   for (const LotValues& each : lot.statistics) widest = std::max(widest, each.quantity.size());
   for (const LotValues& each : lot.statistics) {
     page.paragraph(values_in_words(each, page.style().script), std::string(kTextIndent) + padded(each.quantity, widest + 2));
+    const std::string capability = capability_in_words(each);
+    if (!capability.empty()) page.paragraph(capability, std::string(widest + 4, ' '));
   }
 }
 

@@ -86,8 +86,28 @@ std::string values_in_words(const LotValues& values, Script script) {
   if (values.spread) {
     text += "; the parts spread by " + (*values.spread > 0 ? words(*values.spread, 2) : "less than their own errors");
   }
-  text += "; standard uncertainty " + words(values.u_own, 2) + " of each unit for itself, " + words(values.u_common, 2) +
-          " common to all";
+  text += "; standard uncertainty ";
+  if (values.u_own > 0) text += words(values.u_own, 2) + " of each unit for itself, ";
+  text += words(values.u_common, 2) + " common to all";
+  return text;
+}
+
+std::string capability_in_words(const LotValues& values) {
+  if (!values.capability) return "";
+  std::string text;
+  const auto add = [&text](const char* symbol, const std::optional<Index>& index) {
+    if (!index) return;
+    text += fmt::format("{}{} {:.2f} ({:.2f} to {:.2f})", text.empty() ? "" : ", ", symbol, index->value, index->low, index->high);
+  };
+  add("Cp", values.capability->cp);
+  add("Cpk", values.capability->cpk);
+  add("Pp", values.capability->pp);
+  add("Ppk", values.capability->ppk);
+  if (!values.signals.empty()) {
+    text += fmt::format("; the values are not those of a steady process ({} at value {}{}), so these say little about the next lot",
+                        name(values.signals.front().rule), values.signals.front().at + 1,
+                        values.signals.size() > 1 ? fmt::format(", and {} more", values.signals.size() - 1) : "");
+  }
   return text;
 }
 

@@ -31,6 +31,9 @@ std::vector<const LotUnitRecord*> not_passing(const LotRecord& lot);
 /// "47.02 µH on average (± 0.31 µH), from 45.10 µH to 48.90 µH; parts spread by 0.82 µH; ...".
 std::string values_in_words(const LotValues& values, Script script);
 
+/// "Cpk 1.31 (0.95 to 1.67), Ppk 1.10 (0.80 to 1.40)", and what shows that the process is not steady; empty when nothing can be said.
+std::string capability_in_words(const LotValues& values);
+
 /// "a lot with 5 % bad passes 66 times in 100, one with 10 % bad 43 times"; empty for a plan that looks at every unit.
 std::string protection_in_words(const LotRecord& lot);
 

@@ -78,3 +78,6 @@ simulate sine drum-sine --seed 22 --bits 12 --frequency 100kHz --amplitude 1.4V 
 simulate resistance drum-resistance --seed 23 --resistance 88mohm --temperature 21.5degC --current 1A --thermal-offset 7uV \
   --noise 2uV --current-noise 40uA --digit 1uV --current-digit 100uA --thermal-resistance 6
 }
+
+# The lot of the incoming inspection.
+if [ $# -lt 2 ]; then sh "$(dirname "$0")/make-lot.sh" "$program"; else sh "$(dirname "$0")/make-lot.sh" "$program" "$to/drum-lot"; fi

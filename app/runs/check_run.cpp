@@ -37,13 +37,26 @@ Result<void> take_reading(const Estimate& value, const std::vector<TestRun>& run
 
 }  // namespace
 
-std::optional<Estimate> check_value(const CheckStandard& standard, const std::vector<TestRun>& runs) {
-  for (const TestRun& run : runs) {
-    if (!standard.test.empty() && standard.test != run.test && standard.test != run.kind) continue;
-    const Estimate* estimate = run.measurement.find(standard.quantity);
-    if (estimate != nullptr && std::isfinite(estimate->quantity.value)) return *estimate;
+std::optional<Estimate> check_value(const PartSheet& sheet, const std::vector<TestRun>& runs) {
+  assert(sheet.check_standard);
+  const CheckStandard& standard = *sheet.check_standard;
+  Limit limit;
+  limit.quantity = standard.quantity;
+  limit.unit = standard.unit;
+  limit.test = standard.test;
+  for (const Limit& each : sheet.limits) {
+    const bool same_test = standard.test.empty() || each.test.empty() || each.test == standard.test;
+    if (each.quantity != standard.quantity || !same_test) continue;
+    limit.at = each.at;
+    break;
   }
-  return std::nullopt;
+  limit.min = -HUGE_VAL;  // its value is wanted, no verdict
+  const LimitVerdict judged = judge_limit(limit, sheet, tested(runs));
+  if (!judged.value || judged.verdict == Verdict::not_comparable) return std::nullopt;
+  Estimate value;
+  value.symbol = standard.quantity;
+  value.quantity = {*judged.value, judged.u.value_or(std::nan("")), standard.unit};
+  return value;
 }
 
 Result<CheckOutcome> run_check(const std::vector<PreparedTest>& tests, const std::optional<LotUnit>& captures,
@@ -65,7 +78,7 @@ Result<CheckOutcome> run_check(const std::vector<PreparedTest>& tests, const std
   }
   if (captures) {
     const std::vector<TestRun> runs = run_tests(tests, *captures, false, context);
-    const std::optional<Estimate> value = check_value(standard, runs);
+    const std::optional<Estimate> value = check_value(*setting.sheet, runs);
     if (value) {
       if (auto taken = take_reading(*value, runs, before, ledger, setting, readings); !taken) return failure(taken);
     } else {

@@ -26,7 +26,9 @@ struct CheckOutcome {
 Result<CheckOutcome> run_check(const std::vector<PreparedTest>& tests, const std::optional<LotUnit>& captures,
                                Ledger* ledger, const InspectionSetting& setting, const RunContext& context);
 
-/// The value of a check standard's quantity among what was measured of it; nothing when it could not be established.
-std::optional<Estimate> check_value(const CheckStandard& standard, const std::vector<TestRun>& runs);
+/// The value of the check standard's quantity in what was measured of it, under the conditions of the sheet's limit on that
+/// quantity when there is one; nothing when it could not be established, or not under these. Pre: the sheet has a check
+/// standard.
+std::optional<Estimate> check_value(const PartSheet& sheet, const std::vector<TestRun>& runs);
 
 }  // namespace coilassay

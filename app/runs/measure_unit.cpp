@@ -7,6 +7,7 @@
 #include "app/runs/resistance_run.h"
 #include "app/runs/ring_down_run.h"
 #include "app/runs/sine_run.h"
+#include "app/runs/sweep_run.h"
 #include "base/outside_text.h"
 
 namespace coilassay {
@@ -66,6 +67,12 @@ const std::array kKinds = {
            job.biases = test.biases;
            return run_sine(job, context);
          }},
+    Kind{"sweep", kMany,
+         [](const UnitTest& test, const RunContext& context) {
+           auto job = windowed(job_of_files<SweepJob>(test), test);
+           job.at_hz = test.at_hz;
+           return run_sweep(job, context);
+         }},
     Kind{"resistance", kMany,
          [](const UnitTest& test, const RunContext& context) {
            auto job = job_of_files<ResistanceJob>(test);
@@ -92,7 +99,7 @@ Result<Measurement> measure_unit(const UnitTest& test, const RunContext& context
   if (kind == kKinds.end()) {
     const std::string_view hint = nearest(test.kind, unit_test_kinds());
     return failure(Problem::usage, place, "there is no test '" + shown(test.kind, 60) + "'",
-                   hint.empty() ? "the tests are named like the measuring commands: ringdown, ramp, sine, resistance"
+                   hint.empty() ? "the tests are named like the measuring commands: ringdown, ramp, sine, sweep, resistance"
                                 : "did you mean " + std::string(hint) + "?");
   }
   if (test.files.empty()) {

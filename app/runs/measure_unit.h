@@ -16,13 +16,13 @@ namespace coilassay {
 
 /// One test of one unit. The kind is the name of the measuring command; files of one measurement stand in their order.
 struct UnitTest {
-  std::string kind;                        // "ringdown", "ramp", "sine", "resistance"
+  std::string kind;                        // "ringdown", "ramp", "sine", "sweep", "resistance"
   std::vector<std::string> files;
   std::optional<std::string> segment;
   std::optional<std::string> bench_sheet;  // path
   BenchSetup stated;                       // replaces what the sheet says
   std::optional<double> from_s, to_s;
-  std::vector<double> at_hz;                           // where a fitted model is asked for values
+  std::vector<double> at_hz;                           // sweep: where the model is asked for values
   std::vector<StatedValue> dissipation_factors;        // ringdown: one for all capacitors, or one for each
   std::vector<StatedValue> biases;                     // sine: one for each capture
   std::optional<std::string> material;                 // resistance

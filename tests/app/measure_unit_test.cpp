@@ -8,6 +8,7 @@
 #include "app/runs/simulate_resistance_run.h"
 #include "app/runs/simulate_run.h"
 #include "app/runs/simulate_sine_run.h"
+#include "app/runs/simulate_sweep_run.h"
 #include "base/parallel.h"
 #include "report/result_json.h"
 #include "tests/support/program.h"
@@ -59,7 +60,7 @@ TEST(MeasureUnit, SaysTheSameAsTheCommandOfThatName) {
   EXPECT_NE(through_the_door->find("L_s"), nullptr);
 }
 
-TEST(MeasureUnit, KnowsRampSineAndResistance) {
+TEST(MeasureUnit, KnowsRampSineSweepAndResistance) {
   const TemporaryFolder folder;
   const RunContext context = writing_into(folder);
   SimulateRampJob ramp;
@@ -71,11 +72,15 @@ TEST(MeasureUnit, KnowsRampSineAndResistance) {
   SimulateResistanceJob resistance;
   resistance.capture_file = "d.csv";
   ASSERT_TRUE(run_simulate_resistance(resistance, context));
+  SimulateSweepJob sweep;
+  sweep.sweep_file = "z.csv";
+  ASSERT_TRUE(run_simulate_sweep(sweep, context));
   for (const auto& [kind, file, leading] : {std::tuple{"ramp", "r.csv", "L_0"}, {"sine", "s.csv", "Z"},
-                                            {"resistance", "d.csv", "R_dc"}}) {
+                                            {"sweep", "z.csv", "L"}, {"resistance", "d.csv", "R_dc"}}) {
     UnitTest test;
     test.kind = kind;
     test.files = {folder / file};
+    test.at_hz = {100e3};
     const auto measured = measure_unit(test, {});
     ASSERT_TRUE(measured) << kind << ": " << measured.error().finding;
     EXPECT_EQ(measured->test, kind);

@@ -130,7 +130,7 @@ TEST(HouseRules, SamplesAreSmall) {
     EXPECT_LT(entry.file_size(), 600'000u) << entry.path();
     total += entry.file_size();
   }
-  EXPECT_LT(total, 4'000'000u);
+  EXPECT_LT(total, 8'000'000u);
 }
 
 TEST(HouseRules, ScriptsThatAreStartedByNameMayBeStarted) {

@@ -2,6 +2,8 @@
 #include <gmock/gmock.h>
 #include <gtest/gtest.h>
 
+#include <sys/wait.h>
+
 #include <cstdio>
 #include <fstream>
 #include <nlohmann/json.hpp>
@@ -86,6 +88,29 @@ TEST(SampleData, WhatWentWrongWithACaptureIsFound) {
     EXPECT_THAT(codes, Contains(planted->second)) << m.name;
   }
   EXPECT_EQ(seen, expected.size());
+}
+
+TEST(SampleData, TheLotIsRejectedForTheUnitsThatWerePlantedInIt) {
+  const std::string command = "program=$(realpath '" + program() +
+                              "') && cd sample-data && \"$program\" inspect drum.toml drum-lot --lot-size 500 --json --quiet";
+  std::FILE* pipe = popen(command.c_str(), "r");
+  ASSERT_NE(pipe, nullptr);
+  std::string text;
+  char block[4096];
+  for (std::size_t n; (n = std::fread(block, 1, sizeof block, pipe)) > 0;) text.append(block, n);
+  EXPECT_EQ(WEXITSTATUS(pclose(pipe)), 1);
+  const json lot = json::parse(text, nullptr, false);
+  ASSERT_TRUE(lot.is_object());
+  EXPECT_EQ(lot.at("decision"), "reject");
+  EXPECT_EQ(lot.at("units").size(), 50u);
+  std::map<std::string, std::string> verdicts;
+  for (const json& unit : lot.at("units")) {
+    if (unit.at("verdict") != "pass") verdicts[unit.at("serial")] = unit.at("verdict");
+  }
+  const std::map<std::string, std::string> planted{
+      {"0407", "fail"}, {"0423", "fail"}, {"0431", "undecided"}, {"0438", "not_comparable"}};
+  EXPECT_EQ(verdicts, planted);
+  EXPECT_EQ(lot.at("check_standard").at("state"), "good");
 }
 
 TEST(SampleData, EveryCaptureSaysThatItIsSimulatedAndHowItWasMade) {
