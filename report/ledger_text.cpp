@@ -81,6 +81,74 @@ void add_limits(const EntryContent& content, const TextStyle& style, std::string
   page += why;
 }
 
+std::string count_of(const Json& details, const char* member) {
+  const auto value = details.find(member);
+  return value != details.end() && value->is_number_integer() ? std::to_string(value->get<std::int64_t>()) : std::string("-");
+}
+
+/// Of a lot: the plan, what was counted, and why it was decided so. Of a check standard: what was read.
+void add_decision(const EntryContent& content, const TextStyle& style, std::string& page) {
+  const Json details = Json::parse(content.details, nullptr, false);
+  if (!details.is_object()) return;
+  Rows facts;
+  if (const auto plan = details.find("plan"); plan != details.end() && plan->is_object()) {
+    facts.push_back({"plan", word_of(*plan, "scheme") + ", " + word_of(*plan, "severity") + ", n " + count_of(*plan, "n") + ", accept " +
+                                 count_of(*plan, "accept") + ", reject " + count_of(*plan, "reject")});
+  }
+  if (details.contains("inspected")) {
+    facts.push_back({"counted", count_of(details, "inspected") + " of " + count_of(details, "lot_size") + " inspected, " +
+                                    count_of(details, "nonconforming") + " nonconforming, " + count_of(details, "undecided") + " undecided"});
+  }
+  if (const std::string why = word_of(details, "why"); why != "-") facts.push_back({"why", why});
+  if (content.kind == EntryKind::check && details.contains("value")) {
+    facts.push_back({word_of(details, "quantity"), quantity_text(details, "value", style.script) + ", standard uncertainty " +
+                                                       quantity_text(details, "u", style.script)});
+  }
+  if (facts.empty()) return;
+  add_heading(content.kind == EntryKind::check ? "Reading" : "Decision", style, page);
+  add_facts(facts, style, page);
+}
+
+/// Findings of the verdict, and of each test.
+void add_findings(const EntryContent& content, const TextStyle& style, std::string& page) {
+  const Json details = Json::parse(content.details, nullptr, false);
+  if (!details.is_object()) return;
+  std::string found;
+  const auto add = [&](const Json& from) {
+    const auto list = from.find("findings");
+    if (list == from.end() || !list->is_array()) return;
+    for (const Json& each : *list) {
+      if (!each.is_object()) continue;
+      found += wrapped(in_script(word_of(each, "message"), style.script), std::string(kIndent) + padded(word_of(each, "severity"), 9), style.width);
+    }
+  };
+  add(details);
+  if (const auto tests = details.find("tests"); tests != details.end() && tests->is_array()) {
+    for (const Json& test : *tests) {
+      if (test.is_object() && test.contains("result") && test["result"].is_object()) add(test["result"]);
+    }
+  }
+  if (found.empty()) return;
+  add_heading("What to watch out for", style, page);
+  page += found;
+}
+
+/// Captures, and the sheets that say what they mean.
+void add_files(const EntryContent& content, const TextStyle& style, std::string& page) {
+  Rows files;
+  for (const EntrySource& source : content.sources) files.push_back({dash(source.test), shown(source.file, 200), source.sha256});
+  const Json details = Json::parse(content.details, nullptr, false);
+  const bool tests = details.is_object() && details.contains("tests") && details["tests"].is_array();
+  for (const Json& test : tests ? details["tests"] : Json::array()) {
+    const auto bench = test.is_object() ? test.find("bench") : test.end();
+    if (!test.is_object() || bench == test.end() || !bench->is_object()) continue;
+    files.push_back({word_of(test, "test") + ", bench", word_of(*bench, "file"), word_of(*bench, "sha256")});
+  }
+  if (files.empty()) return;
+  add_heading("Files", style, page);
+  add_rows(std::move(files), style, page);
+}
+
 /// What a correction changed, in words; `before`: what stood until then.
 std::string changes_of(const EntryContent& before, const EntryContent& after) {
   std::string words;
@@ -133,13 +201,9 @@ std::string entry_text(const Entry& entry, std::span<const Entry> corrections, c
   }
   add_facts(facts, style, page);
   add_limits(c, style, page);
-
-  if (!c.sources.empty()) {
-    add_heading("Files", style, page);
-    Rows files;
-    for (const EntrySource& source : c.sources) files.push_back({dash(source.test), shown(source.file, 200), source.sha256});
-    add_rows(std::move(files), style, page);
-  }
+  add_decision(c, style, page);
+  add_findings(c, style, page);
+  add_files(c, style, page);
   if (!corrections.empty()) {
     add_heading("Corrections", style, page);
     EntryContent before = c;
@@ -156,8 +220,8 @@ std::string entry_text(const Entry& entry, std::span<const Entry> corrections, c
 }
 
 std::string again_text(const MeasuredAgain& again, const TextStyle& style) {
-  std::string page;
-  add_heading("Measured again", style, page);
+  std::string page = "\n";
+  page += in_script("Measured again", style.script) + "\n";
   const std::string from = again.files == 1 ? "one file" : std::to_string(again.files) + " files";
   std::string words = again.same() ? "from " + from + ": every digit is the same" : "from " + from + ": it comes out otherwise";
   if (again.recorded_by != again.program) words += "; recorded by " + shown(again.recorded_by, 60) + ", measured again by " + again.program;
