@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <array>
+#include <cassert>
 #include <cmath>
 
 #include "analysis/interpolation.h"
@@ -65,20 +66,6 @@ tl::unexpected<Error> refused(const Sweep& sweep, std::string finding, std::stri
   return failure(Problem::usage, sweep.source.name, std::move(finding), std::move(remedy));
 }
 
-Result<void> check_two_port(const Sweep& sweep, const std::optional<Sweep>& file, const char* option) {
-  if (!file) return {};
-  if (file->ports != 2) {
-    return failure(Problem::usage, option, file->source.name + " has " + std::to_string(file->ports) + " ports",
-                   "give the two-port file of what lies between analyser and part");
-  }
-  const auto [low, high] = std::minmax_element(sweep.frequency_hz.begin(), sweep.frequency_hz.end());
-  if (sweep.frequency_hz.empty() || covers(file->frequency_hz, *low, *high)) return {};
-  return failure(Problem::usage, option,
-                 file->source.name + " covers " + hertz(file->frequency_hz.front()) + " to " + hertz(file->frequency_hz.back()) +
-                     ", and the sweep goes from " + hertz(*low) + " to " + hertz(*high),
-                 "measure the fixture over the whole span, or sweep less of it");
-}
-
 Result<Sweep> reflected(const Sweep& sweep, const ConnectionRequest& request) {
   if (sweep.ports > 1 && !request.port) {
     return refused(sweep, "the file has " + std::to_string(sweep.ports) + " ports, and it is not said how the part hangs on them",
@@ -89,14 +76,6 @@ Result<Sweep> reflected(const Sweep& sweep, const ConnectionRequest& request) {
     return failure(Problem::usage, "--port", "there is no port " + std::to_string(port) + " in " + sweep.source.name + ", which has " +
                    std::to_string(sweep.ports), "ports count from 1");
   }
-  const bool other = (port == 1 && request.at_port_2) || (port == 2 && request.at_port_1) ||
-                     (port > 2 && (request.at_port_1 || request.at_port_2));
-  if (other) {
-    return failure(Problem::usage, request.at_port_1 ? "--remove-port1" : "--remove-port2",
-                   "what lies at another port has no part in the impedance at port " + std::to_string(port),
-                   "leave it out, or say --connection series or shunt");
-  }
-  const std::optional<Sweep>& between = port == 1 ? request.at_port_1 : request.at_port_2;
   Sweep out = sweep;
   out.ports = 1;
   const std::size_t p = port - 1, n = sweep.ports;
@@ -108,11 +87,6 @@ Result<Sweep> reflected(const Sweep& sweep, const ConnectionRequest& request) {
       const Complex s = sweep.scattering[i][p * n + p];
       z = out.reference_ohm[0] * (1.0 + s) / (1.0 - s);
       out.bad[i] = false;
-    }
-    if (between) {
-      const Result<TwoPort> t = two_port_at(*between, sweep.frequency_hz[i]);
-      if (!t) return failure(t);
-      z = behind_two_port(z, *t);
     }
     if (!std::isfinite(z.real()) || !std::isfinite(z.imag())) {
       z = missing();
@@ -171,6 +145,19 @@ Result<Sweep> passed_through(const Sweep& sweep, const ConnectionRequest& reques
 
 }  // namespace
 
+Result<void> check_two_port(const Sweep& sweep, const Sweep& file, const char* option) {
+  if (file.ports != 2) {
+    return failure(Problem::usage, option, file.source.name + " has " + std::to_string(file.ports) + " ports",
+                   "give the two-port file of what lies between analyser and part");
+  }
+  const auto [low, high] = std::minmax_element(sweep.frequency_hz.begin(), sweep.frequency_hz.end());
+  if (sweep.frequency_hz.empty() || covers(file.frequency_hz, *low, *high)) return {};
+  return failure(Problem::usage, option,
+                 file.source.name + " covers " + hertz(file.frequency_hz.front()) + " to " + hertz(file.frequency_hz.back()) +
+                     ", and the sweep goes from " + hertz(*low) + " to " + hertz(*high),
+                 "measure the fixture over the whole span, or sweep less of it");
+}
+
 Result<TwoPort> two_port_at(const Sweep& file, double frequency_hz) {
   if (!covers(file.frequency_hz, frequency_hz, frequency_hz)) {
     return failure(Problem::usage, file.source.name, "the file does not reach " + hertz(frequency_hz), "measure it over the whole span");
@@ -186,8 +173,13 @@ Result<TwoPort> two_port_at(const Sweep& file, double frequency_hz) {
 }
 
 Result<Sweep> one_port_of(const Sweep& sweep, const ConnectionRequest& request) {
-  if (const auto fine = check_two_port(sweep, request.at_port_1, "--remove-port1"); !fine) return failure(fine);
-  if (const auto fine = check_two_port(sweep, request.at_port_2, "--remove-port2"); !fine) return failure(fine);
+  assert(request.connection != Connection::reflect || (!request.at_port_1 && !request.at_port_2));
+  if (request.at_port_1) {
+    if (const auto fine = check_two_port(sweep, *request.at_port_1, "--remove-port1"); !fine) return failure(fine);
+  }
+  if (request.at_port_2) {
+    if (const auto fine = check_two_port(sweep, *request.at_port_2, "--remove-port2"); !fine) return failure(fine);
+  }
   return request.connection == Connection::reflect ? reflected(sweep, request) : passed_through(sweep, request);
 }
 

@@ -14,7 +14,7 @@ namespace coilassay {
 struct ConnectionRequest {
   Connection connection = Connection::reflect;
   std::optional<std::size_t> port;         // reflect: counted from 1
-  /// Two-ports between the analyser and the part, port 1 of each file on the analyser's side; removed.
+  /// Series and shunt: two-ports between the analyser and the part, port 1 of each file on the analyser's side; removed.
   std::optional<Sweep> at_port_1, at_port_2;
 };
 
@@ -26,8 +26,11 @@ struct ConnectionRequest {
 /// R1 + R2 (series) or R1 R2/(R1 + R2) (shunt): an error e of S21 then is (Z + R)²/R e of Z, twice that of a reflection.
 ///
 /// @return usage: a port that is not there; series or shunt with one port; several ports and nothing said; a two-port file
-///         with another number of ports, at a port that is not used, or whose frequencies do not cover the sweep
+///         that check_two_port() refuses
 Result<Sweep> one_port_of(const Sweep& sweep, const ConnectionRequest& request);
+
+/// usage, with the option as the place: another number of ports, or frequencies that do not cover the sweep's.
+Result<void> check_two_port(const Sweep& sweep, const Sweep& file, const char* option);
 
 /// S of a two-port file at any frequency inside its own, by interpolation; usage when it is outside.
 Result<TwoPort> two_port_at(const Sweep& file, double frequency_hz);

@@ -12,7 +12,8 @@ Complex behind_open_and_short(Complex zm, const FixtureStandards& s) {
   const Complex zss = s.short_ohm / (1.0 - s.short_ohm * s.open_siemens);
   const Complex span = s.open - s.short_circuit;
   const Complex d = span * (1.0 + std::sqrt(1.0 + 4.0 * zss / span)) / 2.0;
-  const Complex behind_series = zm - (s.open - d);
+  // zo - d is a small difference of large numbers where the strays are small; this is the same.
+  const Complex behind_series = zm - (s.short_circuit - d * zss / (d + zss));
   // Across the part: the open's 1/d less what the open standard itself is.
   return behind_series / (1.0 - behind_series * (1.0 / d - s.open_siemens));
 }

@@ -25,6 +25,7 @@ Command simulate_ramp_command();
 Command simulate_sine_command();
 Command simulate_sweep_command();
 Command simulate_burst_command();
+Command fixture_command();
 Command resistance_command();
 Command simulate_resistance_command();
 Command ledger_list_command();
