@@ -68,7 +68,7 @@ void add_pair(std::vector<ImpedanceErrorTerm>& errors, const std::string& source
   }
 }
 
-void add_accuracy(SweepData& data, const SweepRequest& request) {
+void add_accuracy(SweepData& data, const Sweep& sweep, const SweepRequest& request) {
   const ImpedanceAccuracy& stated = request.bench.impedance;
   const CircuitData& points = data.points;
   const bool nothing_stated = !stated.ratio && !stated.scattering;
@@ -77,7 +77,9 @@ void add_accuracy(SweepData& data, const SweepRequest& request) {
   } else if (data.scattering && (stated.scattering || !stated.ratio)) {
     const Accuracy s = accuracy_of(stated.scattering, sweep_defaults::kScattering, "±0.01 of S after an ordinary calibration", request);
     const double r = points.reference_ohm;
-    add_pair(data.errors, "accuracy of S", "accuracy of S", s, points, [r](Complex z) { return (z + r) * (z + r) / (2 * r); });
+    // A transmission is worth twice a reflection of the reference that stands for it (one_port_of).
+    const double worth = sweep.as_read == "S21" ? r : 2 * r;
+    add_pair(data.errors, "accuracy of S", "accuracy of S", s, points, [r, worth](Complex z) { return (z + r) * (z + r) / worth; });
   } else {
     const Accuracy a = accuracy_of(stated.ratio, sweep_defaults::kAccuracyRatio, "±0.5 % of an analyser without its data sheet", request);
     add_pair(data.errors, "accuracy", "accuracy of the angle", a, points, [](Complex z) { return z; });
@@ -194,7 +196,7 @@ Result<SweepData> sweep_data(const Sweep& sweep, const SweepRequest& request) {
     for (const std::size_t i : data.index) term.dz_ohm.push_back(each.dz_ohm[i]);
     data.errors.push_back(std::move(term));
   }
-  add_accuracy(data, request);
+  add_accuracy(data, sweep, request);
   return data;
 }
 

@@ -61,33 +61,6 @@ void add_error(WaveformSweep& result, const InputError& error, const Factor& fac
   result.knowledge.errors.push_back(std::move(term));
 }
 
-/// dZ/d ln f from a straight line through some points around each, by u of the time base.
-void add_timebase(WaveformSweep& result, const InputError& error) {
-  const double u = error.law.standard_uncertainty;
-  if (!(u > 0)) return;
-  const Sweep& sweep = *result.sweep;
-  const std::size_t count = sweep.frequency_hz.size();
-  ImpedanceErrorTerm term{error.source, error.law, error.kind, error.common, error.basis, {}};
-  term.law.standard_uncertainty = 1;
-  for (std::size_t i = 0; i < count; ++i) {
-    const std::size_t first = i < 4 ? 0 : i - 4, end = std::min(count, i + 5);
-    double f_mean = 0, square = 0;
-    Complex z_mean = 0, product = 0;
-    const auto n = static_cast<double>(end - first);
-    for (std::size_t k = first; k < end; ++k) {
-      f_mean += sweep.frequency_hz[k] / n;
-      z_mean += sweep.z_ohm[k][0] / n;
-    }
-    for (std::size_t k = first; k < end; ++k) {
-      const double df = sweep.frequency_hz[k] - f_mean;
-      square += df * df;
-      product += df * (sweep.z_ohm[k][0] - z_mean);
-    }
-    term.dz_ohm.push_back(square > 0 ? u * sweep.frequency_hz[i] * product / square : Complex(0));
-  }
-  result.knowledge.errors.push_back(std::move(term));
-}
-
 /// The points as a sweep: the current's chain taken out, the bench's errors as terms.
 void finish(WaveformSweep& result, RatioPoints points, const DrivenRecord& about) {
   result.findings.insert(result.findings.end(), points.findings.begin(), points.findings.end());
@@ -131,7 +104,6 @@ void finish(WaveformSweep& result, RatioPoints points, const DrivenRecord& about
   add_error(result, e.skew, [&](double w, double x) { return chain(w, x, 0, 0); });
   add_error(result, e.shunt_tau, [&](double w, double x) { return chain(w, 0, x, 0); });
   add_error(result, e.probe_corner, [&](double w, double x) { return chain(w, 0, 0, x); });
-  add_timebase(result, e.timebase);
 }
 
 void tell_band(WaveformSweep& result) {

@@ -44,7 +44,8 @@ struct WaveformSweep {
 /// leakage enters as an error of all points. A record that is neither (a chirp that is cut) is refused: its error bars
 /// would be too small.
 ///
-/// Gains, shunt, skew and droop are corrected and enter as errors of all points (docs/formulas.md#waveforms).
+/// Gains, shunt, skew and droop are corrected and enter as errors of all points (docs/formulas.md#waveforms); the time base
+/// is left to whoever measures the sweep.
 /// @return missing_column, usage as driven_record(); usage for captures of unlike length or step
 Result<WaveformSweep> sweep_of_waveforms(std::span<const Capture> captures, const WaveformRequest& request);
 

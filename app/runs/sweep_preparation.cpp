@@ -3,6 +3,7 @@
 #include <utility>
 
 #include "analysis/connection.h"
+#include "app/runs/captures.h"
 
 namespace coilassay {
 
@@ -73,6 +74,15 @@ Result<CorrectedSweep> prepared_sweep(CorrectedSweep input, const SweepPreparati
   if (c && reflect && *at_2) c = without_two_port(std::move(*c), **at_2, "--remove-port2", options);
   if (c && p.plane) c = at_reference_plane(std::move(*c), *p.plane, options);
   return c;
+}
+
+Result<WaveformSweep> read_waveforms(const WaveformFiles& files, const BenchSetup& bench, const PropagationOptions& options,
+                                     const RunContext& context, std::vector<std::string>& notes) {
+  Result<CapturesRead> read =
+      read_captures({.files = files.files, .segment = files.segment, .reading = bench.reading, .test = "sweep --from-waveform"}, context);
+  if (!read) return failure(read);
+  notes.insert(notes.end(), read->notes.begin(), read->notes.end());
+  return sweep_of_waveforms(read->captures, {.bench = bench, .from_s = files.from_s, .to_s = files.to_s, .propagation = options});
 }
 
 }  // namespace coilassay

@@ -34,4 +34,14 @@ struct SweepPreparation {
 Result<CorrectedSweep> prepared_sweep(CorrectedSweep input, const SweepPreparation& preparation, const BenchSetup& bench,
                                       const PropagationOptions& options, const RunContext& context);
 
+/// A burst in one file or several, made into a sweep; what was chosen where a file left a choice is added to `notes`. usage: a file
+/// that holds a sweep.
+struct WaveformFiles {
+  std::vector<std::string> files;
+  std::optional<std::string> segment;
+  std::optional<double> from_s, to_s;
+};
+Result<WaveformSweep> read_waveforms(const WaveformFiles& files, const BenchSetup& bench, const PropagationOptions& options,
+                                     const RunContext& context, std::vector<std::string>& notes);
+
 }  // namespace coilassay

@@ -71,9 +71,34 @@ Result<void> check_models(const SweepJob& job) {
   return {};
 }
 
-}  // namespace
+Result<SweepInput> burst(const SweepJob& job, const BenchSetup& bench, const RunContext& context) {
+  SweepInput input;
+  Result<WaveformSweep> made =
+      read_waveforms({job.files, job.segment, job.from_s, job.to_s}, bench, job.propagation, context, input.notes);
+  if (!made) return failure(made);
+  input.refused = !made->sweep;
+  if (made->sweep) input.sweep = std::move(*made->sweep);
+  input.sweep.findings = std::move(made->findings);
+  input.knowledge = std::move(made->knowledge);
+  input.sources = std::move(made->sources);
+  return input;
+}
 
-Result<SweepInput> read_sweep(const SweepJob& job, const BenchSetup& bench, const RunContext& context) {
+/// What can be said when no sweep could be made.
+Measurement refused(SweepInput input, const BenchSetup& bench) {
+  Measurement result;
+  result.test = "sweep";
+  result.sources = std::move(input.sources);
+  result.equipment = bench.equipment;
+  result.corrections = std::move(input.knowledge.corrections);
+  result.findings = std::move(input.sweep.findings);
+  result.advice = std::move(input.notes);
+  return result;
+}
+
+/// The files as they stand.
+Result<SweepInput> read_files(const SweepJob& job, const BenchSetup& bench, const RunContext& context) {
+  if (job.preparation.from_waveform) return burst(job, bench, context);
   if (std::count(job.files.begin(), job.files.end(), "-") > 1) {
     return failure(Problem::usage, "-", "standard input can be read only once", "give '-' once and name the other files");
   }
@@ -95,7 +120,8 @@ Result<SweepInput> read_sweep(const SweepJob& job, const BenchSetup& bench, cons
     }
     if (job.files.size() == 1) {
       return failure(Problem::usage, file, "the file holds a waveform over time, not impedance against frequency",
-                     "give five or more captures of a steady sine, one frequency each, or measure this one with coilassay sine");
+                     "add --from-waveform for a pulse, a chirp or noise; give five or more captures of a steady sine, one frequency each; "
+                     "or measure this one with coilassay sine");
     }
     Result<Capture> capture = chosen_capture(std::move(*recording), file, {job.files, job.segment, reading, "sweep"}, input.notes);
     if (!capture) return failure(capture);
@@ -105,6 +131,20 @@ Result<SweepInput> read_sweep(const SweepJob& job, const BenchSetup& bench, cons
   if (!made) return failure(made);
   made->notes = std::move(input.notes);
   return made;
+}
+
+}  // namespace
+
+Result<SweepInput> read_sweep(const SweepJob& job, const BenchSetup& bench, const RunContext& context) {
+  Result<SweepInput> input = read_files(job, bench, context);
+  if (!input || input->refused) return input;
+  if (!job.preparation.anything() && !bench.fixture_set) return input;
+  Result<CorrectedSweep> prepared =
+      prepared_sweep({std::move(input->sweep), std::move(input->knowledge)}, job.preparation, bench, job.propagation, context);
+  if (!prepared) return failure(prepared);
+  input->sweep = std::move(prepared->sweep);
+  input->knowledge = std::move(prepared->knowledge);
+  return input;
 }
 
 Result<Measurement> run_sweep(const SweepJob& job, const RunContext& context) {
@@ -126,6 +166,7 @@ Result<Measurement> run_sweep(const SweepJob& job, const RunContext& context) {
 
   Result<SweepInput> input = read_sweep(job, request.bench, context);
   if (!input) return failure(input);
+  if (input->refused) return refused(std::move(*input), request.bench);
   request.knowledge = std::move(input->knowledge);
   Result<Measurement> measured = measure_sweep(input->sweep, request);
   if (!measured) return measured;

@@ -10,12 +10,14 @@
 #include "analysis/measurement.h"
 #include "analysis/sweep.h"
 #include "app/runs/context.h"
+#include "app/runs/sweep_preparation.h"
 #include "base/result.h"
 
 namespace coilassay {
 
 struct SweepJob {
-  std::vector<std::string> files;           // one sweep, or many captures of a steady sine
+  std::vector<std::string> files;           // one sweep, many captures of a steady sine, or captures of a burst
+  SweepPreparation preparation;             // ports, fixture, or from a burst
   std::optional<std::string> segment;       // of captures
   std::optional<std::string> bench_sheet;   // path
   BenchSetup stated;                        // replaces what the sheet says
@@ -33,9 +35,10 @@ struct SweepInput {
   SweepKnowledge knowledge;
   std::vector<SourceRecord> sources;   // of captures; empty: the sweep's own
   std::vector<std::string> notes;      // what was chosen where a file left a choice
+  bool refused = false;                // no sweep could be made; its findings say why
 };
 
-/// Reads the files of a job: a sweep as it stands, captures as a sweep of sines.
+/// Reads the files of a job: a sweep as it stands, captures as a sweep of sines or of a burst; then ports, fixture and plane.
 /// usage: a single capture, sweeps and captures mixed, more than one sweep.
 Result<SweepInput> read_sweep(const SweepJob& job, const BenchSetup& bench, const RunContext& context);
 
