@@ -3,6 +3,7 @@
 #include <algorithm>
 #include <cctype>
 #include <filesystem>
+#include <fstream>
 #include <map>
 
 #include "acquire/reader.h"
@@ -273,6 +274,22 @@ Result<std::string> digest_of_file(const std::string& path) {
   }
 }
 
+namespace {
+
+/// Its last bytes: captures of one bench often have one size, and differ here already.
+std::string end_of_file(const std::string& path) {
+  constexpr std::streamoff kEnd = 4096;
+  std::ifstream in(path, std::ios::binary | std::ios::ate);
+  const std::streamoff size = in.tellg();
+  if (!in || size < 0) return {};
+  in.seekg(std::max<std::streamoff>(0, size - kEnd));
+  std::string end(static_cast<std::size_t>(std::min(size, kEnd)), '\0');
+  in.read(end.data(), static_cast<std::streamsize>(end.size()));
+  return in ? end : std::string();
+}
+
+}  // namespace
+
 Result<void> find_same_captures(LotFolder& lot) {
   struct Place {
     LotUnit* unit;
@@ -292,9 +309,13 @@ Result<void> find_same_captures(LotFolder& lot) {
   }
   for (auto& [size, places] : by_size) {
     if (places.size() < 2) continue;
-    std::map<std::string, std::vector<Place>> by_digest;
-    for (const Place& place : places) {
-      if (const Result<std::string> digest = digest_of_file(place.file)) by_digest[*digest].push_back(place);
+    std::map<std::string, std::vector<Place>> by_end, by_digest;
+    for (const Place& place : places) by_end[end_of_file(place.file)].push_back(place);
+    for (const auto& [end, alike] : by_end) {
+      if (alike.size() < 2) continue;
+      for (const Place& place : alike) {
+        if (const Result<std::string> digest = digest_of_file(place.file)) by_digest[*digest].push_back(place);
+      }
     }
     for (const auto& [digest, same] : by_digest) {
       if (same.size() < 2) continue;
