@@ -248,6 +248,23 @@ void read_gauge(SheetSection& section, PartSheet& sheet) {
   }
 }
 
+void read_processes(SheetSection& section, PartSheet& sheet) {
+  for (const std::string& key : section.keys()) {
+    const Symbol* symbol = find_symbol(key);
+    if (symbol == nullptr) continue;  // the key stays unknown, and is refused as such
+    auto process = section.section(key);
+    if (!process) continue;
+    const auto mean = process->plain("mean", {symbol->unit}, SheetRange::any);
+    const auto deviation = process->plain("deviation", {symbol->unit}, SheetRange::above_zero);
+    const auto uncertainty = process->plain("uncertainty", {symbol->unit}, SheetRange::above_zero);
+    if (!mean || !deviation || !uncertainty) {
+      process->refuse(Problem::bad_sheet, "mean", fmt::format("[process.{}] needs mean, deviation and uncertainty", key), "give all three");
+      continue;
+    }
+    sheet.processes[key] = {*mean, *deviation, *uncertainty};
+  }
+}
+
 /// A limit's test must be there: a section, a kind (files need no section), or an instrument's reading.
 void check_tests_of_limits(SheetSection& root, const PartSheet& sheet) {
   static constexpr std::string_view kKinds[] = {"ringdown", "ramp", "sine", "sweep", "coupling", "resistance", "reading"};
@@ -294,6 +311,7 @@ Result<PartSheet> parse_part_sheet(std::string_view text, const std::string& pat
   if (auto section = root.section("retest")) read_retest(*section, sheet.retest);
   if (auto section = root.section("check_standard")) sheet.check_standard = read_check_standard(*section);
   if (auto section = root.section("gauge")) read_gauge(*section, sheet);
+  if (auto section = root.section("process")) read_processes(*section, sheet);
   // A misspelt key is often why another is missing: it is named first.
   if (const auto known = table->refuse_unknown_keys(); !known) return failure(known);
   if (error) return tl::make_unexpected(*error);

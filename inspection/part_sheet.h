@@ -133,6 +133,12 @@ struct CheckStandard {
   bool refuse = true;             // a lot is refused when it is out or overdue; false: marked only
 };
 
+/// [process.SYMBOL]: what is known of the parts before any is measured, and how well they will be; for planning only.
+struct ProcessPlan {
+  double mean = 0, deviation = 0;
+  double uncertainty = 0;         // standard, of the value of one unit
+};
+
 struct PartSheet {
   std::string path;
   std::string sha256;             // of the sheet's bytes
@@ -147,6 +153,7 @@ struct PartSheet {
   std::optional<CheckStandard> check_standard;
   /// [gauge]: standard deviation of placing and reading, by symbol, from a gauge study; joins the uncertainty of a unit.
   std::map<std::string, double> gauge_sigma;
+  std::map<std::string, ProcessPlan> processes;   // by symbol
 
   /// The section with this name, else nullptr.
   const TestPlan* find_test(std::string_view test) const;

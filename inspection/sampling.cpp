@@ -22,8 +22,8 @@ tl::unexpected<Error> no_plan(std::string finding, std::string remedy) {
 }
 
 std::string accept_in_words(const SamplingPlan& plan) {
-  return plan.reject == plan.accept + 1 ? fmt::format("accept up to {}", plan.accept)
-                                        : fmt::format("accept up to {}, reject from {}", plan.accept, plan.reject);
+  const std::string most = plan.accept == 0 ? "none may be nonconforming" : fmt::format("up to {} may be nonconforming", plan.accept);
+  return plan.reject == plan.accept + 1 ? most : fmt::format("{}, {} reject the lot", most, plan.reject);
 }
 
 void limit_to_lot(SamplingPlan& plan) {
@@ -176,8 +176,8 @@ bool is_finite(const SamplingPlan& plan) { return !plan.k && plan.n * 10 > plan.
 std::string passes_in_words(const SamplingPlan& plan, double fraction_nonconforming) {
   const double chance = 100 * acceptance_probability(plan, fraction_nonconforming, is_finite(plan));
   const long long times = std::llround(chance);
-  const std::string often = chance >= 99.995              ? "always passes"
-                            : chance <= 0.005             ? "never passes"
+  const std::string often = chance >= 100                 ? "always passes"
+                            : chance <= 0                 ? "never passes"
                             : times >= 100                ? "passes more than 99 times in 100"
                             : times == 0                  ? "passes less than once in 100"
                             : times == 1                  ? "passes once in 100"

@@ -4,11 +4,14 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numbers>
 
 #include "analysis/symbols.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
 #include "fitting/statistics.h"
+#include "inspection/global_risk.h"
+#include "inspection/rules.h"
 #include "inspection/sheet_problems.h"
 #include "inspection/verdict.h"
 #include "inspection/words.h"
@@ -101,6 +104,35 @@ void explain_sampling(const PartSheet& sheet, std::optional<std::uint64_t> lot_s
                                 : "A unit that is undecided or not comparable counts as nonconforming.");
 }
 
+double normal_density(double x, double mean, double deviation) {
+  const double z = (x - mean) / deviation;
+  return std::exp(-z * z / 2) / (deviation * std::sqrt(2 * std::numbers::pi));
+}
+
+/// What the rule does to a stated process: the global risks of JCGM 106, 9.5.
+void explain_processes(const PartSheet& sheet, SheetCheck& check) {
+  for (const auto& [quantity, process] : sheet.processes) {
+    const auto limit = std::find_if(sheet.limits.begin(), sheet.limits.end(), [&, &q = quantity](const Limit& l) { return l.quantity == q; });
+    if (limit == sheet.limits.end()) {
+      check.problems.push_back({sheet.path, false, fmt::format("[process.{}] is stated, and {} has no limit", quantity, quantity), "take it out"});
+      continue;
+    }
+    const RuleOutcome outcome = apply_rule(sheet.decision, ValueLaw::normal(process.mean, process.uncertainty), limit->min, limit->max);
+    const double inside = sheet.decision.rule == DecisionRule::guarded_rejection ? -outcome.guard : outcome.guard;
+    const auto moved = [](std::optional<double> edge, double by) { return edge ? std::optional<double>(*edge + by) : std::nullopt; };
+    const double reach = 10 * process.deviation;
+    const GlobalRisks risks = global_risks([&, &p = process](double x) { return normal_density(x, p.mean, p.deviation); }, process.mean - reach,
+                                           process.mean + reach, process.uncertainty, limit->min, limit->max, moved(limit->min, inside),
+                                           moved(limit->max, -inside));
+    const auto text = [&](double v) { return to_text(v, limit->unit); };
+    const auto share = [](double v) { return fmt::format("{:.3g} %", 100 * v); };
+    check.sentences.push_back(fmt::format("A process of {} with mean {} and standard deviation {}, measured with a standard uncertainty of {}: of all units {} do "
+                                          "not conform; {} do not conform and pass, {} conform and do not pass.",
+                                          quantity, text(process.mean), text(process.deviation), text(process.uncertainty),
+                                          share(risks.nonconforming), share(risks.consumer), share(risks.producer)));
+  }
+}
+
 void explain_rest(const PartSheet& sheet, std::vector<std::string>& out) {
   out.push_back(fmt::format("Retests: {} of a unit may count; {}.",
                             sheet.retest.attempts == 1 ? "one attempt" : fmt::format("{} attempts", sheet.retest.attempts),
@@ -140,6 +172,7 @@ SheetCheck check_sheet(const PartSheet& sheet, std::optional<std::uint64_t> lot_
   explain_tests(sheet, check.sentences);
   std::string rule = rule_in_words(sheet.decision);
   check.sentences.push_back("Rule: " + rule + ".");
+  explain_processes(sheet, check);
   explain_sampling(sheet, lot_size, check);
   explain_rest(sheet, check.sentences);
   std::vector<SheetProblem> problems = sheet_problems(sheet);

@@ -46,7 +46,7 @@ class Problems {
     for (const char* kind : {"ringdown", "ramp", "sine", "sweep", "coupling", "resistance", "reading"}) {
       TestPlan test;
       test.name = test.kind = kind;
-      const bool may = limit.test.empty() ? sheet_.tests.empty() : limit.test == kind;
+      const bool may = limit.test.empty() ? std::string_view(kind) != "reading" : limit.test == kind;   // a kind needs no section
       if (may && limit_uses(limit, test)) kinds.emplace_back(kind);
     }
     return kinds;
@@ -55,10 +55,16 @@ class Problems {
   void about_limit(const Limit& limit) {
     const std::vector<std::string> kinds = kinds_for(limit);
     if (kinds.empty()) {
-      contradiction(limit.place, limit.test.empty() ? fmt::format("nobody measures {}: no [test.NAME] of this sheet gives it", limit.quantity)
+      contradiction(limit.place, limit.test.empty() ? fmt::format("nobody measures {}: no kind of test gives it", limit.quantity)
                                                     : fmt::format("the test {} does not give {}", shown(limit.test, 60), limit.quantity),
                     "add a test that gives it, or take the limit out");
       return;
+    }
+    const bool section = std::any_of(sheet_.tests.begin(), sheet_.tests.end(), [&](const TestPlan& test) { return limit_uses(limit, test); });
+    if (!section && !sheet_.tests.empty() && limit.test != "reading") {
+      look(limit.place, fmt::format("no [test.NAME] of this sheet gives {}: it needs captures <serial>.{}.<ext>, measured with no bench sheet",
+                                    limit.quantity, kinds.front()),
+           fmt::format("add [test.{}] and its bench sheet", kinds.front()));
     }
     const auto only = [&](std::initializer_list<std::string_view> some) {
       return std::all_of(kinds.begin(), kinds.end(), [&](const std::string& k) { return std::find(some.begin(), some.end(), k) != some.end(); });
