@@ -17,7 +17,6 @@ constexpr double kRounding = 1e-6;         // of |Z|: what the digits of a file 
 constexpr double kNear = 0.1;              // f/f_r from which the capacitance shows: 1 % of L
 constexpr double kThroughout = 0.9;        // share of the points
 constexpr double kLowQ = 5;                // from where series and parallel values differ by 4 %
-constexpr double kBeyondStated = 2;        // standard uncertainties by the stated errors
 constexpr std::size_t kMostNamed = 6;
 constexpr double kUnusable = 0.3;          // residual of the fit, relative: no circuit of these describes the sweep
 
@@ -78,18 +77,10 @@ void judge_causality(Measurement& m, const SweepModel& model) {
   if (!model.causality || model.causality->passed) return;
   const KramersKronig& test = *model.causality;
   std::vector<double> where;
-  double worst = 0, rms = 0, allowed = 0;
-  for (std::size_t k = 0; k < test.index.size(); ++k) {
-    const std::size_t i = test.index[k];
-    const double off = std::abs(test.residual[k]);
-    worst = std::fmax(worst, off);
-    rms += off * off;
-    allowed += model.stated[i] * model.stated[i];
-    const bool named = std::find(test.not_causal.begin(), test.not_causal.end(), i) != test.not_causal.end();
-    // What the analyser's stated error allows is no proof of anything.
-    if (named && off > kBeyondStated * model.stated[i]) where.push_back(model.points.frequency_hz[i]);
-  }
-  if (where.empty() && rms <= allowed) return;
+  for (const std::size_t i : test.not_causal) where.push_back(model.points.frequency_hz[i]);
+  std::sort(where.begin(), where.end());
+  double worst = 0;
+  for (const Complex r : test.residual) worst = std::fmax(worst, std::abs(r));
   if (worst < kRounding) return;
   const std::string what = where.empty()
                                ? "the sweep as a whole is not what a passive, linear circuit can do"
@@ -132,9 +123,9 @@ void judge_resistance(Measurement& m, const SweepModel& model) {
     for (const ImpedanceErrorTerm& each : model.errors) allowed += std::pow(each.dz_ohm[i].real(), 2);
     const double u = model.points.u_phase.empty() ? (model.points.u.size() == 1 ? model.points.u[0] : model.points.u[i])
                                                   : (model.points.u_phase.size() == 1 ? model.points.u_phase[0] : model.points.u_phase[i]);
-    double noise = u * model.fit.scale * std::abs(z);
+    double noise = u * model.fit.scale * model.noise * std::abs(z);
     if (model.alike == SweepErrors::reflection) {
-      noise = u * model.fit.scale * std::norm(z + model.points.reference_ohm) / (2 * model.points.reference_ohm);
+      noise = u * model.fit.scale * model.noise * std::norm(z + model.points.reference_ohm) / (2 * model.points.reference_ohm);
     }
     if (z.real() >= -5 * std::sqrt(allowed + noise * noise)) continue;
     where.push_back(model.points.frequency_hz[i]);
@@ -152,7 +143,7 @@ void judge_resonance(Measurement& m, const SweepModel& model, const SweepData& d
     if (bound.symbol != "f_r") continue;
     if (bound.at_least) {
       std::string guess;
-      if (model.fit.seen(CircuitParameter::capacitance)) {
+      if (m.find("C_par") != nullptr) {
         const auto beyond = falling_zero_hz(model.fit.circuit, data.low_hz, 1e3 * data.high_hz);
         if (beyond) guess = "; the fitted circuit would have it near " + text(*beyond, Unit::hertz, 3) + ", where nothing was measured";
       }

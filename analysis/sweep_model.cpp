@@ -4,6 +4,7 @@
 #include <cmath>
 #include <utility>
 
+#include "analysis/sweep_joint.h"
 #include "base/number_text.h"
 #include "fitting/statistics.h"
 
@@ -15,6 +16,8 @@ using Complex = std::complex<double>;
 constexpr double kHangTogether = 4.5;     // standard deviations of the lag-one correlation of white residuals
 constexpr double kCounts = 2.5;           // from which a lag's correlation enters the inflation
 constexpr std::size_t kMostLags = 40;
+constexpr double kNormalQuantile = 1.96;
+constexpr double kFactorsBelow = 5;       // times the standard uncertainty by the errors of the bench
 constexpr double kClearlyBetter = 10;     // log likelihood: e^10 to one
 
 /// Log likelihood of errors alike in S less that of errors alike in ln Z, the fits being equally good descriptions.
@@ -41,19 +44,25 @@ double lag_correlation(const std::vector<Complex>& r, std::size_t lag) {
   return below > 0 ? above / below : 0;
 }
 
-/// What the errors that were stated (not those taken by default) may do to each point, relative to |Z|.
-std::vector<double> stated_errors(const SweepModel& model) {
-  std::vector<double> all(model.points.size(), 0);
-  for (const ImpedanceErrorTerm& each : model.errors) {
-    if (each.basis.starts_with("default")) continue;
-    for (std::size_t i = 0; i < all.size(); ++i) all[i] = std::hypot(all[i], std::abs(each.dz_ohm[i] / model.points.z[i]));
-  }
-  return all;
-}
-
 /// Errors that were told beforehand and turn out too small are as large as the residuals show.
 void scale_by_chi_square(SweepModel& model) {
   if (model.points.scale_known && model.misfit) model.inflation = std::fmax(model.inflation, model.fit.fit.reduced_chi_square);
+}
+
+/// Standard uncertainty of the points by errors that were stated (not taken by default), r.m.s.: of ln Z, or of S.
+double stated_accuracy(const SweepModel& model) {
+  double sum = 0, count = 0;
+  for (std::size_t i = 0; i < model.points.size(); ++i) {
+    if (!model.fit.used[i]) continue;
+    count += 1;
+    for (const ImpedanceErrorTerm& each : model.errors) {
+      if (each.basis.starts_with("default")) continue;
+      const Complex z = model.points.z[i], sum_z = z + model.points.reference_ohm;
+      const Complex by_z = model.alike == SweepErrors::reflection ? 2 * model.points.reference_ohm / (sum_z * sum_z) : 1.0 / z;
+      sum += std::norm(each.dz_ohm[i] * by_z);
+    }
+  }
+  return count > 0 ? std::sqrt(sum / count) : 0;
 }
 
 void judge_residuals(SweepModel& model) {
@@ -64,9 +73,14 @@ void judge_residuals(SweepModel& model) {
     Complex each = model.fit.residual[i];
     if (!model.fit.phase_used) each = each.real();
     r.push_back(each);
-    const Complex z = model.points.z[i];
-    const Complex ratio = impedance(model.fit.circuit, model.points.frequency_hz[i]) / z;
-    const double off = model.fit.phase_used ? std::abs(ratio - 1.0) : std::abs(std::abs(ratio) - 1);
+    const Complex clean = model.jointly ? model.cleaned[i] : model.points.z[i];
+    const Complex ratio = impedance(model.fit.circuit, model.points.frequency_hz[i]) / clean;
+    double off = model.fit.phase_used ? std::abs(ratio - 1.0) : std::abs(std::abs(ratio) - 1);
+    if (model.alike == SweepErrors::reflection) {
+      // Near an open or a short, Z itself is noise; S is what was measured.
+      const double z0 = model.points.reference_ohm;
+      off = std::abs(2 * z0 * clean * (ratio - 1.0) / ((ratio * clean + z0) * (clean + z0)));
+    }
     relative += off * off;
   }
   const double parts = (model.fit.phase_used ? 2.0 : 1.0) * static_cast<double>(r.size());
@@ -82,18 +96,10 @@ void judge_residuals(SweepModel& model) {
     sum += c;
   }
   model.inflation = 1 + 2 * sum;
-  double stated = 0;
-  for (std::size_t i = 0; i < model.stated.size(); ++i) stated += model.fit.used[i] ? model.stated[i] * model.stated[i] : 0;
-  if (!model.misfit) return scale_by_chi_square(model);
-  const double noise = noise_profile(model.fit).all;   // what is left between neighbours
-  const double structure = model.residual_rms * std::sqrt(std::fmax(1 - noise * noise, 0));
-  if (structure < std::sqrt(stated / static_cast<double>(r.size()))) {
-    // The analyser may err by that much, and what its errors do to the circuit is carried on its own.
-    model.misfit = false;
-    model.inflation = std::fmin(noise * noise, 1);
-    if (model.points.scale_known) model.inflation = 1;
-    return;
-  }
+  model.noise = noise_profile(model.fit).all;
+  if (!(model.noise > 0)) model.noise = 1;
+  // What the analyser may err by its own data sheet is no fault of the circuit, however it is spread over frequency.
+  if (model.misfit && model.residual_rms < stated_accuracy(model)) model.misfit = false;
   scale_by_chi_square(model);
 }
 
@@ -102,6 +108,7 @@ void fit_parts(SweepModel& model, const SweepData& data) {
   const double step = std::log(data.high_hz / data.low_hz) / 3;
   for (const auto& [from, to] : {std::pair{0, 2}, std::pair{1, 3}}) {
     CircuitData part = model.points;
+    if (model.jointly) part.z = model.cleaned;
     for (std::size_t i = 0; i < part.size(); ++i) {
       const double at = std::log(part.frequency_hz[i] / data.low_hz) / step;
       const bool inside = at >= from - 1e-9 && at <= to + 1e-9 && model.fit.used[i];
@@ -116,14 +123,32 @@ void fit_parts(SweepModel& model, const SweepData& data) {
   }
 }
 
+/// The circuit with one element at the upper end of its interval, the others following as their covariance has it.
+Circuit at_limit(const JointFit& joint, CircuitParameter element) {
+  const Eigen::MatrixXd all = joint.covariance + joint.shifts * joint.shifts.transpose();
+  const auto at = std::find(joint.order.begin(), joint.order.end(), element) - joint.order.begin();
+  Circuit circuit = joint.circuit;
+  for (std::size_t k = 0; k < joint.order.size(); ++k) {
+    const double moved = kNormalQuantile * all(static_cast<Eigen::Index>(k), at) / std::sqrt(all(at, at));
+    circuit[joint.order[k]] = std::fmax(circuit[joint.order[k]] + moved, 0);
+  }
+  return circuit;
+}
+
 /// The circuit with one more loss at the limit to which the data do not see it: what a value at one frequency cannot rule out.
 void look_for_hidden_losses(SweepModel& model) {
   const CircuitFamily family = model.fit.circuit.family;
   const auto add = [&](CircuitFamily more, CircuitParameter loss) {
     CircuitFitOptions options;
     options.reference_hz = model.fit.circuit.reference_hz;
+    options.limits = !model.jointly;
     const Result<CircuitFit> fit = fit_circuit(model.points, more, options);
     if (!fit) return;
+    if (model.jointly) {
+      const JointFit joint = fit_jointly({model.points, model.fit.used, model.errors}, fit->circuit);
+      if (joint.settled) model.hidden.push_back(at_limit(joint, loss));
+      return;
+    }
     if (const CircuitLimit* limit = fit->limit_of(loss)) {
       model.hidden.push_back(limit->circuit);
     } else if (fit->seen(loss)) {
@@ -146,6 +171,8 @@ void look_for_hidden_losses(SweepModel& model) {
 void take_choice(SweepModel& model, CircuitChoice choice) {
   model.fit = std::move(choice.best);
   model.outliers = std::move(choice.left_out);
+  model.families.clear();
+  for (const CircuitCandidate& each : choice.candidates) model.families.push_back(each.family);
   model.runner_up.clear();
   if (choice.runner_up) {
     model.runner_up = name(choice.runner_up->family) + " (criterion " + to_text(choice.lead, Unit::one, Script::utf8, 3) + " higher)";
@@ -162,17 +189,6 @@ void weigh(SweepModel& model, const NoiseProfile& profile, bool has_phase) {
   } else if (has_phase) {
     model.points.u_phase = profile.angle;
   }
-}
-
-/// Circuits of one resonance.
-std::vector<CircuitFamily> single_resonance() {
-  std::vector<CircuitFamily> families;
-  for (const bool loss : {false, true}) {
-    families.push_back({.parallel_loss = loss});
-    families.push_back({.parallel_loss = loss, .skin = true});
-    families.push_back({.parallel_loss = loss, .relaxation = true});
-  }
-  return families;
 }
 
 /// Fits with the errors of the points as the file suggests, then as the residuals show, and keeps the circuit.
@@ -213,27 +229,80 @@ Result<void> choose(SweepModel& model, const SweepData& data, const CircuitChoic
   return {};
 }
 
-/// The choice once more with what the analyser may err as noise of each point: a structure that it can make is no element.
-Result<void> choose_within_stated(SweepModel& model, const CircuitChoiceOptions& options) {
-  const double noise = noise_profile(model.fit).all * model.fit.scale;
-  const auto of = [](const std::vector<double>& u, std::size_t i) { return u.size() == 1 ? u[0] : u[i]; };
-  std::vector<double> size, angle;
-  for (std::size_t i = 0; i < model.points.size(); ++i) {
-    double stated = model.stated[i] / std::sqrt(2.0);   // of each part
-    if (model.alike == SweepErrors::reflection) {
-      const Complex z = model.points.z[i], sum = z + model.points.reference_ohm;
-      stated *= std::abs(2 * model.points.reference_ohm * z / (sum * sum));
-    }
-    size.push_back(std::hypot(of(model.points.u, i) * noise, stated));
-    if (!model.points.u_phase.empty()) angle.push_back(std::hypot(of(model.points.u_phase, i) * noise, stated));
+/// Families for the joint choice: those of one resonance, and with a second one what the first choice had of them.
+std::vector<CircuitFamily> joint_families(const std::vector<CircuitFamily>& tried) {
+  std::vector<CircuitFamily> families;
+  for (const bool loss : {false, true}) {
+    families.push_back({.parallel_loss = loss});
+    families.push_back({.parallel_loss = loss, .skin = true});
+    families.push_back({.parallel_loss = loss, .relaxation = true});
   }
-  model.points.u = std::move(size);
-  model.points.u_phase = std::move(angle);
-  model.points.scale_known = true;
-  Result<CircuitChoice> choice = choose_circuit(model.points, options);
-  if (!choice) return failure(choice);
-  take_choice(model, std::move(*choice));
-  return {};
+  for (const CircuitFamily& each : tried) {
+    if (each.second_resonance) families.push_back(each);
+  }
+  return families;
+}
+
+/// Points with their noise as standard deviations, by differences of neighbouring residuals.
+CircuitData with_noise(const SweepModel& model) {
+  CircuitData points = model.points;
+  if (points.scale_known) return points;
+  const double noise = std::fmax(noise_profile(model.fit).all * model.fit.scale, 1e-300);
+  for (double& u : points.u) u *= noise;
+  for (double& u : points.u_phase) u *= noise;
+  points.scale_known = true;
+  return points;
+}
+
+/// The choice once more, together with the errors the points share: what those can do to the points is no element.
+void choose_jointly(SweepModel& model) {
+  if (model.errors.empty()) return;
+  const CircuitData points = with_noise(model);
+  const JointProblem problem{points, model.fit.used, model.errors};
+  CircuitData rest = points;
+  for (const std::size_t i : model.outliers) rest.z[i] = std::nan("");
+  struct Tried {
+    CircuitFit fit;
+    JointFit joint;
+    double criterion;
+  };
+  std::vector<Tried> tried;
+  for (const CircuitFamily& family : joint_families(model.families)) {
+    CircuitFitOptions options;
+    options.reference_hz = model.fit.circuit.reference_hz;
+    options.limits = false;
+    Result<CircuitFit> fit = fit_circuit(rest, family, options);
+    if (!fit) continue;
+    JointFit joint = fit_jointly(problem, fit->circuit);
+    if (!joint.settled) continue;
+    const double count = joint.dof + static_cast<double>(joint.order.size());
+    const double criterion = joint.chi_square + static_cast<double>(joint.order.size()) * std::log(count);
+    tried.push_back({std::move(*fit), std::move(joint), criterion});
+  }
+  if (tried.empty()) return;
+  std::stable_sort(tried.begin(), tried.end(), [](const Tried& a, const Tried& b) { return a.criterion < b.criterion; });
+  JointFit& joint = tried.front().joint;
+  model.fit = std::move(tried.front().fit);
+  model.fit.circuit = joint.circuit;
+  model.fit.order = joint.order;
+  for (std::size_t k = 0; k < joint.order.size(); ++k) model.fit.fit.parameters[static_cast<Eigen::Index>(k)] = joint.circuit[joint.order[k]];
+  model.fit.fit.covariance = joint.covariance;
+  model.fit.fit.stop = FitStop::converged;
+  model.fit.residual = joint.residual;
+  model.fit.chi_square = joint.chi_square;
+  model.fit.dof = joint.dof;
+  model.fit.fit.reduced_chi_square = joint.chi_square / joint.dof;
+  model.fit.scale = 1;
+  model.fit.limits.clear();
+  model.shifts = joint.shifts;
+  model.points = points;
+  model.cleaned = without_errors(problem, joint);
+  model.jointly = true;
+  model.runner_up.clear();
+  if (tried.size() > 1) {
+    model.runner_up = name(tried[1].joint.circuit.family) + " (criterion " +
+                      to_text(tried[1].criterion - tried[0].criterion, Unit::one, Script::utf8, 3) + " higher)";
+  }
 }
 
 }  // namespace
@@ -243,9 +312,14 @@ Circuit SweepModel::draw(std::span<const double> x) const {
   const auto count = static_cast<Eigen::Index>(parameters());
   const auto terms = static_cast<std::size_t>(shifts.cols());
   for (Eigen::Index k = 0; k < count; ++k) {
-    double value = x[terms + static_cast<std::size_t>(k)];
-    for (std::size_t e = 0; e < terms; ++e) value -= x[e] * shifts(k, static_cast<Eigen::Index>(e));
-    circuit[fit.order[static_cast<std::size_t>(k)]] = value;
+    const CircuitParameter name = fit.order[static_cast<std::size_t>(k)];
+    double moved = 0;
+    for (std::size_t e = 0; e < terms; ++e) moved += x[e] * shifts(k, static_cast<Eigen::Index>(e));
+    // A gain that is off makes L larger and C smaller by the same factor, and leaves the resonance where it is: small shifts are
+    // factors. An element that may as well not be there is moved by the shift itself.
+    const double best = fit.circuit[name], value = x[terms + static_cast<std::size_t>(k)];
+    const bool small = best > kFactorsBelow * shifts.row(k).norm();
+    circuit[name] = small ? value * std::exp(-moved / best) : value - moved;
   }
   return circuit;
 }
@@ -262,33 +336,27 @@ Result<SweepModel> fit_sweep(const SweepData& data, const SweepRequest& request)
   SweepModel model;
   CircuitChoiceOptions options;
   options.reference_hz = round_reference_hz(data.low_hz, data.high_hz);
-  const auto fit = [&]() -> Result<void> {
-    if (auto chosen = choose(model, data, options); !chosen) return chosen;
-    model.errors = data.errors;
-    ImpedanceErrorTerm frequency = frequency_error(data, model.fit.circuit, request);
-    if (!frequency.basis.empty()) model.errors.push_back(std::move(frequency));
-    model.stated = stated_errors(model);
-    judge_residuals(model);
-    return {};
-  };
-  // Where an accuracy was stated, the small structure it allows is no second resonance: that is looked for only beyond it.
-  const bool allowed = std::any_of(data.errors.begin(), data.errors.end(),
-                                   [](const ImpedanceErrorTerm& each) { return !each.basis.starts_with("default"); });
-  if (allowed) options.families = single_resonance();
-  if (auto done = fit(); !done) return failure(done);
-  if (allowed && !data.points.scale_known) {
-    options.families.clear();
-    if (auto done = choose_within_stated(model, options); !done) return failure(done);
-    judge_residuals(model);
-  }
+  if (auto chosen = choose(model, data, options); !chosen) return failure(chosen);
+  model.errors = data.errors;
+  ImpedanceErrorTerm frequency = frequency_error(data, model.fit.circuit, request);
+  if (!frequency.basis.empty()) model.errors.push_back(std::move(frequency));
+  choose_jointly(model);
+  judge_residuals(model);
   if (model.misfit) fit_parts(model, data);
   if (data.has_phase) {
-    if (Result<KramersKronig> test = test_kramers_kronig(model.points)) model.causality = std::move(*test);
+    CircuitData points = model.points;
+    if (model.jointly) {
+      points.z = model.cleaned;
+      points.scale_known = data.points.scale_known;
+    }
+    if (Result<KramersKronig> test = test_kramers_kronig(points)) model.causality = std::move(*test);
   }
   if (!request.at_hz.empty()) look_for_hidden_losses(model);
-  model.shifts.resize(static_cast<Eigen::Index>(model.parameters()), static_cast<Eigen::Index>(model.errors.size()));
-  for (std::size_t e = 0; e < model.errors.size(); ++e) {
-    model.shifts.col(static_cast<Eigen::Index>(e)) = parameter_shift(model, model.errors[e].dz_ohm);
+  if (!model.jointly) {
+    model.shifts = Eigen::MatrixXd::Zero(static_cast<Eigen::Index>(model.parameters()), static_cast<Eigen::Index>(model.errors.size()));
+    for (std::size_t e = 0; e < model.errors.size(); ++e) {
+      model.shifts.col(static_cast<Eigen::Index>(e)) = parameter_shift(model, model.errors[e].dz_ohm);
+    }
   }
   return model;
 }

@@ -19,12 +19,14 @@ struct SweepModel {
   std::vector<std::size_t> outliers;            // of the data's points, left out of the fit
   std::optional<KramersKronig> causality;       // absent: too few points, or no phase
   CircuitData points;                           // as fitted, with the errors that were found
-  double residual_rms = 0;                      // relative, of Z
+  double residual_rms = 0;                      // of ln Z, or of S
+  double noise = 1;                             // what differs between neighbouring residuals, over the errors of the points
   double correlation = 0;                       // of the residuals of neighbouring points
-  double inflation = 1;                         // of the covariance: above 1 for residuals that hang together, below 1 where
-                                                // what hangs together is that of the stated errors, carried on their own
-  bool misfit = false;                          // they do so beyond chance, and beyond what the stated errors can do
-  std::vector<double> stated;                   // standard uncertainty of each point by the stated errors, relative to |Z|
+  double inflation = 1;                         // of the covariance, for residuals that hang together
+  bool misfit = false;                          // they do so beyond chance
+  std::vector<CircuitFamily> families;          // that were tried at first
+  bool jointly = false;                         // the circuit was fitted together with the errors below
+  std::vector<std::complex<double>> cleaned;    // then: the points with the most likely errors taken out
   struct Drift {                                // what the circuit becomes on parts of the span
     std::vector<CircuitFit> parts;
   } drift;                                      // only with misfit

@@ -1,0 +1,185 @@
+#include "analysis/sweep_joint.h"
+
+#include <Eigen/Cholesky>
+#include <algorithm>
+#include <array>
+#include <cmath>
+#include <limits>
+
+namespace coilassay {
+
+namespace {
+
+using Complex = std::complex<double>;
+constexpr int kMostRounds = 60;
+constexpr double kSettled = 1e-8;    // of a step, in squared standard uncertainties
+constexpr double kLongest = 1.0;     // of a step in a logarithm
+constexpr double kSmallest = 1e-9;   // of an element over where it began: as good as not there
+
+/// Everything at one circuit: rows of both parts of each point.
+class Equations {
+ public:
+  explicit Equations(const JointProblem& problem) : problem_(problem) {
+    const CircuitData& points = problem.points;
+    for (std::size_t i = 0; i < points.size(); ++i) {
+      if (problem.used[i]) rows_.push_back(i);
+    }
+    const auto count = static_cast<Eigen::Index>(2 * rows_.size());
+    shared_ = Eigen::MatrixXd::Zero(count, static_cast<Eigen::Index>(problem.errors.size()));
+    for (std::size_t row = 0; row < rows_.size(); ++row) {
+      const std::size_t i = rows_[row];
+      for (std::size_t e = 0; e < problem.errors.size(); ++e) {
+        // To first order, about what was measured.
+        const Complex moved = problem.errors[e].dz_ohm[i] * by_z(points.z[i]);
+        const auto k = static_cast<Eigen::Index>(e);
+        shared_(row_of(row), k) = moved.real() / u_size(i);
+        shared_(row_of(row) + 1, k) = phase(i) ? moved.imag() / u_angle(i) : 0;
+      }
+    }
+  }
+
+  Eigen::Index size() const { return shared_.rows(); }
+  const Eigen::MatrixXd& shared() const { return shared_; }
+  const std::vector<std::size_t>& rows() const { return rows_; }
+
+  /// Model less measured, over the noise; derivatives to the natural parameters when asked for.
+  Eigen::VectorXd residual(const Circuit& circuit, Eigen::MatrixXd* slopes) const {
+    Eigen::VectorXd r(size());
+    std::array<Complex, kCircuitParameters> log_slopes;
+    for (std::size_t row = 0; row < rows_.size(); ++row) {
+      const std::size_t i = rows_[row];
+      const Complex z = impedance_and_log_slopes(circuit, problem_.points.frequency_hz[i], log_slopes);
+      const Complex measured = problem_.points.z[i];
+      const Complex off = reflection() ? s_of(z) - s_of(measured)
+                                       : Complex(std::log(std::abs(z) / std::abs(measured)), std::arg(z / measured));
+      r[row_of(row)] = off.real() / u_size(i);
+      r[row_of(row) + 1] = phase(i) ? off.imag() / u_angle(i) : 0;
+      if (slopes == nullptr) continue;
+      for (Eigen::Index k = 0; k < slopes->cols(); ++k) {
+        Complex slope = log_slopes[static_cast<std::size_t>(k)];
+        if (reflection()) slope *= z * by_z(z);
+        (*slopes)(row_of(row), k) = slope.real() / u_size(i);
+        (*slopes)(row_of(row) + 1, k) = phase(i) ? slope.imag() / u_angle(i) : 0;
+      }
+    }
+    return r;
+  }
+
+ private:
+  static Eigen::Index row_of(std::size_t row) { return static_cast<Eigen::Index>(2 * row); }
+  bool reflection() const { return problem_.points.errors == SweepErrors::reflection; }
+  Complex s_of(Complex z) const { return (z - problem_.points.reference_ohm) / (z + problem_.points.reference_ohm); }
+  /// d(what the errors are alike in)/dz.
+  Complex by_z(Complex z) const {
+    if (!reflection()) return 1.0 / z;
+    const double r = problem_.points.reference_ohm;
+    return 2 * r / ((z + r) * (z + r));
+  }
+  static double of(const std::vector<double>& u, std::size_t i) { return u.size() == 1 ? u[0] : u[i]; }
+  double u_size(std::size_t i) const { return of(problem_.points.u, i); }
+  double u_angle(std::size_t i) const {
+    return problem_.points.u_phase.empty() || reflection() ? u_size(i) : of(problem_.points.u_phase, i);
+  }
+  bool phase(std::size_t i) const { return std::isfinite(u_angle(i)); }
+
+  const JointProblem& problem_;
+  std::vector<std::size_t> rows_;
+  Eigen::MatrixXd shared_;
+};
+
+/// N of the header, its parameters in logarithms or natural.
+Eigen::MatrixXd normal_of(const Eigen::MatrixXd& slopes, const Equations& equations, const Eigen::MatrixXd& shared_square) {
+  const Eigen::Index p = slopes.cols(), e = equations.shared().cols();
+  Eigen::MatrixXd n(p + e, p + e);
+  n.topLeftCorner(p, p) = slopes.transpose() * slopes;
+  n.topRightCorner(p, e) = slopes.transpose() * equations.shared();
+  n.bottomLeftCorner(e, p) = n.topRightCorner(p, e).transpose();
+  n.bottomRightCorner(e, e) = shared_square;
+  return n;
+}
+
+/// Inverse with the parameters brought to equal size first: they differ by many orders of magnitude.
+Eigen::MatrixXd inverse_of(Eigen::MatrixXd n) {
+  const Eigen::VectorXd unit = n.diagonal().cwiseMax(std::numeric_limits<double>::min()).cwiseSqrt().cwiseInverse();
+  n = unit.asDiagonal() * n * unit.asDiagonal();
+  const Eigen::MatrixXd inverse = n.ldlt().solve(Eigen::MatrixXd::Identity(n.rows(), n.cols()));
+  return unit.asDiagonal() * inverse * unit.asDiagonal();
+}
+
+}  // namespace
+
+JointFit fit_jointly(const JointProblem& problem, const Circuit& start) {
+  const Equations equations(problem);
+  JointFit fit;
+  fit.circuit = start;
+  fit.order = parameters_of(start.family);
+  const auto p = static_cast<Eigen::Index>(fit.order.size());
+  const Eigen::Index e = equations.shared().cols();
+  fit.errors = Eigen::VectorXd::Zero(e);
+  Eigen::MatrixXd shared_square = equations.shared().transpose() * equations.shared();
+  shared_square.diagonal().array() += 1;
+
+  Eigen::MatrixXd slopes(equations.size(), p), logs(equations.size(), p);
+  const auto cost = [&](const Circuit& circuit, const Eigen::VectorXd& errors) {
+    return (equations.residual(circuit, nullptr) + equations.shared() * errors).squaredNorm() + errors.squaredNorm();
+  };
+  double damping = 1e-4, best = cost(fit.circuit, fit.errors);
+  for (int round = 0; round < kMostRounds && !fit.settled; ++round) {
+    const Eigen::VectorXd r = equations.residual(fit.circuit, &slopes) + equations.shared() * fit.errors;
+    for (Eigen::Index k = 0; k < p; ++k) logs.col(k) = slopes.col(k) * fit.circuit[fit.order[static_cast<std::size_t>(k)]];
+    const Eigen::MatrixXd normal = normal_of(logs, equations, shared_square);
+    Eigen::VectorXd gradient(p + e);
+    gradient << logs.transpose() * r, equations.shared().transpose() * r + fit.errors;
+    bool better = false;
+    for (int attempt = 0; attempt < 12 && !better; ++attempt) {
+      Eigen::MatrixXd damped = normal;
+      damped.diagonal().array() += damping * normal.diagonal().array() + 1e-12 * normal.diagonal().maxCoeff();
+      const Eigen::VectorXd step = damped.ldlt().solve(-gradient);
+      Circuit next = fit.circuit;
+      for (Eigen::Index k = 0; k < p; ++k) {
+        const CircuitParameter name = fit.order[static_cast<std::size_t>(k)];
+        double value = fit.circuit[name] * std::exp(std::clamp(step[k], -kLongest, kLongest));
+        if (name == CircuitParameter::relaxation_share) value = std::fmin(value, 1);
+        next[name] = std::fmax(value, kSmallest * start[name]);
+      }
+      const Eigen::VectorXd errors = fit.errors + step.tail(e);
+      const double now = cost(next, errors);
+      if (std::isfinite(now) && now <= best) {
+        better = true;
+        fit.settled = best - now < kSettled * (1 + best);
+        fit.circuit = next;
+        fit.errors = errors;
+        best = now;
+        damping = std::fmax(damping / 10, 1e-12);
+      } else {
+        damping = std::fmin(damping * 10, 1e8);
+      }
+    }
+    if (!better) fit.settled = true;   // no way down is left
+  }
+  fit.chi_square = best;
+  fit.dof = static_cast<double>(equations.size()) - static_cast<double>(p);
+
+  const Eigen::VectorXd r = equations.residual(fit.circuit, &slopes) + equations.shared() * fit.errors;
+  const Eigen::MatrixXd inverse = inverse_of(normal_of(slopes, equations, shared_square));
+  // An error not known takes the data with it: the parameters follow by -B, the errors that are fitted by the rest.
+  fit.shifts = -inverse.topRightCorner(p, e);
+  fit.covariance = inverse.topLeftCorner(p, p) - fit.shifts * fit.shifts.transpose();
+  fit.settled = fit.settled && fit.covariance.allFinite() && (inverse.topLeftCorner(p, p).diagonal().array() > 0).all();
+  fit.residual.assign(problem.points.size(), {std::nan(""), std::nan("")});
+  for (std::size_t row = 0; row < equations.rows().size(); ++row) {
+    const auto k = static_cast<Eigen::Index>(2 * row);
+    fit.residual[equations.rows()[row]] = {r[k], r[k + 1]};
+  }
+  return fit;
+}
+
+std::vector<Complex> without_errors(const JointProblem& problem, const JointFit& fit) {
+  std::vector<Complex> z = problem.points.z;
+  for (std::size_t i = 0; i < z.size(); ++i) {
+    for (std::size_t e = 0; e < problem.errors.size(); ++e) z[i] -= fit.errors[static_cast<Eigen::Index>(e)] * problem.errors[e].dz_ohm[i];
+  }
+  return z;
+}
+
+}  // namespace coilassay
