@@ -176,8 +176,17 @@ JointFit fit_jointly(const JointProblem& problem, const Circuit& start) {
 
 std::vector<Complex> without_errors(const JointProblem& problem, const JointFit& fit) {
   std::vector<Complex> z = problem.points.z;
+  const double r = problem.points.reference_ohm;
   for (std::size_t i = 0; i < z.size(); ++i) {
-    for (std::size_t e = 0; e < problem.errors.size(); ++e) z[i] -= fit.errors[static_cast<Eigen::Index>(e)] * problem.errors[e].dz_ohm[i];
+    Complex moved = 0;
+    for (std::size_t e = 0; e < problem.errors.size(); ++e) moved += fit.errors[static_cast<Eigen::Index>(e)] * problem.errors[e].dz_ohm[i];
+    // In the space where the errors are small: near an open a small error of S is a large one of Z.
+    if (problem.points.errors == SweepErrors::reflection) {
+      const Complex s = (z[i] - r) / (z[i] + r) - moved * 2.0 * r / ((z[i] + r) * (z[i] + r));
+      z[i] = r * (1.0 + s) / (1.0 - s);
+    } else {
+      z[i] *= std::exp(-moved / z[i]);
+    }
   }
   return z;
 }
