@@ -16,6 +16,7 @@ namespace {
 constexpr double kFalseAlarms = 1e-3;      // sweeps that lose a point by chance
 constexpr std::size_t kMostRounds = 5;
 constexpr double kMostLeftOut = 0.2;       // share of the points: with more it is not single points that are wrong
+constexpr double kFarOff = 0.7;            // of ln |z|: some five times this, a factor of 50, is far
 constexpr std::size_t kFewPoints = 51;
 constexpr std::size_t kSinglePoints = 3;   // as many neighbours may be wrong together; more are a feature of the curve
 
@@ -203,6 +204,19 @@ std::vector<std::size_t> outliers(const CircuitData& data, std::span<const std::
   return list;
 }
 
+/// Points whose modulus is far from those of its neighbours (an overflow, a wrong range): a circuit would put a resonance without
+/// loss there. They come back when the circuit without them explains them.
+std::vector<std::size_t> far_off(const CircuitData& data) {
+  const auto points = usable_points(data);
+  std::vector<std::complex<double>> sizes;
+  for (const std::size_t i : points) sizes.emplace_back(1e4 + std::log(std::abs(data.z[i])));   // far from 0: only neighbours count
+  std::vector<std::size_t> list;
+  for (const std::size_t k : standing_out(sizes, kFarOff, true, kFalseAlarms)) list.push_back(points[k]);
+  std::sort(list.begin(), list.end());
+  if (static_cast<double>(list.size()) > kMostLeftOut * static_cast<double>(points.size())) list.clear();
+  return list;
+}
+
 CircuitData without(const CircuitData& data, std::span<const std::size_t> left_out) {
   CircuitData rest = data;
   for (const std::size_t i : left_out) rest.z[i] = {std::nan(""), std::nan("")};
@@ -221,7 +235,8 @@ std::vector<std::complex<double>> residuals_by(const CircuitData& data, const Ci
 
 Result<CircuitChoice> choose_circuit(const CircuitData& data, const CircuitChoiceOptions& options) {
   CircuitChoice choice;
-  Result<Tried> tried = try_families(data, options);
+  if (options.leave_out) choice.left_out = far_off(data);
+  Result<Tried> tried = try_families(without(data, choice.left_out), options);
   if (!tried) return failure(tried);
   if (options.leave_out) {
     const double most = kMostLeftOut * static_cast<double>(usable_points(data).size());

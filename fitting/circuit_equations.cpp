@@ -29,6 +29,8 @@ Complex logarithm(Complex q) {
   return {2 * (a * s - b * t), 2 * (a * t + b * s)};
 }
 
+constexpr double kLeastSize = 1e-60;   // of z: smaller, and larger than its inverse, is no measurement, and its square no number
+
 double one_of(const std::vector<double>& list, std::size_t i) { return list.size() == 1 ? list[0] : list[i]; }
 
 }  // namespace
@@ -38,7 +40,7 @@ std::vector<std::size_t> usable_points(const CircuitData& data) {
   std::vector<std::size_t> points;
   for (std::size_t i = 0; i < data.size(); ++i) {
     const double size = std::abs(data.z[i]);
-    if (std::isfinite(size) && size > 0 && one_of(data.u, i) > 0 && std::isfinite(one_of(data.u, i))) points.push_back(i);
+    if (size > kLeastSize && size < 1 / kLeastSize && one_of(data.u, i) > 0 && std::isfinite(one_of(data.u, i))) points.push_back(i);
   }
   std::stable_sort(points.begin(), points.end(),
                    [&](std::size_t a, std::size_t b) { return data.frequency_hz[a] < data.frequency_hz[b]; });

@@ -20,7 +20,7 @@ enum class SweepErrors {
   reflection,   // of S = (z - reference)/(z + reference): constant absolute error of the real and of the imaginary part
 };
 
-/// Data of a fit. Points whose z is NaN or 0, or whose error is NaN, are not used; order of frequencies is free.
+/// Data of a fit. Points whose z is NaN, 0 or beyond 1e60, or whose error is NaN, are not used; order of frequencies is free.
 struct CircuitData {
   std::vector<double> frequency_hz;        // > 0
   std::vector<std::complex<double>> z;     // ohm
@@ -43,7 +43,8 @@ struct CircuitData {
 struct CircuitLimit {
   CircuitParameter parameter = CircuitParameter::series_resistance;
   bool at_most = true;        // false: at least (k_rel)
-  double value = 0;           // by profile likelihood: chi-square rises by the square of the 97.5 % quantile
+  double value = 0;           // by profile likelihood: chi-square rises by the square of the 97.5 % quantile; infinity (k_rel: 0):
+                              // the data set none
   Circuit circuit;            // all the other parameters fitted again with this one at its limit: for limits of what follows from it
 };
 

@@ -42,14 +42,17 @@ void find_limits(const CircuitEquations& equations, CircuitFit& fit) {
     double inside = std::max(value, share ? 0.0 : 1e-3 * u), outside = inside;
     Circuit near = fit.circuit;
     if (share) inside = outside = value;
-    for (int k = 0; k < 60; ++k) {
+    bool found = false;
+    for (int k = 0; k < 60 && !found; ++k) {
       outside = share ? outside / 1.5 : std::max(outside * 1.5, value + 2 * u);
       const SettledCircuit next = profile(equations, near, i, parameter, outside);
-      if (next.chi - fit.chi_square > rise) break;
+      found = next.chi - fit.chi_square > rise;
+      if (found) break;
       inside = outside;
       near = next.circuit;
     }
-    for (int k = 0; k < 30 && std::fabs(outside / inside - 1) > 1e-3; ++k) {
+    if (!found) outside = inside = share ? 0.0 : HUGE_VAL;
+    for (int k = 0; found && k < 30 && std::fabs(outside / inside - 1) > 1e-3; ++k) {
       const double middle = std::sqrt(inside * outside);
       const SettledCircuit next = profile(equations, near, i, parameter, middle);
       if (next.chi - fit.chi_square > rise) {
@@ -61,11 +64,11 @@ void find_limits(const CircuitEquations& equations, CircuitFit& fit) {
     }
     limit.value = outside;
     limit.circuit = near;
-    limit.circuit[parameter] = limit.value;
+    if (found) limit.circuit[parameter] = limit.value;
     fit.limits.push_back(limit);
     // Where the effect grows with the square (losses without phases) the slope at the minimum promises too much.
     const auto k = static_cast<Eigen::Index>(i);
-    const double wide = limit.at_most ? limit.value / fit.coverage_factor() : 0;
+    const double wide = limit.at_most && found ? limit.value / fit.coverage_factor() : 0;
     fit.fit.covariance(k, k) = std::fmax(fit.fit.covariance(k, k), wide * wide);
     fit.log_covariance(k, k) = fit.fit.covariance(k, k) / (value * value);
     fit.fit.at_bound[i] = true;

@@ -69,6 +69,32 @@ TEST(CircuitChoice, NamesBadPointsAndFitsWithoutThem) {
   }
 }
 
+TEST(CircuitChoice, AnOverflowIsNoResonance) {
+  // 9.9e37 is what instruments write for "no value"; a resonance without loss at that very frequency would fit it.
+  Random random(25);
+  auto sweep = test::make_sweep(coil(), 101, 1e-3, random);
+  for (const std::size_t i : {30U, 70U}) sweep.z[i] = {9.9e37, 9.9e37};
+  const auto choice = choose_circuit(data_of(sweep, 1e-3));
+  ASSERT_TRUE(choice && choice->best.usable());
+  EXPECT_THAT(choice->left_out, ElementsAre(30, 70));
+  EXPECT_NEAR(choice->best.value(P::inductance) / 22e-6, 1, 0.01);
+}
+
+TEST(CircuitChoice, ASharpResonanceIsNoBadPoint) {
+  // Q 6000 and 20 points a decade: only a point that happens to lie on the resonance knows of it, and it stands out far.
+  Random random(26);
+  test::SweepTruth truth{.r = 0.5, .l = 1e-3, .c = 100e-12, .low_hz = 1e3, .high_hz = 3e7};
+  auto sweep = test::make_sweep(truth, 90, 1e-3, random);
+  sweep.f[54] = truth.resonance_hz() * (1 + 5e-6);
+  sweep.z[54] = impedance_of(truth, sweep.f[54]);
+  ASSERT_LT(sweep.f[53], sweep.f[54]);
+  ASSERT_GT(sweep.f[55], sweep.f[54]);
+  const auto choice = choose_circuit(data_of(sweep, 1e-3));
+  ASSERT_TRUE(choice && choice->best.usable());
+  EXPECT_THAT(choice->left_out, IsEmpty());
+  EXPECT_NEAR(choice->best.value(P::series_resistance) / 0.5, 1, 0.05);
+}
+
 TEST(CircuitChoice, AMisfitOfTheCircuitLeavesNoPointOut) {
   // Only R L C is allowed where skin and parallel loss are in the data.
   Random random(22);
