@@ -56,7 +56,9 @@ bool last_number_cut(std::string_view tail, char delimiter, char decimal) {
   const auto lines = lines_of(tail, true);
   constexpr std::size_t kCompared = 5;
   if (lines.size() < kCompared + 2) return false;  // the first may be cut off by the look itself
-  const std::string last = shape(cells_of(lines.back().text, delimiter).back(), decimal);
+  const auto last_cells = cells_of(lines.back().text, delimiter);
+  if (last_cells.empty()) return false;  // blanks behind the last row
+  const std::string last = shape(last_cells.back(), decimal);
   std::string before;
   for (std::size_t i = 1; i <= kCompared; ++i) {
     const auto cells = cells_of(lines[lines.size() - 1 - i].text, delimiter);

@@ -28,8 +28,14 @@ class TableRead {
     if (const auto understood = understand(); !understood) return failure(understood);
     if (const auto done = read_rows(); !done) return failure(done);
     std::vector<Capture> list = captures();
-    if (std::all_of(list.begin(), list.end(), [](const Capture& c) { return c.channels.empty(); })) {
+    const std::size_t empty = std::erase_if(list, [](const Capture& c) { return c.channels.empty(); });
+    if (list.empty()) {
       return failure(Problem::not_a_capture, name_, "no channel holds a single number", "export the waveform again");
+    }
+    if (empty > 0) {
+      list.front().findings.push_back({"missing_samples", Severity::note,
+                                       fmt::format("{} of {} records hold no number in any channel and were left out", empty, list.size() + empty),
+                                       "", static_cast<double>(empty), Unit::one});
     }
     if (!sweep_plan_) return Recording(std::move(list));
     if (list.size() > 1) {

@@ -93,7 +93,11 @@ class TouchstoneRead {
       if (keyword && keyword->name == "end information") section_ = Section::head;
       return {};
     }
-    if (line.front() == '#') return read_option_line(line, place(), setup_);
+    if (line.front() == '#') {
+      // Numbers before it were read as the defaults say; it cannot change them any more.
+      if (numbers_seen() && !setup_.option_line_seen) return damaged("the option line stands behind the first numbers");
+      return read_option_line(line, place(), setup_);
+    }
     if (const auto keyword = keyword_of(line)) return take_keyword(*keyword);
     if (section_ == Section::noise) return {};
     if (section_ == Section::head && setup_.version_2) return more_references(line);
@@ -111,10 +115,13 @@ class TouchstoneRead {
     } else if (keyword.name == "end") {
       section_ = Section::end;
     } else {
+      if (numbers_seen()) return damaged(fmt::format("[{}] stands behind the first numbers", shown(keyword.name, 40)));
       return read_keyword(keyword, place(), setup_);
     }
     return {};
   }
+
+  bool numbers_seen() const { return checked_ || !pending_.empty(); }
 
   /// The references of many ports may go on in the next lines.
   Result<void> more_references(std::string_view line) {

@@ -86,6 +86,15 @@ TEST_F(ReaderDamage, APlaceholderOfALargeFileStore) {
          "capture.csv", "placeholder");
 }
 
+// A table between blanks that ends in one: nothing is cut.
+TEST_F(ReaderDamage, ABlankBehindTheLastRowIsNone) {
+  std::string text = "t (s)  CH1 (V)\n";
+  for (int i = 0; i < 20; ++i) text += std::to_string(i) + "e-6  0." + std::to_string(100 + i) + "\n";
+  const auto read = captures(made("capture.txt", text + " "));
+  ASSERT_TRUE(read) << read.error().finding;
+  EXPECT_EQ(read->front().samples(), 20u);
+}
+
 TEST_F(ReaderDamage, ALineWithoutEnd) {
   std::string text = good_rows(50000);
   text.insert(text.size() / 2, std::string(10'000'000, '1'));

@@ -68,5 +68,15 @@ TEST_F(TableRecords, WithoutATimeColumnTheWordsMustSayIt) {
   EXPECT_FALSE(captures(made("bad.txt", "Interval,1e-6\nCH1 (V)\n1\n2\n3\ntrigger lost\n4\n5\n6\n")));
 }
 
+TEST_F(TableRecords, ARecordWithoutASingleNumberIsLeftOutAndSaid) {
+  const auto list = captures(made("runs.txt", "time\tV(a)\nStep Information: C=1n\n0\t1\n1e-6\t2\n2e-6\t3\nStep Information: C=2n\n0\tnan\n1e-6\tnan\n2e-6\tnan\n"));
+  ASSERT_TRUE(list) << list.error().finding;
+  ASSERT_EQ(list->size(), 1u);
+  EXPECT_EQ(list->front().channels.size(), 1u);
+  const Finding* said = test::found(list->front(), "missing_samples");
+  ASSERT_NE(said, nullptr);
+  EXPECT_NE(said->message.find("1 of 2 records hold no number"), std::string::npos) << said->message;
+}
+
 }  // namespace
 }  // namespace coilassay
