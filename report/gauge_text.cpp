@@ -29,8 +29,8 @@ class Page {
 
   void heading(const std::string& text) {
     if (!page_.empty()) page_ += '\n';
-    const std::string line = in_script(text, style_.script);
-    page_ += style_.color ? "\x1b[1m" + line + "\x1b[0m\n" : line + "\n";
+    const std::string lines = wrapped(in_script(text, style_.script), "", style_.width);
+    page_ += style_.color ? "\x1b[1m" + lines.substr(0, lines.size() - 1) + "\x1b[0m\n" : lines;
   }
   void paragraph(const std::string& text) { page_ += wrapped(in_script(text, style_.script), kIndent, style_.width); }
   void rows(Rows rows) {
@@ -46,10 +46,11 @@ class Page {
   std::string page_;
 };
 
-Rows components_of(const GaugeRecord& record) {
+Rows components_of(const GaugeRecord& record, bool verbose) {
   const GaugeStudy& study = record.study;
-  Rows rows{{"", "deviation", "95 % interval", "of variance", "of variation"}};
+  Rows rows{{"", "deviation", "95 % interval", "of variation"}};
   if (record.tolerance) rows.front().emplace_back("of tolerance");
+  if (verbose) rows.front().emplace_back("of variance");
   const bool several = study.operators.size() > 1;
   for (const GaugeComponent& c : study.components) {
     const bool of_operators = c.name == "operator" || c.name == "interaction" || c.name == "reproducibility";
@@ -57,8 +58,9 @@ Rows components_of(const GaugeRecord& record) {
     // Pooled, the operators are all there is of reproducibility.
     if (study.pooled && (c.name == "interaction" || c.name == "operator")) continue;
     rows.push_back({c.name, deviation(c.sigma, record.unit), deviation(c.low, record.unit) + " to " + deviation(c.high, record.unit),
-                    percent(c.share), percent(std::sqrt(c.share))});
+                    percent(std::sqrt(c.share))});
     if (record.tolerance) rows.back().push_back(percent(6 * c.sigma / *record.tolerance));
+    if (verbose) rows.back().push_back(percent(c.share));
   }
   return rows;
 }
@@ -99,7 +101,7 @@ std::string to_text(const GaugeRecord& record, const TextStyle& style) {
   if (!record.conditions.empty()) what += " " + record.conditions;
   page.heading(fmt::format("{}: {}, {}, {}", what, counted(study.parts.size(), "part", "parts"), counted(study.operators.size(), "operator", "operators"),
                            counted(study.trials.size(), "trial", "trials")));
-  page.rows(components_of(record));
+  page.rows(components_of(record, style.verbose));
   page.heading(judgement_in_words(study));
   const auto interval = [](const WithInterval& v) { return fmt::format("{} ({} to {})", percent(v.value), percent(v.low), percent(v.high)); };
   Rows rows{{"%GRR of the study", interval(study.grr_of_study)}};

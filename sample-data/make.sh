@@ -79,5 +79,8 @@ simulate resistance drum-resistance --seed 23 --resistance 88mohm --temperature 
   --noise 2uV --current-noise 40uA --digit 1uV --current-digit 100uA --thermal-resistance 6
 }
 
+# The gauge study of the sweeps.
+if [ $# -lt 2 ]; then sh "$(dirname "$0")/make-gauge.sh" "$program"; else sh "$(dirname "$0")/make-gauge.sh" "$program" "$to/drum-gauge"; fi
+
 # The lot of the incoming inspection.
 if [ $# -lt 2 ]; then sh "$(dirname "$0")/make-lot.sh" "$program"; else sh "$(dirname "$0")/make-lot.sh" "$program" "$to/drum-lot"; fi

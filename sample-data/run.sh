@@ -45,6 +45,11 @@ echo "\$ coilassay inspect drum.toml drum-lot --lot 0412 --lot-size 500 --ledger
   --report "$reports/lot-0412.html" || [ $? -eq 1 ]
 "$program" ledger verify "$reports/drum-47.ledger"
 
+# How much of the spread is the gauge's: eight coils, three people, twice each (docs/howto-gauge.md).
+echo
+echo "\$ coilassay gauge drum-gauge --part-sheet drum.toml --quantity L_s"
+"$program" gauge drum-gauge --part-sheet drum.toml --quantity L_s --figure "$reports/gauge.svg"
+
 # Without a capacitor: frequency, decay and Q, and what to try next.
 measure ringdown first-look drum-47.csv
 # Coils of the tide-gauge buoy (README.md has their story).

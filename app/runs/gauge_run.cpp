@@ -88,12 +88,13 @@ Result<std::map<std::string, PreparedTest>> tests_of(const GaugeJob& job, const 
 }
 
 /// The test whose captures are looked at: the only one in the folder that gives the quantity.
-Result<std::string> chosen_test(const GaugeFolder& folder, const std::map<std::string, PreparedTest>& tests, const std::string& quantity) {
+Result<std::string> chosen_test(const GaugeFolder& folder, const std::map<std::string, PreparedTest>& tests, const Limit& limit) {
+  const std::string& quantity = limit.quantity;
   std::string chosen;
   for (const GaugeCapture& capture : folder.captures) {
     const auto test = tests.find(capture.test);
     if (test == tests.end() || capture.test == chosen) continue;
-    if (!quantity.empty() && !test_gives(test->second.plan.kind, quantity)) continue;
+    if (!quantity.empty() && !limit_uses(limit, test->second.plan)) continue;
     if (!chosen.empty()) {
       return failure(Problem::usage, "--quantity", "the folder holds captures of " + shown(chosen, 40) + " and of " + shown(capture.test, 40),
                      "name a quantity that only one of them gives, or keep them in folders of their own");
@@ -139,7 +140,7 @@ Result<void> read_captures_of(const GaugeJob& job, Question& question, GaugeReco
   for (const auto& [name, test] : *tests) names.push_back(name);
   const Result<GaugeFolder> folder = read_gauge_folder(job.input, names);
   if (!folder) return failure(folder);
-  const Result<std::string> test = chosen_test(*folder, *tests, question.limit.quantity);
+  const Result<std::string> test = chosen_test(*folder, *tests, question.limit);
   if (!test) return failure(test);
   const PreparedTest& how = tests->at(*test);
   if (question.limit.quantity.empty()) {
