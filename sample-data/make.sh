@@ -77,6 +77,11 @@ simulate sine drum-sine --seed 22 --bits 12 --frequency 100kHz --amplitude 1.4V 
 # Its winding by four wires: 88 mohm at 20 degC, the current turned round between readings.
 simulate resistance drum-resistance --seed 23 --resistance 88mohm --temperature 21.5degC --current 1A --thermal-offset 7uV \
   --noise 2uV --current-noise 40uA --digit 1uV --current-digit 100uA --thermal-resistance 6
+
+# And over frequency, on an analyser good to 0.2 %; two of its points it marks as bad itself.
+simulate sweep drum-sweep --seed 24 --inductance 46.2uH --resistance 88mohm --skin-resistance 0.22ohm --skin-frequency 100kHz \
+  --parallel-capacitance 9.1pF --parallel-resistance 31kohm --start 100Hz --stop 30MHz --points 201 --noise 0.05% --scale 1.0004 \
+  --phase-error 0.3mrad --marked-points 2
 }
 
 # The gauge study of the sweeps.

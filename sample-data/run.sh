@@ -63,9 +63,10 @@ measure ringdown old-coil old-coil-1n.csv old-coil-4n7.csv old-coil-22n.csv --be
 measure ringdown drum-coarse drum-coarse.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
 measure ringdown drum-clipped drum-clipped.csv --bench bench.toml --capacitor '10.02nF±10pF(k=2)' --capacitor-dissipation '0.0003±0.0001'
 measure ringdown charging-driven charging-driven.csv --bench bench.toml --capacitor '22.05nF±20pF(k=2)' --capacitor-dissipation '0.0004±0.0001'
-# The drum's coil driven: until its core gives way, with a steady sine, and by four wires.
+# The drum's coil driven: until its core gives way, with a steady sine, over frequency, and by four wires.
 measure ramp drum-ramp drum-ramp.csv --bench ramp-bench.toml
 measure sine drum-sine drum-sine.csv --bench sine-bench.toml
+measure sweep drum-sweep drum-sweep.csv --bench sweep-bench.toml --at 100kHz
 measure resistance drum-resistance drum-resistance.csv --temperature '21.4±0.5degC'
 
 echo

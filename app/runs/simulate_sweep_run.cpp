@@ -61,7 +61,6 @@ std::string truth_document(const SimulateSweepJob& job, const CoilSweepRecord& r
   const CoilSweepTruth& t = record.truth;
   nlohmann::ordered_json truth = {{"L", b.inductance_h},
                                   {"R_dc", b.resistance_ohm},
-                                  {"R_ac", b.skin_ohm},
                                   {"C_par", b.parallel_capacitance_f},
                                   {"R_par", b.parallel_resistance_ohm > 0 ? number(b.parallel_resistance_ohm) : nullptr},
                                   {"f_r", number(t.f_r_hz)},
