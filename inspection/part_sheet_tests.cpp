@@ -108,10 +108,10 @@ TestPlan read_test_plan(SheetSection& section, const std::string& test_name, con
                    "give the test another name, or leave kind out");
   }
   test.kind = kind.value_or(named_by_kind ? test_name : "");
+  if (const auto repeats = section.count("repeats", 1, 1000)) test.repeats = static_cast<std::size_t>(*repeats);
   if (test.kind == "reading") return test;
 
   test.bench = read_path(section, "bench", sheet_path);
-  if (const auto repeats = section.count("repeats", 1, 1000)) test.repeats = static_cast<std::size_t>(*repeats);
   test.segment = section.text("segment");
   test.from_s = section.plain("from", {Unit::second}, SheetRange::any);
   test.to_s = section.plain("to", {Unit::second}, SheetRange::any);

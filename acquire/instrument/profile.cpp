@@ -7,6 +7,7 @@
 #include "acquire/instrument/profile_section.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
+#include "base/utc_time.h"
 
 namespace coilassay {
 
@@ -104,6 +105,8 @@ ReadingSetup read_reading(ProfileSection section) {
   reading.status = section.text("status").value_or("0");
   reading.invalid = section.texts("invalid");
   reading.attempts = static_cast<std::size_t>(section.integer("attempts", 1, 100).value_or(3));
+  reading.test = section.text("test").value_or("");
+  reading.test_place = section.place("test");
   reading.at = section.conditions("at");
   reading.accuracy = section.accuracies("accuracy", reading.fields);
   reading.subtract = section.values("subtract", reading.fields);
@@ -175,6 +178,18 @@ PresentSetup read_present(ProfileSection section, const std::vector<ProfileField
   return present;
 }
 
+CalibrationDates read_calibration(ProfileSection section) {
+  CalibrationDates dates;
+  dates.id = section.text("id").value_or("");
+  dates.certificate = section.text("certificate").value_or("");
+  const auto calibrated = section.date("calibrated"), due = section.date("due");
+  if (calibrated) dates.calibrated = to_text(*calibrated);
+  if (due) dates.due = to_text(*due);
+  if (calibrated && due && *due < *calibrated) section.refuse(Problem::bad_sheet, "due", "due lies before calibrated", "look at the certificate");
+  dates.overdue_blocks = section.word("overdue", {"refuse", "mark"}) == "refuse";
+  return dates;
+}
+
 Result<InstrumentProfile> read_profile(const SheetTable& root, const std::string& path) {
   std::optional<Error> error;
   ProfileSection sheet(root, "", error);
@@ -216,6 +231,7 @@ Result<InstrumentProfile> read_profile(const SheetTable& root, const std::string
     }
     if (profile.present && profile.present->ask) sheet.refuse(Problem::bad_sheet, "present", "[reading] has no 'ask', so the instrument prints lines unasked: it cannot be asked for anything else", "use open_above and short_below instead");
   }
+  if (auto section = sheet.section("calibration")) profile.calibration = read_calibration(std::move(*section));
   if (auto section = sheet.section("verdict")) {
     VerdictCommands verdict;
     verdict.pass = section->command("pass").value_or("");

@@ -62,6 +62,7 @@ struct ReadingSetup {
   std::string status = "0";              // of the field "status" when all is well
   std::vector<std::string> invalid;      // replies that are no value, besides those everyone uses
   std::size_t attempts = 3;              // asked again after a bad reply
+  std::string test, test_place;          // of the part sheet whose limits it serves; empty: the first of this kind
   StatedConditions at;
   std::map<std::string, Accuracy> accuracy;       // by symbol
   std::map<std::string, StatedValue> subtract;    // of the fixture, by symbol
@@ -99,6 +100,13 @@ struct SettingQuestion {
   std::string place;
 };
 
+/// When the instrument was calibrated, and what follows when that is too long ago.
+struct CalibrationDates {
+  std::string id, certificate;
+  std::string calibrated, due;  // "2026-05-01"
+  bool overdue_blocks = true;   // a station does not judge with it; else it only says so
+};
+
 struct InstrumentProfile {
   std::string path;
   LinkSetup link;
@@ -109,6 +117,7 @@ struct InstrumentProfile {
   std::optional<RecordSetup> record;
   std::optional<PresentSetup> present;
   std::optional<VerdictCommands> verdict;
+  std::optional<CalibrationDates> calibration;
 };
 
 /// Reads a profile; bad_sheet, wrong_unit or bad_number with the line for an unknown key, a value that makes no sense,

@@ -1,6 +1,7 @@
 // One table of a profile, read key by key: for the files that read profiles only.
 #pragma once
 
+#include <chrono>
 #include <map>
 #include <optional>
 #include <string>
@@ -22,6 +23,7 @@ class ProfileSection {
   void refuse(Problem problem, std::string_view key, std::string finding, std::string remedy);
 
   std::optional<std::string> text(std::string_view key) { return kept(table_.text(key)); }
+  std::optional<std::chrono::year_month_day> date(std::string_view key) { return kept(table_.date(key)); }
   std::optional<bool> flag(std::string_view key) { return kept(table_.flag(key)); }
   std::vector<std::string> texts(std::string_view key);
   /// A list, or one text that stands for a list of one.

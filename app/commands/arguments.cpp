@@ -151,6 +151,12 @@ std::vector<StatedValue> Arguments::all_stated(std::string_view option) const {
   return result;
 }
 
+std::vector<std::string> Arguments::all_texts(std::string_view option) const {
+  std::vector<std::string> result;
+  for (const Value& value : values(option, {ValueKind::text, ValueKind::file, ValueKind::choice})) result.push_back(value.text);
+  return result;
+}
+
 std::optional<double> Arguments::plain(std::string_view option) const {
   const std::vector<Value>& all = values(option, {ValueKind::plain});
   return all.empty() ? std::nullopt : std::optional(all.front().stated.value);

@@ -36,6 +36,7 @@ class Arguments {
   bool has(std::string_view option) const;
   std::optional<StatedValue> stated(std::string_view option) const;
   std::vector<StatedValue> all_stated(std::string_view option) const;
+  std::vector<std::string> all_texts(std::string_view option) const;
   std::optional<double> plain(std::string_view option) const;
   std::vector<double> all_plain(std::string_view option) const;
   std::optional<std::uint64_t> count(std::string_view option) const;

@@ -34,6 +34,7 @@ Command ledger_verify_command();
 Command ledger_export_command();
 Command ledger_correct_command();
 Command acquire_command();
+Command station_command();
 Command simulate_instrument_command();
 Command gauge_command();
 Command help_command();

@@ -1,4 +1,6 @@
+#include <fcntl.h>
 #include <gmock/gmock.h>
+#include <unistd.h>
 
 #include <cmath>
 #include <filesystem>
@@ -298,6 +300,18 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
     // Looked at before any command runs.
     EXPECT_THAT(arguments->never_asked(), testing::ElementsAre("--color")) << name;
   }
+  // A station reads standard input to its end; without a unit its lot is undecided.
+  const int before = dup(STDIN_FILENO), nothing = open("/dev/null", O_RDONLY | O_CLOEXEC);
+  dup2(nothing, STDIN_FILENO);
+  const std::string judged = folder.file("judged.toml", "[part]\nname = \"drum-47\"\n[[limit]]\nquantity = \"L_s\"\nmin = \"1 uH\"\n");
+  const Command& station = *find_command("station");
+  const auto arguments = read_arguments(station, {judged, "--instrument", profile, "--lot", "1", "--ledger", folder / "d.ledger"});
+  FakeConsole fake;
+  EXPECT_EQ(station.run(*arguments, fake.console), ExitCode::undecided) << fake.error.str();
+  EXPECT_THAT(arguments->never_asked(), testing::ElementsAre("--color"));
+  dup2(before, STDIN_FILENO);
+  close(before);
+  close(nothing);
 }
 
 TEST(RingDownCommand, ShowsTheMeasurementAlthoughAFileCouldNotBeWritten) {
