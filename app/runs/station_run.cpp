@@ -218,7 +218,7 @@ class Station {
     auto measured = bench_.measure(lot_.sheet());
     if (!measured) return interrupted(measured.error());
     if (told_unmeasured(*measured, standard->serial)) return std::nullopt;
-    const auto value = check_value(*standard, measured->runs);
+    const auto value = check_value(lot_.sheet(), measured->runs);
     if (!value) {
       notice(Kind::no_reading, shown(standard->serial, 60), "the reading of the check standard gave no " + standard->quantity);
       return std::nullopt;
