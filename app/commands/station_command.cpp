@@ -135,7 +135,7 @@ Command station_command() {
           .positional = {.name = "PART.toml", .help = "the part sheet", .least = 1, .most = 1},
           .groups = {lot_group(), output_group(), everywhere_options()},
           .examples = {{"station drum.toml --instrument lcr.toml --lot 7 --ledger d.ledger", "an operator, a scanner and a meter"},
-                       {"station a.toml --instrument b.toml --lot 7 --ledger c.ledger --follow", "the same for another program"}},
+                       {"station a.toml --instrument b.toml --lot 7 --ledger a.db --follow", "the same for another program"}},
           .run = run};
 }
 
