@@ -43,6 +43,8 @@ void write_values(TextPage& page, const Measurement& m) {
     page.table(rows);
   }
   if (!conditions.empty()) page.paragraph(fmt::format("{}", fmt::join(conditions, ", ")), "  Conditions: ");
+  // What was left out of a circuit says as much as what is in it.
+  if (m.test == "sweep" && m.model && was_measured(m)) page.paragraph(m.model->name, "  Circuit: ");
 }
 
 void write_points(TextPage& page, const Measurement& m) {

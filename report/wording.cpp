@@ -55,7 +55,7 @@ std::vector<std::string_view> reading_order(std::string_view test) {
   if (test == "ringdown") return {"L", "L_s", "R_s", "C_par", "Q_coil", "Q", "f_0", "f_d", "alpha"};
   if (test == "ramp") return {"L_0", "I_sat_10", "I_sat_20", "I_sat_30", "R_dc"};
   if (test == "sine") return {"Z", "phi", "L_s", "R_s", "Q"};
-  if (test == "sweep") return {"L", "R_dc", "C_par", "R_par", "f_r"};
+  if (test == "sweep") return {"L", "R_dc", "R_ac", "C_par", "R_par", "f_r"};
   if (test == "coupling") return {"k", "M", "L_1", "L_2", "n"};
   if (test == "resistance") return {"R_dc", "R_dc_20", "T_winding", "T_rise"};
   return {};
@@ -83,6 +83,8 @@ std::string test_in_words(std::string_view test) {
 ValueText value_text(const Estimate& e, Script script) {
   ValueText text = labelled(e.symbol);
   text.where = where_in_words(e, script);
+  // The coefficient of a law over frequency is nothing without its frequency.
+  if (e.symbol == "R_ac" && e.at_hz) text.words += " at " + setting_in_words(*e.at_hz, Unit::hertz, script);
   const Quantity& q = e.quantity;
   const bool low = std::isfinite(e.low), high = std::isfinite(e.high);
   if (low && high && symmetric(e)) {
