@@ -5,6 +5,7 @@
 #include <gtest/gtest.h>
 
 #include <cmath>
+#include <map>
 #include <numbers>
 
 #include "analysis/sweep_circuit.h"
@@ -273,6 +274,27 @@ TEST(Sweep, TheCircuitOfAMeasurementIsThatOfItsModel) {
     EXPECT_NEAR(std::abs(again.z_ohm[i][0] / truth - 1.0), 0, 2e-3) << i;
   }
   EXPECT_FALSE(circuit_of(Measurement{}));
+}
+
+// A sample of tests/proof/sweep_coverage.cpp (b): the accuracy, its wandering part and the frequency drawn from their laws.
+TEST(Sweep, IntervalsHoldTheTruthWhenStatedErrorsAreDrawn) {
+  std::map<std::string, int> covered;
+  constexpr int kTrials = 60;
+  for (std::uint64_t seed = 1; seed <= kTrials; ++seed) {
+    Random random(seed, 31);
+    CoilSweepBench bench = test::draw_coil(random, 1e-3);
+    bench.seed = seed;
+    const Sweep sweep = test::seen_with(test::draw_errors(random, 2e-3, 50e-6, bench), bench);
+    SweepRequest request = exact();
+    request.bench.impedance.ratio = StatedValue::unstated(2e-3, Unit::one);
+    request.bench.timebase = StatedValue::unstated(50e-6, Unit::one);
+    const Measurement m = measured(sweep, request);
+    covered["L"] += covers(m.find("L"), bench.inductance_h);
+    covered["R_dc"] += covers(m.find("R_dc"), bench.resistance_ohm);
+    covered["C_par"] += covers(m.find("C_par"), bench.parallel_capacitance_f);
+  }
+  // 95 % of 60 less three standard deviations.
+  for (const auto& [symbol, times] : covered) EXPECT_GE(times, 52) << symbol;
 }
 
 // Ten captures of a steady sine over three decades. The sense resistor and the gains move all points together.
