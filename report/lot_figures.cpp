@@ -49,7 +49,7 @@ FigurePanel sorted_panel(const LotRecord& lot, std::size_t index, const Values& 
   FigurePanel panel{.x_label = "units from the lowest value to the highest",
                     .y_label = limit.quantity,
                     .y_unit = limit.unit,
-                    .height = 1.4};
+                    .height = 1.1};
   std::vector<std::size_t> order(values.y.size());
   std::iota(order.begin(), order.end(), std::size_t{0});
   std::stable_sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) { return values.y[a] < values.y[b]; });
@@ -65,7 +65,7 @@ FigurePanel sorted_panel(const LotRecord& lot, std::size_t index, const Values& 
 }
 
 FigurePanel histogram_panel(const Limit& limit, const std::vector<double>& y) {
-  FigurePanel panel{.x_label = limit.quantity, .y_label = "units", .x_unit = limit.unit};
+  FigurePanel panel{.x_label = limit.quantity, .y_label = "units", .x_unit = limit.unit, .height = 0.7};
   const auto [least, most] = std::minmax_element(y.begin(), y.end());
   const double low = *least, span = *most > low ? *most - low : std::fabs(low) * 1e-6 + 1e-300;
   // Freedman and Diaconis: a unit far from the others does not make the bins of all others wide.
@@ -100,7 +100,7 @@ FigurePanel histogram_panel(const Limit& limit, const std::vector<double>& y) {
 }
 
 FigurePanel run_panel(const LotRecord& lot, const Limit& limit, const Values& values) {
-  FigurePanel panel{.x_label = "units in the order of the lot", .y_label = limit.quantity, .y_unit = limit.unit, .height = 1.2};
+  FigurePanel panel{.x_label = "units in the order of the lot", .y_label = limit.quantity, .y_unit = limit.unit, .height = 0.9};
   const auto last = static_cast<double>(lot.units.size() + 1);
   if (const auto chart = individuals_chart(values.y)) {
     panel.series.push_back(level(Mark::dashes, "process limits", 0, last, chart->high));

@@ -19,14 +19,15 @@ constexpr std::string_view kLotStyle = R"css(
 .decision p { margin: .25rem 0; }
 .decision strong { font-size: 1.6rem; letter-spacing: .02em; }
 .units, .details, .files { font-size: .85rem; }
-.units td, .units th { white-space: nowrap; padding-right: .7rem; }
+.units td, .units th { padding-right: .7rem; }
+.units td:last-child, .units td:nth-last-child(2) { white-space: nowrap; }
 .files td:last-child { font-family: "DejaVu Sans Mono", monospace; font-size: .7rem; word-break: break-all; }
 .files td:last-child, .files th:last-child { width: 52%; }
 .unit { border-top: 1.5px solid #4a535c; margin-top: 1.25rem; }
 .sign { display: grid; grid-template-columns: 1fr 1fr 1fr; gap: 2rem; margin-top: 2.5rem; break-inside: avoid; }
 .sign p { border-top: 1px solid #1b1f24; padding-top: .25rem; color: #4a535c; font-size: .85rem; }
 .hash { font-family: "DejaVu Sans Mono", monospace; font-size: .75rem; word-break: break-all; }
-@media print { .unit h3 { break-after: avoid; } }
+@media print { .unit h3 { break-after: avoid; } figure.lot svg { width: 100%; max-height: 100mm; } .quantity { break-inside: avoid; } .units tr { break-inside: avoid; } }
 )css";
 
 /// A text between quotes in a style sheet: everything but letters and digits as its number.
@@ -107,7 +108,7 @@ void write_plan(HtmlBuilder& page, const LotRecord& lot) {
                     limit.test.empty() ? "any that fits" : limit.test});
   }
   page.table({"Quantity", "Limits", "Conditions", "Test"}, rows, "details");
-  write_figure(page, operating_figure(lot), "oc");
+  write_figure(page, operating_figure(lot), "oc", "short");
   page.close();
 }
 
@@ -115,11 +116,13 @@ void write_values(HtmlBuilder& page, const LotRecord& lot) {
   if (lot.statistics.empty()) return;
   page.open("section").element("h2", "Values of the lot");
   for (const LotValues& each : lot.statistics) {
+    page.open("div", {{"class", "quantity"}});
     page.open("h3").symbol(each.quantity).close();
     page.element("p", values_in_words(each, kScript) + ".");
     if (const std::string capability = capability_in_words(each); !capability.empty()) page.element("p", capability + ".");
     const std::string number = std::to_string(each.limit);
-    write_figure(page, lot_values_figure(lot, each.limit), "v" + number);
+    write_figure(page, lot_values_figure(lot, each.limit), "v" + number, "lot");
+    page.close();
   }
   page.element("p",
                "The interval of the mean holds the scatter of the units and the errors common to all of them (standards, "
@@ -147,7 +150,7 @@ void write_remarks(HtmlBuilder& page, const LotRecord& lot) {
   if (!findings.empty() || !lot.cautions.empty()) page.close();
   if (lot.check) {
     page.element("h3", "Check standard").element("p", lot.check->why);
-    write_figure(page, check_figure(lot), "cs");
+    write_figure(page, check_figure(lot), "cs", "short");
   }
   page.close();
 }
@@ -175,10 +178,10 @@ void write_record(HtmlBuilder& page, const LotRecord& lot) {
 
 }  // namespace
 
-void write_figure(HtmlBuilder& page, const Figure& figure, const std::string& prefix) {
+void write_figure(HtmlBuilder& page, const Figure& figure, const std::string& prefix, std::string_view css_class) {
   if (figure.panels.empty()) return;
   if (const auto svg = draw_svg(figure, prefix)) {
-    page.open("figure", {{"class", figure.panels.size() > 2 ? "tall" : "short"}})
+    page.open("figure", {{"class", css_class}})
         .own_markup(std::string_view(*svg).substr(svg->find("<svg")))
         .close();
   } else {

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <string>
+#include <string_view>
 
 #include "report/figure.h"
 #include "report/html_builder.h"
@@ -22,7 +23,8 @@ void write_measuring(HtmlBuilder& page, const LotRecord& lot);
 void write_all_units(HtmlBuilder& page, const LotRecord& lot);
 void write_all_files(HtmlBuilder& page, const LotRecord& lot);
 
-/// A figure, or the sentence that says how to have one. `prefix` makes its ids unique on the page.
-void write_figure(HtmlBuilder& page, const Figure& figure, const std::string& prefix);
+/// A figure, or the sentence that says how to have one. `prefix` makes its ids unique on the page; `css_class` says how
+/// large it is printed.
+void write_figure(HtmlBuilder& page, const Figure& figure, const std::string& prefix, std::string_view css_class);
 
 }  // namespace coilassay

@@ -110,12 +110,12 @@ void write_units_in_detail(HtmlBuilder& page, const LotRecord& lot) {
     write_limits(page, *unit);
     for (const Measurement& each : unit->shown) {
       const std::string prefix = "u" + std::to_string(drawn++);
-      page.element("p", test_in_words(each.test), {{"class", "small"}});
       for (const Finding& finding : by_weight(each.findings)) {
         if (finding.severity == Severity::note) continue;
         page.element("p", std::string(name(finding.severity)) + ": " + finding.message);
       }
-      write_figure(page, figure_of(each), prefix);
+      const Figure figure = figure_of(each);
+      write_figure(page, figure, prefix, figure.panels.size() > 2 ? "tall" : "short");
     }
     page.close();
   }
@@ -139,23 +139,23 @@ void write_all_units(HtmlBuilder& page, const LotRecord& lot) {
   if (lot.units.empty()) return;
   page.open("section").element("h2", "All units");
   std::vector<std::string> head = {"Unit"};
-  for (const Limit& limit : lot.sheet.limits) {
-    head.push_back(limit.quantity);
-    head.emplace_back("P");
-  }
+  for (const Limit& limit : lot.sheet.limits) head.push_back(limit.quantity);
+  head.emplace_back("P");
   head.emplace_back("Verdict");
   std::vector<std::vector<std::string>> rows;
   for (const LotUnitRecord& unit : lot.units) {
     std::vector<std::string> row = {shown(unit.verdict.serial, 40) + (unit.in_sample ? "" : " *")};
+    const LimitVerdict* worst = nullptr;
     for (const LimitVerdict& limit : unit.verdict.limits) {
       row.push_back(value_in_words(limit, kScript));
-      row.push_back(probability_in_words(limit));
+      if (limit.p_conform && (worst == nullptr || *limit.p_conform < *worst->p_conform)) worst = &limit;
     }
+    row.push_back(worst != nullptr ? probability_in_words(*worst) : "");
     row.push_back(marked(unit.verdict.verdict));
     rows.push_back(std::move(row));
   }
   page.table(head, rows, "units");
-  std::string legend = "Values with their 95 % intervals; P is the probability that the unit conforms, given its value.";
+  std::string legend = "Values with their 95 % intervals; P is the probability that the unit keeps the limit it is nearest to breaking, given its value.";
   for (const LotUnitRecord& unit : lot.units) {
     if (unit.in_sample) continue;
     legend += " Units with a star were measured besides the sample and do not decide.";

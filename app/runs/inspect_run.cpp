@@ -369,7 +369,19 @@ Result<void> Inspection::decide() {
   return {};
 }
 
-/// Every unit that does not pass is measured once more with what its figure needs.
+/// The tests that a unit's verdict rests on where it does not pass.
+std::vector<PreparedTest> telling_tests(const std::vector<PreparedTest>& tests, const UnitVerdict& verdict) {
+  std::vector<PreparedTest> telling;
+  for (const PreparedTest& test : tests) {
+    const bool tells = std::any_of(verdict.limits.begin(), verdict.limits.end(), [&](const LimitVerdict& limit) {
+      return limit.verdict != Verdict::pass && limit.test == test.plan.name;
+    });
+    if (tells) telling.push_back(test);
+  }
+  return telling;
+}
+
+/// Every unit that does not pass is measured once more with what the figures of those tests need that tell of it.
 void Inspection::keep_figures() {
   std::vector<std::size_t> which;
   for (std::size_t i = 0; i < record_.units.size(); ++i) {
@@ -379,8 +391,9 @@ void Inspection::keep_figures() {
   inside.threads = 1;
   inside.progress = nullptr;
   for_each_index(which.size(), context_.threads, [&](std::size_t i) {
-    for (TestRun& run : run_tests(tests_, folder_.units[which[i]], true, inside)) {
-      record_.units[which[i]].shown.push_back(std::move(run.measurement));
+    LotUnitRecord& unit = record_.units[which[i]];
+    for (TestRun& run : run_tests(telling_tests(tests_, unit.verdict), folder_.units[which[i]], true, inside)) {
+      unit.shown.push_back(std::move(run.measurement));
     }
   });
   // With every entry from an earlier run there is no example yet.
