@@ -39,7 +39,11 @@ Result<SaturationLaw> read_saturation_law(const std::string& path) {
   std::ostringstream bytes;
   bytes << in.rdbuf();
   const nlohmann::json document = nlohmann::json::parse(bytes.str(), nullptr, false);
-  if (!document.is_object() || document.value("schema", "") != "coilassay.result/1" || document.value("test", "") != "ramp") {
+  const auto says = [&document](const char* key, const char* word) {
+    const auto member = document.find(key);
+    return member != document.end() && member->is_string() && *member == word;
+  };
+  if (!document.is_object() || !says("schema", "coilassay.result/1") || !says("test", "ramp")) {
     return refused("it is no JSON result of a ramp");
   }
   const auto curve = document.find("curve");
