@@ -52,8 +52,12 @@ std::vector<Candidate> candidates_in(const Measurement& measurement, const Limit
   return found;
 }
 
+double allowed_distance(double stated, const ConditionTolerance& tolerance) {
+  return tolerance.relative ? tolerance.value * std::fabs(stated) : tolerance.value;
+}
+
 bool near(double is, double stated, const ConditionTolerance& tolerance) {
-  const double allowed = tolerance.relative ? tolerance.value * std::fabs(stated) : tolerance.value;
+  const double allowed = allowed_distance(stated, tolerance);
   // A value on the edge of its tolerance is within it, rounding or not.
   return std::fabs(is - stated) <= allowed + 1e-9 * std::max(std::fabs(stated), allowed);
 }
@@ -94,9 +98,19 @@ std::string why_not_comparable(const Candidate& candidate, const LimitConditions
   return {};
 }
 
-double distance_in_frequency(const Candidate& candidate, const LimitConditions& at) {
-  if (!at.frequency_hz || !candidate.conditions.frequency_hz) return 0;
-  return std::fabs(std::log(*candidate.conditions.frequency_hz / *at.frequency_hz));
+/// How far the conditions of a comparable value are from the stated ones, in parts of what is allowed.
+double distance(const Candidate& candidate, const LimitConditions& at, const ConditionTolerances& tolerances) {
+  double sum = 0;
+  const auto add = [&](const std::optional<double>& stated, const std::optional<double>& is, const ConditionTolerance& tolerance) {
+    if (stated && is && *is != *stated) sum += std::fabs(*is - *stated) / std::max(allowed_distance(*stated, tolerance), 1e-300);
+  };
+  const Conditions& is = candidate.conditions;
+  add(at.frequency_hz, is.frequency_hz, tolerances.frequency);
+  add(at.level_v, is.level_v, tolerances.level);
+  add(at.level_a, is.level_a, tolerances.level);
+  add(at.bias_a, is.bias_a, tolerances.bias);
+  add(at.temperature_degc, is.temperature_degc, tolerances.temperature);
+  return sum;
 }
 
 /// Share of the standard uncertainty that is the unit's own, from the budget of the symbol.
@@ -140,6 +154,7 @@ Evidence evidence_of(const Limit& limit, const ConditionTolerances& tolerances, 
                      std::span<const TestedUnit* const> repeats) {
   Evidence evidence;
   evidence.test = test;
+  evidence.repeats = repeats.size();
   for (const TestedUnit* tested : repeats) {
     const Measurement& measurement = tested->measurement;
     const std::vector<Candidate> candidates = candidates_in(measurement, limit);
@@ -151,7 +166,7 @@ Evidence evidence_of(const Limit& limit, const ConditionTolerances& tolerances, 
         if (reason.empty()) reason = misfit;
         continue;
       }
-      if (best == nullptr || distance_in_frequency(candidate, limit.at) < distance_in_frequency(*best, limit.at)) best = &candidate;
+      if (best == nullptr || distance(candidate, limit.at, tolerances) < distance(*best, limit.at, tolerances)) best = &candidate;
     }
     if (best != nullptr) {
       const double u = best->estimate->quantity.standard_uncertainty;
@@ -174,7 +189,7 @@ Evidence evidence_of(const Limit& limit, const ConditionTolerances& tolerances, 
         evidence.not_comparable = misfit;
       }
     }
-    if (!bounded && evidence.not_comparable.empty() && evidence.missing.empty()) {
+    if (!bounded && evidence.missing.empty()) {
       evidence.missing = why_missing(measurement, limit.quantity);
     }
   }

@@ -17,13 +17,14 @@ struct EvidenceValue {
   std::string from;              // "measured", "model at 100 kHz"
 };
 
-/// Everything there is for one limit from one test; at most one of the three is filled.
+/// Everything there is for one limit from one test, repeat by repeat.
 struct Evidence {
   std::string test;
+  std::size_t repeats = 0;
   std::vector<EvidenceValue> values;     // comparable: one for each repeat
   std::vector<Bound> bounds;             // only a limit of the value is known
-  std::string not_comparable;            // the reason, when a value is there that cannot be compared
-  std::string missing;                   // the reason, when there is no value at all
+  std::string not_comparable;            // the reason of the first repeat whose value cannot be compared
+  std::string missing;                   // the reason of the first repeat that has no value
 };
 
 /// Evidence from the measurements of one test (repeats).

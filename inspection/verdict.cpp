@@ -79,7 +79,7 @@ void judge_value(LimitVerdict& v, const EvidenceValue& evidence, const PartSheet
   v.U = sigma > 0 || !(estimate.low <= estimate.high) ? law->half_width() : estimate.half_width();
   v.low = sigma > 0 || !(estimate.low <= estimate.high) ? law->low() : estimate.low;
   v.high = sigma > 0 || !(estimate.low <= estimate.high) ? law->high() : estimate.high;
-  if (v.min && v.max && *v.U > 0) v.capability = (*v.max - *v.min) / (2 * *v.U);
+  if (v.min && v.max && *v.U > 0 && std::isfinite(*v.U)) v.capability = (*v.max - *v.min) / (2 * *v.U);
   const RuleOutcome outcome = apply_rule(sheet.decision, *law, v.min, v.max);
   v.verdict = outcome.verdict;
   v.guard = outcome.guard;
@@ -128,7 +128,8 @@ TestPlan plan_of(const PartSheet& sheet, const std::string& test) {
 }
 
 /// The evidence that counts: the first test, in the order given, that has a comparable value, else a bound, else a value
-/// that cannot be compared, else the first reason for having none.
+/// that cannot be compared, else the first reason for having none. One repeat at other conditions makes the test not
+/// comparable: nobody knows whether the others were not.
 std::optional<Evidence> gather(const Limit& limit, const PartSheet& sheet, std::span<const TestedUnit> measured) {
   std::vector<std::string> tests;
   for (const TestedUnit& tested : measured) {
@@ -136,7 +137,7 @@ std::optional<Evidence> gather(const Limit& limit, const PartSheet& sheet, std::
   }
   std::optional<Evidence> best;
   const auto rank = [](const Evidence& e) {
-    return !e.values.empty() ? 3 : !e.bounds.empty() ? 2 : !e.not_comparable.empty() ? 1 : 0;
+    return !e.not_comparable.empty() ? 1 : !e.values.empty() ? 3 : !e.bounds.empty() ? 2 : 0;
   };
   for (const std::string& test : tests) {
     if (!limit_uses(limit, plan_of(sheet, test))) continue;
@@ -186,13 +187,15 @@ LimitVerdict judge_limit(const Limit& limit, const PartSheet& sheet, std::span<c
     return v;
   }
   v.test = evidence->test;
-  if (!evidence->values.empty()) {
-    judge_value(v, mean_of_repeats(evidence->values), sheet);
-  } else if (!evidence->bounds.empty()) {
-    judge_bound(v, evidence->bounds.front(), sheet.decision);
-  } else if (!evidence->not_comparable.empty()) {
+  if (!evidence->not_comparable.empty()) {
     v.verdict = Verdict::not_comparable;
     v.why = evidence->not_comparable;
+  } else if (!evidence->values.empty()) {
+    judge_value(v, mean_of_repeats(evidence->values), sheet);
+    const std::size_t lost = evidence->repeats - evidence->values.size();
+    if (lost > 0) v.why += fmt::format("; {} of {} repeats gave no value", lost, evidence->repeats);
+  } else if (!evidence->bounds.empty()) {
+    judge_bound(v, evidence->bounds.front(), sheet.decision);
   } else {
     v.why = evidence->missing;
   }

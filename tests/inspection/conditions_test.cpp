@@ -158,6 +158,28 @@ TEST(Conditions, RepeatsAreJudgedByTheirMean) {
   EXPECT_THAT(unit.limits[0].from, HasSubstr("mean of 2"));
 }
 
+TEST(Conditions, OneRepeatAtOtherConditionsMakesTheLimitNotComparable) {
+  TestedUnit right = tested("sine", {estimate("L_s", 50e-6, 0.1e-6)}), wrong = right, refused = tested("sine", {});
+  right.measurement.conditions.frequency_hz = 100e3;
+  wrong.measurement.conditions.frequency_hz = 1e3;
+  const PartSheet sheet = sheet_at("frequency = \"100 kHz\"");
+  EXPECT_EQ(judge_unit(sheet, "1", 1, std::vector{right, wrong}).verdict, Verdict::not_comparable);
+  const auto two_of_three = judge_unit(sheet, "1", 1, std::vector{right, refused, right});
+  EXPECT_EQ(two_of_three.verdict, Verdict::pass);
+  EXPECT_THAT(two_of_three.limits[0].why, HasSubstr("1 of 3 repeats gave no value"));
+}
+
+TEST(Conditions, TheNearestBiasOfATableCounts) {
+  TestedUnit unit = tested("sine", {});
+  for (const auto& [amps, henry] : {std::pair{0.995, 30e-6}, {1.001, 50e-6}, {1.008, 20e-6}}) {
+    Point point;
+    point.bias_a = amps;
+    point.estimates.push_back(estimate("L_s", henry, 0.1e-6));
+    unit.measurement.points.push_back(point);
+  }
+  EXPECT_EQ(*judged(sheet_at("bias = \"1 A\""), unit).value, 50e-6);
+}
+
 TEST(Conditions, WhatRepeatsShareDoesNotAverageOut) {
   std::vector<TestedUnit> repeats;
   for (const double value : {50.01e-6, 49.99e-6, 50.0e-6, 50.0e-6}) {

@@ -127,5 +127,32 @@ TEST(Rules, UnitsOnALimitPassAtTheStatedRisk) {
   EXPECT_NEAR(passed / static_cast<double>(kUnits), 0.04919547558984488, 4 * std::sqrt(0.049 * 0.951 / kUnits));
 }
 
+TEST(Rules, UnitsOnTheOnlyLimitPassAtTheStatedRisk) {
+  constexpr int kUnits = 20000;
+  const PartSheet sheet = simple_sheet("guarded", "min = \"40 uH\"");
+  Random random(12);
+  int passed = 0;
+  for (int i = 0; i < kUnits; ++i) passed += verdict_of(sheet, 40e-6 + 1e-6 * random.normal(), 1e-6) == Verdict::pass;
+  EXPECT_NEAR(passed / static_cast<double>(kUnits), 0.05, 4 * std::sqrt(0.05 * 0.95 / kUnits));
+}
+
+// Units from a process that is flat over the interval: of those whose printed probability lies between 60 and 70 % that
+// share conforms, within four standard deviations of a binomial.
+TEST(Rules, ThePrintedProbabilityOfConformingIsCalibrated) {
+  const PartSheet sheet = simple_sheet("guarded", "min = \"40 uH\"\nmax = \"45 uH\"");
+  Random random(13);
+  double given = 0, conforming = 0, units = 0;
+  for (int i = 0; i < 40000; ++i) {
+    const double truth = random.uniform(34e-6, 51e-6), value = truth + 1e-6 * random.normal();
+    const auto v = judge_unit(sheet, "1", 1, std::vector{tested("ringdown", {estimate("L_s", value, 1e-6)})}).limits[0];
+    if (*v.p_conform < 0.6 || *v.p_conform > 0.7) continue;
+    units += 1;
+    given += *v.p_conform;
+    conforming += truth >= 40e-6 && truth <= 45e-6;
+  }
+  ASSERT_GT(units, 500);
+  EXPECT_NEAR(conforming / units, given / units, 4 * std::sqrt(0.65 * 0.35 / units));
+}
+
 }  // namespace
 }  // namespace coilassay
