@@ -18,9 +18,9 @@ constexpr std::string_view kRingDown[] = {"f_0", "f_d", "alpha", "Q", "L_s", "R_
 constexpr std::string_view kRamp[] = {"L_0", "I_sat_10", "I_sat_20", "I_sat_30", "I_sat_10_secant", "I_sat_20_secant",
                                       "I_sat_30_secant", "R_dc", "E_max", "W_loop"};
 constexpr std::string_view kSine[] = {"f", "Z", "phi", "R_s", "X_s", "L_s", "R_p", "L_p", "Q", "D", "P", "P_winding",
-                                      "L_0", "I_sat_10", "I_sat_20", "I_sat_30"};
-constexpr std::string_view kSweep[] = {"L", "R_dc", "C_par", "R_par", "R_ac", "f_r", "Z", "phi", "R_s", "X_s", "L_s", "R_p",
-                                       "L_p", "Q", "D"};
+                                      "skew", "I_sat_10", "I_sat_20", "I_sat_30"};
+constexpr std::string_view kSweep[] = {"L", "R_dc", "C_par", "R_par", "R_ac", "f_r", "Z", "phi", "R_s", "L_s", "R_p", "L_p",
+                                       "Q", "D"};
 constexpr std::string_view kCoupling[] = {"L_1", "L_2", "M", "k", "n", "L_leak_1", "L_leak_2"};
 constexpr std::string_view kResistance[] = {"R_dc", "R_dc_20", "T_winding", "T_rise"};
 constexpr std::array kKinds = {Kind{"ringdown", kRingDown}, Kind{"ramp", kRamp},         Kind{"sine", kSine},

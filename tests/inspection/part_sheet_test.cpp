@@ -3,6 +3,15 @@
 #include <gmock/gmock.h>
 #include <gtest/gtest.h>
 
+#include <fstream>
+#include <map>
+#include <sstream>
+
+#include "analysis/symbols.h"
+#include "base/number_text.h"
+#include "inspection/sampling_tables.h"
+#include "tests/support/paths.h"
+
 namespace coilassay {
 namespace {
 
@@ -182,6 +191,33 @@ TEST(PartSheet, WithoutAnyLimitIsNone) {
   EXPECT_THAT(sheet.error().finding, HasSubstr("no [[limit]]"));
   EXPECT_FALSE(parse_part_sheet("[[limit]]\nquantity = \"L_s\"\nmin = \"1 uH\"\n", "p.toml"));
   EXPECT_FALSE(parse_part_sheet("[part]\nname = \"p\"\n[[limit]]\nquantity = \"L_s\"\n", "p.toml"));
+}
+
+// What the page of formats says of each kind of test is what the sheet takes.
+TEST(PartSheet, TheDocumentedQuantitiesOfEachKindAreThoseItTakes) {
+  std::ifstream page(test::project_file("docs/formats.md"));
+  std::stringstream whole;
+  whole << page.rdbuf();
+  const std::string text = whole.str();
+  const std::size_t begin = text.find("What each kind of test gives"), end = text.find("An\ninstrument's own reading", begin);
+  ASSERT_NE(end, std::string::npos);
+  std::map<std::string, std::string> documented;   // words between one kind and the next
+  std::string kind;
+  std::stringstream words(text.substr(begin, end - begin));
+  for (std::string word; words >> word;) {
+    for (const char* each : {"ringdown", "ramp", "sine", "sweep", "coupling", "resistance"}) {
+      if (word == each) kind = each;
+    }
+    std::erase_if(word, [](char c) { return c == '`' || c == ',' || c == ';' || c == '(' || c == ')' || c == '.'; });
+    documented[kind] += word + " ";
+  }
+  for (const char* each : {"ringdown", "ramp", "sine", "sweep", "coupling", "resistance"}) {
+    for (const Symbol& symbol : symbols()) {
+      const bool said = (" " + documented[each]).find(" " + std::string(symbol.symbol) + " ") != std::string::npos;
+      EXPECT_EQ(said, test_gives(each, symbol.symbol)) << each << " " << symbol.symbol;
+    }
+  }
+  for (const double aql : attribute_aqls()) EXPECT_THAT(text, HasSubstr(" " + to_shortest(aql)));
 }
 
 TEST(PartSheet, KeysOfOneKindOfTestAreUnknownToAnother) {
