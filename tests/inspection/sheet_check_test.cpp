@@ -58,7 +58,7 @@ TEST(SheetCheck, FindsWhatCannotWork) {
            Row{"[[limit]]\nquantity = \"L_s\"\nmin = \"40 uH\"\n[test.ringdown]\nbench = \"not-there.toml\"\n", true, "is not there"},
            Row{"[[limit]]\nquantity = \"L_s\"\nmin = \"40 uH\"\n[sampling]\nscheme = \"variables\"\nquantity = \"Q\"\n", true, "which has no limit"},
            Row{"[[limit]]\nquantity = \"L_s\"\nmin = \"40 uH\"\nmax = \"41 uH\"\n[gauge]\nL_s = \"1 uH\"\n", true, "no value of L_s that can pass"},
-           Row{"[[limit]]\nquantity = \"L_s\"\nmin = \"40 uH\"\n[test.sine]\n[check_standard]\nserial = \"C\"\nquantity = \"skew\"\n", true, "of the check standard"},
+           Row{"[[limit]]\nquantity = \"L_s\"\nmin = \"40 uH\"\n[test.sine]\n[check_standard]\nserial = \"C\"\nquantity = \"k\"\ntest = \"ramp\"\n", true, "of the check standard"},
        }) {
     const SheetCheck check = checked(row.sheet);
     bool found = false;
