@@ -60,10 +60,12 @@ void write_units(TextPage& page, const LotRecord& lot) {
     std::string first = std::string(kTextIndent) + padded(page.words(shown(unit.verdict.serial, 40)), widest + 2) +
                         padded(verdict_in_words(unit.verdict.verdict), 16);
     const std::string further(display_width(first), ' ');
-    for (const std::string& each : reasons(unit.verdict, script)) {
+    const auto whys = reasons(unit.verdict, script);
+    for (const std::string& each : whys) {
       page.paragraph(each, first);
       first = further;
     }
+    if (whys.empty()) page.paragraph("its values pass; a correction in the ledger says otherwise", first);
     if (!unit.in_sample) page.paragraph("measured besides the sample", first);
   }
   if (units.size() > shown_units) page.paragraph(fmt::format("and {} more with --verbose", units.size() - shown_units));

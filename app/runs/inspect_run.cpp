@@ -6,6 +6,7 @@
 #include <set>
 
 #include "app/runs/check_run.h"
+#include "app/runs/lot_close.h"
 #include "app/runs/lot_folder.h"
 #include "app/runs/lot_past.h"
 #include "app/runs/unit_tests.h"
@@ -42,7 +43,6 @@ class Inspection {
   Result<void> refuse_captures_of_others(InspectedUnit& unit, const std::string& serial) const;
   Result<std::vector<std::optional<std::int64_t>>> store(const std::vector<std::size_t>& fresh);
   void keep(std::size_t index, std::optional<std::int64_t> entry);
-  Result<void> decide();
   void tell_of_tests();
   void tell_cautions(const std::vector<Caution>& cautions);
   void keep_figures();
@@ -333,42 +333,6 @@ Result<void> Inspection::measure_all() {
   return {};
 }
 
-Result<void> Inspection::decide() {
-  const std::vector<std::size_t> sample = choose_sample(*record_.plan, record_.units.size());
-  for (LotUnitRecord& unit : record_.units) unit.in_sample = false;
-  std::vector<UnitVerdict> verdicts, all;
-  LotOutcome outcome;
-  for (const std::size_t i : sample) {
-    record_.units[i].in_sample = true;
-    verdicts.push_back(record_.units[i].verdict);
-    if (record_.units[i].entry) outcome.units.push_back(*record_.units[i].entry);
-  }
-  for (const LotUnitRecord& unit : record_.units) all.push_back(unit.verdict);
-  record_.decision = decide_lot(record_.sheet, *record_.plan, verdicts);
-  record_.statistics = lot_values(all);
-  std::vector<LotHistory> with_this = history_;
-  if (record_.decision.decision != LotResult::undecided) {
-    with_this.push_back({record_.when, record_.decision.decision, record_.plan->severity, record_.decision.between_accept_and_reject});
-  }
-  record_.next = next_severity(record_.sheet.sampling, with_this);
-  if (!ledger_) return {};
-
-  outcome.plan = *record_.plan;
-  outcome.decision = record_.decision;
-  outcome.next = *record_.next;
-  outcome.lot_size = record_.lot_size;
-  const Result<StoredDecision> stored = store_decision(*ledger_, outcome, setting_);
-  if (!stored) return failure(stored);
-  const Result<LedgerHead> head = ledger_->head();
-  if (!head) return failure(head);
-  LotLedger place{*job_.ledger, 0, stored->entry.id, head->hash, stored->entry.id, stored->replaces};
-  for (const LotUnitRecord& unit : record_.units) {
-    if (unit.entry && (place.first == 0 || *unit.entry < place.first)) place.first = *unit.entry;
-  }
-  record_.ledger = std::move(place);
-  return {};
-}
-
 /// The tests that a unit's verdict rests on where it does not pass.
 std::vector<PreparedTest> telling_tests(const std::vector<PreparedTest>& tests, const UnitVerdict& verdict) {
   std::vector<PreparedTest> telling;
@@ -422,7 +386,9 @@ Result<LotRecord> Inspection::run() {
     return std::move(record_);
   }
   if (auto measured = measure_all(); !measured) return failure(measured);
-  if (auto decided = decide(); !decided) return failure(decided);
+  if (auto closed = close_lot(record_, history_, ledger_ ? &*ledger_ : nullptr, job_.ledger.value_or(""), setting_); !closed) {
+    return failure(closed);
+  }
   if (job_.for_page) keep_figures();
   return std::move(record_);
 }

@@ -4,7 +4,7 @@
 
 namespace coilassay {
 
-Result<void> close_lot(LotRecord& record, const std::vector<LotHistory>& history, Ledger& ledger, const std::string& ledger_path,
+Result<void> close_lot(LotRecord& record, const std::vector<LotHistory>& history, Ledger* ledger, const std::string& ledger_path,
                        const InspectionSetting& setting) {
   assert(record.plan);
   std::vector<UnitVerdict> verdicts, all;
@@ -25,13 +25,14 @@ Result<void> close_lot(LotRecord& record, const std::vector<LotHistory>& history
     with_this.push_back({record.when, record.decision.decision, record.plan->severity, record.decision.between_accept_and_reject});
   }
   record.next = next_severity(record.sheet.sampling, with_this);
+  if (ledger == nullptr) return {};
   outcome.plan = *record.plan;
   outcome.decision = record.decision;
   outcome.next = *record.next;
   outcome.lot_size = record.lot_size;
-  const Result<StoredDecision> stored = store_decision(ledger, outcome, setting);
+  const Result<StoredDecision> stored = store_decision(*ledger, outcome, setting);
   if (!stored) return failure(stored);
-  const Result<LedgerHead> head = ledger.head();
+  const Result<LedgerHead> head = ledger->head();
   if (!head) return failure(head);
   LotLedger place{ledger_path, 0, stored->entry.id, head->hash, stored->entry.id, stored->replaces};
   for (const LotUnitRecord& unit : record.units) {

@@ -9,8 +9,9 @@
 
 namespace coilassay {
 
-/// Decides `record` from its units by its plan and stores the decision. Pre: the record has a plan.
-Result<void> close_lot(LotRecord& record, const std::vector<LotHistory>& history, Ledger& ledger, const std::string& ledger_path,
+/// Decides `record` from its units by its plan; with a ledger (null: nothing is recorded) the decision is stored. Pre: the
+/// record has a plan.
+Result<void> close_lot(LotRecord& record, const std::vector<LotHistory>& history, Ledger* ledger, const std::string& ledger_path,
                        const InspectionSetting& setting);
 
 }  // namespace coilassay

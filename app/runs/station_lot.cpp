@@ -222,7 +222,7 @@ Result<LotRecord> StationLot::close(const std::string& instrument, const std::ve
   auto plan = plan_for(sheet_.sampling, record.lot_size, severity_.severity);
   if (!plan) return failure(plan);
   record.plan = std::move(*plan);
-  if (auto closed = close_lot(record, history_, ledger_, ledger_path_, setting(now, instrument)); !closed) return failure(closed);
+  if (auto closed = close_lot(record, history_, &ledger_, ledger_path_, setting(now, instrument)); !closed) return failure(closed);
   return record;
 }
 

@@ -5,7 +5,9 @@
 #include "acquire/instrument/block.h"
 #include "acquire/instrument/byte_log.h"
 #include "acquire/instrument/reply_values.h"
+#include "acquire/instrument/row_file.h"
 #include "tests/support/instrument_bench.h"
+#include "tests/support/program.h"
 
 namespace coilassay {
 namespace {
@@ -129,6 +131,33 @@ TEST(ByteLog, EscapesReadBackToTheSameBytes) {
   EXPECT_TRUE(fine);
   unescaped_bytes("\\q", fine);
   EXPECT_FALSE(fine);
+}
+
+TEST(ByteLog, BeginsANewFileWhenItIsFullAndKeepsOneOlder) {
+  const test::TemporaryFolder folder;
+  const std::string path = folder / "talk.trace";
+  const auto log = ByteLog::begin(path, "a trace", 2000);
+  ASSERT_TRUE(log);
+  for (int i = 0; i < 200; ++i) (*log)->sent("question " + std::to_string(i) + "\n");
+  const std::string now = test::contents_of(path), older = test::contents_of(path + ".1");
+  EXPECT_LE(now.size(), 2000u);
+  EXPECT_LE(older.size(), 2000u);
+  EXPECT_THAT(now, HasSubstr("question 199\\n"));
+  EXPECT_THAT(now, testing::StartsWith("# a trace"));
+  EXPECT_THAT(older, testing::Not(HasSubstr("question 199")));
+  EXPECT_FALSE(ByteLog::begin("/no/such/folder/x", "a trace"));
+}
+
+TEST(RowFile, IsNewAndHoldsWholeRows) {
+  const test::TemporaryFolder folder;
+  auto file = RowFile::create(folder / "run.csv");
+  ASSERT_TRUE(file);
+  ASSERT_TRUE(file->append("1,2\n"));
+  EXPECT_EQ(test::contents_of(folder / "run.csv"), "1,2\n") << "there without being closed";
+  const auto again = RowFile::create(folder / "run.csv");
+  ASSERT_FALSE(again);
+  EXPECT_THAT(again.error().finding, HasSubstr("not overwritten"));
+  EXPECT_FALSE(RowFile::create("/no/such/folder/run.csv"));
 }
 
 }  // namespace

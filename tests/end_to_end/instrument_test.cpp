@@ -1,6 +1,8 @@
 // Instruments as the program's users meet them: simulate instrument, acquire, acquire --try.
 #include <gmock/gmock.h>
 #include <gtest/gtest.h>
+#include <sys/wait.h>
+#include <unistd.h>
 
 #include <csignal>
 #include <filesystem>
@@ -218,6 +220,31 @@ TEST(AcquireProgram, AnInstrumentThatPrintsByItselfIsRead) {
   const ProgramEnd end = run_program_process({"acquire", profile, "-o", file, "--count", "4"});
   ASSERT_EQ(end.exit_code, 0) << end.error;
   EXPECT_THAT(contents_of(file), HasSubstr("4.7e-05,0.35"));
+}
+
+// The whole program on a serial line: socat makes a pseudo-terminal of the stand-in's TCP port.
+TEST(AcquireProgram, ReadsASerialPort) {
+  Meter meter;
+  const std::string port = meter.folder / "serial";
+  const std::string end_a = "pty,raw,echo=0,link=" + port, end_b = "tcp:localhost:" + meter.simulated.port();
+  const pid_t socat = fork();
+  if (socat == 0) {
+    execlp("socat", "socat", end_a.c_str(), end_b.c_str(), static_cast<char*>(nullptr));
+    _exit(127);
+  }
+  for (int i = 0; i < 500 && !std::filesystem::exists(port); ++i) std::this_thread::sleep_for(std::chrono::milliseconds(10));
+  const std::string profile = meter.folder.file("serial.toml", with(with(contents_of(meter.profile), "kind = \"tcp\"", "kind = \"serial\"\nbaud = 115200"),
+                                                                    "localhost:" + meter.simulated.port(), port));
+  ProgramStart start;
+  start.arguments = {"acquire", profile, "-o", meter.folder / "run.csv", "--count", "3"};
+  const std::string shim = std::filesystem::path(program()).parent_path().string() + "/libpty_shim.so";
+  ASSERT_TRUE(std::filesystem::exists(shim));
+  start.environment = {"LD_PRELOAD=" + std::filesystem::absolute(shim).string(), "ASAN_OPTIONS=verify_asan_link_order=0"};
+  const ProgramEnd end = run_program_process(start);
+  kill(socat, SIGTERM);
+  waitpid(socat, nullptr, 0);
+  ASSERT_EQ(end.exit_code, 0) << end.error;
+  EXPECT_THAT(contents_of(meter.folder / "run.csv"), HasSubstr("4.7e-05,0.35"));
 }
 
 TEST(SimulateInstrumentProgram, ListensOnThisMachineOnly) {

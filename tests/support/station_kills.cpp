@@ -39,26 +39,28 @@ StationKills kill_station(int kills, std::uint64_t seed) {
   while (result.kills < kills) {
     BackgroundProgram station({"station", sheet, "--instrument", profile, "--lot", "7", "--ledger", ledger, "--follow", "--quiet"});
     state = state * 6364136223846793005u + 1442695040888963407u;
-    // From before its first unit to well among them.
-    const auto patience = std::chrono::microseconds(5'000 + (state >> 33) % 120'000);
-    std::thread killer([&] {
-      std::this_thread::sleep_for(patience);
-      station.send(SIGKILL);
-    });
+    // After so many verdicts, and then a little later, in the middle of whatever it does next; with none, from the start on.
+    const std::size_t verdicts = (state >> 60) & 7;
+    const auto later = std::chrono::microseconds((state >> 33) % (verdicts == 0 ? 60'000 : 12'000));
     // A scanner types ahead; what was not seen is scanned again by the next one.
     std::string typed;
     const int first = serial;
     for (int i = 0; i < 60; ++i) typed += std::to_string(first + i) + "\n";
     station.say(typed);
     int next = first;
-    while (const auto line = station.line(std::chrono::seconds(5))) {
-      const Json unit = Json::parse(*line, nullptr, false);
-      if (unit.is_discarded() || unit.value("schema", "") != "coilassay.unit/1") continue;  // a line the kill cut is not shown
+    const auto take = [&](const std::string& line) {
+      const Json unit = Json::parse(line, nullptr, false);
+      if (unit.is_discarded() || unit.value("schema", "") != "coilassay.unit/1") return;  // a line the kill cut is not shown
       const std::string name = unit["serial"];
       if (!shown.emplace(name, unit["verdict"]).second) ++result.shown_twice;
       next = std::stoi(name) + 1;
+    };
+    for (std::size_t i = 0; i < verdicts; ++i) {
+      if (const auto line = station.line(std::chrono::seconds(30))) take(*line);
     }
-    killer.join();
+    std::this_thread::sleep_for(later);
+    station.send(SIGKILL);
+    while (const auto line = station.line(std::chrono::seconds(30))) take(*line);
     station.exit_code();
     ++result.kills;
     serial = next;

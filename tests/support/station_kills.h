@@ -15,8 +15,8 @@ struct StationKills {
   bool chain_holds = false;
 };
 
-/// Starts `station --follow` on one lot, types serials as fast as verdicts come, kills it after a random time, and starts it
-/// again with the serials whose verdicts were not seen, until it was killed so often.
+/// Starts `station --follow` on one lot, types serials as fast as verdicts come, kills it after some of them and a random
+/// time, and starts it again with the serials whose verdicts were not seen, until it was killed so often.
 StationKills kill_station(int kills, std::uint64_t seed);
 
 }  // namespace coilassay::test
