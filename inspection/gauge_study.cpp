@@ -7,6 +7,7 @@
 #include <cassert>
 #include <cmath>
 #include <limits>
+#include <map>
 #include <numbers>
 
 #include "base/outside_text.h"
@@ -68,10 +69,16 @@ std::pair<double, double> middle_95(std::vector<double>& draws) {
   return {low, at(0.975)};
 }
 
-std::vector<std::string> names_of(std::span<const GaugeReading> readings, std::string GaugeReading::*member) {
-  std::vector<std::string> names;
+/// Names in the order of their first appearance, and where each stands.
+struct Names {
+  std::vector<std::string> list;
+  std::map<std::string, std::size_t> at;
+};
+
+Names names_of(std::span<const GaugeReading> readings, std::string GaugeReading::*member) {
+  Names names;
   for (const GaugeReading& reading : readings) {
-    if (std::find(names.begin(), names.end(), reading.*member) == names.end()) names.push_back(reading.*member);
+    if (names.at.try_emplace(reading.*member, names.list.size()).second) names.list.push_back(reading.*member);
   }
   return names;
 }
@@ -82,9 +89,11 @@ std::string cell_in_words(const std::string& part, const std::string& oper, cons
 
 /// Readings into the table of the study; every cell once.
 Result<void> arrange(std::span<const GaugeReading> readings, GaugeStudy& study) {
-  study.parts = names_of(readings, &GaugeReading::part);
-  study.operators = names_of(readings, &GaugeReading::operator_name);
-  study.trials = names_of(readings, &GaugeReading::trial);
+  const Names parts = names_of(readings, &GaugeReading::part), operators = names_of(readings, &GaugeReading::operator_name),
+              trials = names_of(readings, &GaugeReading::trial);
+  study.parts = parts.list;
+  study.operators = operators.list;
+  study.trials = trials.list;
   const std::size_t o = study.operators.size(), r = study.trials.size();
   if (study.parts.size() < 2) {
     return failure(Problem::too_few_samples, "gauge study", "there is only one part: how parts differ cannot be told",
@@ -94,17 +103,21 @@ Result<void> arrange(std::span<const GaugeReading> readings, GaugeStudy& study) 
     return failure(Problem::too_few_samples, "gauge study", "each part was read once: how readings repeat cannot be told",
                    "let every operator place and read each part at least twice");
   }
-  const auto index = [](const std::vector<std::string>& names, const std::string& name) {
-    return static_cast<std::size_t>(std::find(names.begin(), names.end(), name) - names.begin());
-  };
+  // Names that hardly repeat (a trial numbered through, say) would ask for a table of all their combinations.
+  const double cells = static_cast<double>(study.parts.size()) * static_cast<double>(o) * static_cast<double>(r);
+  if (cells > 20 * static_cast<double>(readings.size())) {
+    return failure(Problem::damaged, "gauge study",
+                   fmt::format("{} parts, {} operators and {} trials are named, and there are only {} readings", study.parts.size(), o, r,
+                               readings.size()),
+                   "trials count anew for every part and operator: 1, 2, 3");
+  }
   study.values.assign(study.parts.size() * o * r, std::numeric_limits<double>::quiet_NaN());
   for (const GaugeReading& reading : readings) {
     const std::string words = cell_in_words(reading.part, reading.operator_name, reading.trial);
     if (!std::isfinite(reading.value)) {
       return failure(Problem::damaged, "gauge study", words + " has no value", "read it again; a crossed study needs every reading");
     }
-    double& cell = study.values[(index(study.parts, reading.part) * o + index(study.operators, reading.operator_name)) * r +
-                                index(study.trials, reading.trial)];
+    double& cell = study.values[(parts.at.at(reading.part) * o + operators.at.at(reading.operator_name)) * r + trials.at.at(reading.trial)];
     if (!std::isnan(cell)) return failure(Problem::damaged, "gauge study", words + " is there twice", "leave one of them out");
     cell = reading.value;
   }

@@ -110,6 +110,9 @@ TEST(GaugeStudy, IsRefusedWhereItIsNotCrossed) {
   EXPECT_THAT(refused(none), HasSubstr("has no value"));
   EXPECT_THAT(refused(simulated({}, 1, 2, 2, 1)), HasSubstr("only one part"));
   EXPECT_THAT(refused(simulated({}, 3, 2, 1, 1)), HasSubstr("read once"));
+  std::vector<GaugeReading> through;   // trials numbered through: a million combinations of a hundred readings
+  for (int i = 0; i < 100; ++i) through.push_back({std::to_string(i), std::to_string(i), std::to_string(i), 1.0 * i});
+  EXPECT_THAT(refused(through), HasSubstr("only 100 readings"));
   auto equal = readings;
   for (auto& reading : equal) reading.value = reading.part == "p0" ? 1 : 2;
   EXPECT_THAT(refused(equal), HasSubstr("last digit"));
