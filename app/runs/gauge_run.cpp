@@ -29,9 +29,8 @@ struct Question {
 
 /// The symbol a kind of test is made for.
 std::string usual_quantity(std::string_view kind) {
-  for (const char* symbol : {"L_s", "L_0", "R_dc"}) {
-    if (test_gives(kind, symbol) && kind != "reading") return symbol;
-  }
+  // A ring-down and a sine lead with what they see (f_0, Z); what is studied is the coil.
+  if (kind == "ringdown" || kind == "sine") return "L_s";
   return std::string(leading_symbol(kind));
 }
 
@@ -164,7 +163,8 @@ Result<void> read_captures_of(const GaugeJob& job, Question& question, GaugeReco
   for (std::size_t i = 0; i < captures.size(); ++i) {
     if (!readings[i].value) {
       return failure(Problem::damaged, captures[i].path, "this reading has no " + question.limit.quantity + ": " + readings[i].why_not,
-                     "a crossed study needs every reading: capture it again, or leave that part out");
+                     "measure it alone to see more (coilassay " + how.plan.kind + "), then capture it again or leave that part out: a crossed study needs every "
+                     "reading");
     }
     record.readings.push_back({captures[i].part, captures[i].operator_name, captures[i].trial, *readings[i].value});
     record.files.push_back({captures[i].path, readings[i].sha256});
