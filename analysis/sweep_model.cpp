@@ -124,8 +124,8 @@ void fit_parts(SweepModel& model, const SweepData& data) {
 }
 
 /// The circuit with one element at the upper end of its interval, the others following as their covariance has it.
-Circuit at_limit(const JointFit& joint, CircuitParameter element) {
-  const Eigen::MatrixXd all = joint.covariance + joint.shifts * joint.shifts.transpose();
+Circuit at_limit(const JointFit& joint, CircuitParameter element, double inflation) {
+  const Eigen::MatrixXd all = inflation * joint.covariance + joint.shifts * joint.shifts.transpose();
   const auto at = std::find(joint.order.begin(), joint.order.end(), element) - joint.order.begin();
   Circuit circuit = joint.circuit;
   for (std::size_t k = 0; k < joint.order.size(); ++k) {
@@ -146,14 +146,16 @@ void look_for_hidden_losses(SweepModel& model) {
     if (!fit) return;
     if (model.jointly) {
       const JointFit joint = fit_jointly({model.points, model.fit.used, model.errors}, fit->circuit);
-      if (joint.settled) model.hidden.push_back(at_limit(joint, loss));
+      if (joint.settled) model.hidden.push_back({loss, at_limit(joint, loss, model.inflation)});
       return;
     }
     if (const CircuitLimit* limit = fit->limit_of(loss)) {
-      model.hidden.push_back(limit->circuit);
+      model.hidden.push_back({loss, limit->circuit});
     } else if (fit->seen(loss)) {
       // Seen, yet not worth its place: the criterion asks for more than two standard uncertainties.
-      model.hidden.push_back(fit->circuit);
+      Circuit circuit = fit->circuit;
+      circuit[loss] += kNormalQuantile * fit->standard_uncertainty(loss);
+      model.hidden.push_back({loss, circuit});
     }
   };
   if (!family.skin && !family.relaxation) {
@@ -351,7 +353,7 @@ Result<SweepModel> fit_sweep(const SweepData& data, const SweepRequest& request)
     }
     if (Result<KramersKronig> test = test_kramers_kronig(points)) model.causality = std::move(*test);
   }
-  if (!request.at_hz.empty()) look_for_hidden_losses(model);
+  look_for_hidden_losses(model);
   if (!model.jointly) {
     model.shifts = Eigen::MatrixXd::Zero(static_cast<Eigen::Index>(model.parameters()), static_cast<Eigen::Index>(model.errors.size()));
     for (std::size_t e = 0; e < model.errors.size(); ++e) {

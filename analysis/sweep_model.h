@@ -30,7 +30,11 @@ struct SweepModel {
   struct Drift {                                // what the circuit becomes on parts of the span
     std::vector<CircuitFit> parts;
   } drift;                                      // only with misfit
-  std::vector<Circuit> hidden;                  // each with one more loss, as large as the data would let pass unseen
+  struct Hidden {
+    CircuitParameter loss;
+    Circuit circuit;                            // with that loss as large as the data would let pass unseen
+  };
+  std::vector<Hidden> hidden;                   // losses the circuit does not have
   std::vector<ImpedanceErrorTerm> errors;       // common ones, the frequency's among them
   Eigen::MatrixXd shifts;                       // of the parameters (rows) by one standard uncertainty of each error (columns)
 

@@ -57,8 +57,8 @@ std::vector<ExtraTerm> hidden_terms(const SweepModel& model, double f, const std
   std::vector<ExtraTerm> terms;
   for (std::size_t k = 0; k < outputs.size(); ++k) {
     double most = 0;
-    for (const Circuit& hidden : model.hidden) {
-      apparent_values(impedance(hidden, f), f, other);
+    for (const SweepModel::Hidden& hidden : model.hidden) {
+      apparent_values(impedance(hidden.circuit, f), f, other);
       const double moved = std::fabs(value(other, k) - value(best, k));
       most = std::isfinite(moved) ? std::fmax(most, moved) : most;
     }

@@ -65,6 +65,17 @@ void add_limit(Measurement& result, const SweepModel& model, const Item& item, c
   result.bounds.push_back(std::move(bound));
 }
 
+/// A loss the circuit does not have, by how much of it could be there unseen.
+void add_hidden(Measurement& result, const SweepModel::Hidden& hidden) {
+  const double value = hidden.circuit[hidden.loss];
+  if (!(value > 0) || !std::isfinite(value)) return;
+  if (hidden.loss == P::parallel_conductance) {
+    result.bounds.push_back({"R_par", Unit::ohm, 1 / value, std::nullopt, 0.95});
+  } else {
+    result.bounds.push_back({"R_ac", Unit::ohm, std::nullopt, value, 0.95});
+  }
+}
+
 /// A value whose interval reaches zero becomes a limit.
 void withhold_unresolved(Measurement& result) {
   for (auto e = result.estimates.begin(); e != result.estimates.end();) {
@@ -175,6 +186,9 @@ void add_circuit(Measurement& result, const SweepModel& model, const SweepData& 
   }
   if (!f_r) add_resonance_bound(result, model, data);
   withhold_unresolved(result);
+  // Of a circuit that does not fit, residuals say nothing about what else might be there.
+  if (model.misfit) return;
+  for (const SweepModel::Hidden& each : model.hidden) add_hidden(result, each);
 }
 
 ModelSummary model_of(const SweepModel& model, const SweepData& data) {

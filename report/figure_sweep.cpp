@@ -118,7 +118,7 @@ FigurePanel quality_panel(const Traces& traces) {
 }
 
 FigurePanel causality_panel(const Traces& traces) {
-  FigurePanel panel = traces.panel("not causal (%)", Unit::one, 0.9);
+  FigurePanel panel = traces.panel("causality (%)", Unit::one, 0.9);
   panel.x_rules.clear();
   panel.rules_label.clear();
   traces.add(panel, Mark::dots, "size", "trace_causality", "real");

@@ -130,7 +130,13 @@ std::vector<ValueText> values_of(const Measurement& m, Script script) {
   });
   std::vector<ValueText> values;
   for (const Estimate* each : sorted) values.push_back(value_text(*each, script));
-  for (const Bound& each : m.bounds) values.push_back(value_text(each, script));
+  for (const Bound& each : m.bounds) {
+    values.push_back(value_text(each, script));
+    // As for a value: a law's coefficient holds at one frequency.
+    if (each.symbol != "R_ac" || !m.model) continue;
+    const auto at = m.model->parameters.find("f_ref");
+    if (at != m.model->parameters.end()) values.back().words += " at " + setting_in_words(at->second.value, Unit::hertz, script);
+  }
   return values;
 }
 

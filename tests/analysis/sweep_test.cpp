@@ -146,6 +146,22 @@ TEST(Sweep, AResistanceThatScatteringCannotShowIsALimit) {
   EXPECT_LT(*bound(m, "R_dc")->at_most, 1);
 }
 
+TEST(Sweep, LossesThatAreNotThereAreLimits) {
+  int held = 0;
+  for (std::uint64_t seed = 1; seed <= 20; ++seed) {
+    const CoilSweepBench bench{.skin_ohm = 0.002, .parallel_resistance_ohm = 100e6, .noise_ratio = 1e-3, .seed = seed};
+    const Measurement m = measured(simulated(bench), exact());
+    const Bound* skin = bound(m, "R_ac");
+    const Bound* loss = bound(m, "R_par");
+    if (skin == nullptr || loss == nullptr) continue;   // one noise in some dozen looks like a loss
+    const double at_reference = 0.002 * std::sqrt(m.model->parameters.at("f_ref").value / 1e6);
+    held += *skin->at_most > at_reference && *loss->at_least < 100e6;
+    EXPECT_LT(*skin->at_most, 0.1);
+    EXPECT_GT(*loss->at_least, 1e6);
+  }
+  EXPECT_GE(held, 15);
+}
+
 TEST(Sweep, SelfResonanceBeyondTheSpanIsALimit) {
   CoilSweepBench bench = kCoil;
   bench.stop_hz = 2e6;
