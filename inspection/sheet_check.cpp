@@ -83,6 +83,17 @@ void explain_tests(const PartSheet& sheet, std::vector<std::string>& out) {
   }
 }
 
+constexpr std::uint64_t kMostPositionsListed = 500;
+
+/// Which units to take: nobody's hand draws at random.
+std::string positions_in_words(const SamplingPlan& plan) {
+  std::string list;
+  for (const std::uint64_t position : draw_positions(plan.lot_size, plan.n, plan.draw_seed)) {
+    list += (list.empty() ? "" : ", ") + std::to_string(position);
+  }
+  return fmt::format("Units to draw, counted from 1 as they lie, by seed {}: {}.", plan.draw_seed, list);
+}
+
 void explain_sampling(const PartSheet& sheet, std::optional<std::uint64_t> lot_size, SheetCheck& check) {
   const std::vector<std::uint64_t> lots = lot_size ? std::vector<std::uint64_t>{*lot_size} : std::vector<std::uint64_t>{50, 500, 5000};
   for (const std::uint64_t lot : lots) {
@@ -96,6 +107,7 @@ void explain_sampling(const PartSheet& sheet, std::optional<std::uint64_t> lot_s
       for (const double bad : {0.01, 0.05, 0.10}) words += fmt::format(" {}{}", bad == 0.01 ? "With this, " : "", passes_in_words(*plan, bad)) + (bad == 0.10 ? "." : ";");
     }
     check.sentences.push_back(words);
+    if (lot_size && !plan->whole_lot && plan->n <= kMostPositionsListed) check.sentences.push_back(positions_in_words(*plan));
     if (plan->scheme == SamplingScheme::all) return;  // the same for every lot
   }
   if (sheet.sampling.scheme == SamplingScheme::variables) return;

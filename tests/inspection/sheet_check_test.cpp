@@ -76,6 +76,14 @@ TEST(SheetCheck, FindsWhatCannotWork) {
 
 // Both limits 1500 +- 0.2, process deviation 0.12, u 0.04, simple rule: consumer's risk 1.89 %, producer's 3.72 %, 9.56 %
 // nonconforming (constructed, computed with scipy by quadrature; JCGM 106, 9.5).
+TEST(SheetCheck, NamesTheUnitsToDrawFromALotOfThisSize) {
+  const std::string sheet = "[[limit]]\nquantity = \"L_s\"\nmin = \"40 uH\"\n[sampling]\nscheme = \"attributes\"\naql = 4.0\nlevel = \"S-2\"\nseed = 9\n";
+  std::string drawn;
+  for (const std::uint64_t position : draw_positions(500, 3, 9)) drawn += (drawn.empty() ? "" : ", ") + std::to_string(position);
+  EXPECT_THAT(all_of(checked(sheet)), HasSubstr("by seed 9: " + drawn + "."));
+  EXPECT_THAT(all_of(check_sheet(sheet_of(std::string(kHead) + sheet), std::nullopt)), testing::Not(HasSubstr("Units to draw")));
+}
+
 TEST(SheetCheck, SaysWhatTheRuleDoesToAStatedProcess) {
   const std::string limits = "[[limit]]\nquantity = \"Q\"\nmin = 1499.8\nmax = 1500.2\n[process.Q]\nmean = 1500\ndeviation = 0.12\nuncertainty = 0.04\n";
   EXPECT_THAT(all_of(checked(limits + "[decision]\nrule = \"simple\"\n")),
