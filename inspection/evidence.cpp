@@ -66,10 +66,10 @@ bool near(double is, double stated, const ConditionTolerance& tolerance) {
 std::string misfit(std::string_view what, const std::optional<double>& stated, const std::optional<double>& is,
                    const ConditionTolerance& tolerance, Unit unit) {
   if (!stated) return {};
-  if (!is) return fmt::format("the {} is not known, stated {}", what, to_text(*stated, unit));
+  if (!is) return fmt::format("the {} is not known, stated {}", what, stated_in_words(*stated, unit));
   if (near(*is, *stated, tolerance)) return {};
-  const std::string allowed = tolerance.relative ? percent_in_words(tolerance.value) : to_text(tolerance.value, unit == Unit::degree_celsius ? Unit::kelvin : unit);
-  return fmt::format("{} {}, stated {} within {}", what, to_text(*is, unit), to_text(*stated, unit), allowed);
+  const std::string allowed = tolerance.relative ? percent_in_words(tolerance.value) : stated_in_words(tolerance.value, unit == Unit::degree_celsius ? Unit::kelvin : unit);
+  return fmt::format("{} {}, stated {} within {}", what, to_text(*is, unit), stated_in_words(*stated, unit), allowed);
 }
 
 /// The temperature a quantity refers to by its definition.

@@ -26,7 +26,7 @@ std::string words_of(const std::string& quantity) {
 }
 
 std::string tolerance_in_words(std::string_view what, const ConditionTolerance& tolerance, Unit unit) {
-  return fmt::format("{} {}{}", what, tolerance.relative ? percent_in_words(tolerance.value) : to_text(tolerance.value, unit),
+  return fmt::format("{} {}{}", what, tolerance.relative ? percent_in_words(tolerance.value) : stated_in_words(tolerance.value, unit),
                      tolerance.stated ? "" : " (not stated: this is taken)");
 }
 
@@ -136,7 +136,7 @@ void explain_processes(const PartSheet& sheet, SheetCheck& check) {
     const GlobalRisks risks = global_risks([&, &p = process](double x) { return normal_density(x, p.mean, p.deviation); }, process.mean - reach,
                                            process.mean + reach, process.uncertainty, limit->min, limit->max, moved(limit->min, inside),
                                            moved(limit->max, -inside));
-    const auto text = [&](double v) { return to_text(v, limit->unit); };
+    const auto text = [&](double v) { return stated_in_words(v, limit->unit); };
     const auto share = [](double v) { return fmt::format("{:.3g} %", 100 * v); };
     check.sentences.push_back(fmt::format("A process of {} with mean {} and standard deviation {}, measured with a standard uncertainty of {}: of all units {} do "
                                           "not conform; {} do not conform and pass, {} conform and do not pass.",
@@ -152,13 +152,13 @@ void explain_rest(const PartSheet& sheet, std::vector<std::string>& out) {
   for (const auto& [symbol, sigma] : sheet.gauge_sigma) {
     const Symbol* known = find_symbol(symbol);
     out.push_back(fmt::format("Placing and reading add a standard deviation of {} to {}.",
-                              to_text(sigma, known != nullptr ? known->unit : Unit::one, Script::utf8, 3), symbol));
+                              stated_in_words(sigma, known != nullptr ? known->unit : Unit::one), symbol));
   }
   if (sheet.check_standard) {
     const CheckStandard& c = *sheet.check_standard;
     out.push_back(fmt::format("Check standard {}: {} every {:.4g} h, {}; when it is out or overdue, lots are {}.", shown(c.serial, 60),
                               c.quantity, c.every_s / 3600,
-                              c.centre ? fmt::format("within {} ± 3 x {}", to_text(*c.centre, c.unit), to_text(*c.sigma, c.unit, Script::utf8, 3))
+                              c.centre ? fmt::format("within {} ± 3 x {}", stated_in_words(*c.centre, c.unit), stated_in_words(*c.sigma, c.unit))
                                        : fmt::format("limits from its first {} readings", c.baseline),
                               c.refuse ? "refused" : "marked"));
   }

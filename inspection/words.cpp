@@ -1,6 +1,8 @@
 // Names in files and words for people of everything the room speaks of.
 #include <fmt/format.h>
 
+#include <algorithm>
+
 #include "base/number_text.h"
 #include "inspection/part_sheet.h"
 #include "inspection/readiness.h"
@@ -72,8 +74,18 @@ std::string_view name(CheckState state) {
 
 std::string percent_in_words(double ratio) { return fmt::format("{:.4g} %", 100 * ratio); }
 
+std::string stated_in_words(double value, Unit unit) {
+  std::string text = to_text(value, unit, Script::utf8, 7);
+  const std::size_t point = text.find('.'), end = std::min(text.find(' '), text.size());
+  if (point >= end) return text;
+  std::size_t last = end;
+  while (text[last - 1] == '0') --last;
+  if (text[last - 1] == '.') --last;
+  return text.erase(last, end - last);
+}
+
 std::string limits_in_words(const Limit& limit) {
-  const auto text = [&](double value) { return to_text(value, limit.unit); };
+  const auto text = [&](double value) { return stated_in_words(value, limit.unit); };
   if (limit.min && limit.max) return fmt::format("{} to {}", text(*limit.min), text(*limit.max));
   if (limit.min) return "at least " + text(*limit.min);
   return limit.max ? "at most " + text(*limit.max) : "no limit";
@@ -82,11 +94,11 @@ std::string limits_in_words(const Limit& limit) {
 std::string conditions_in_words(const LimitConditions& at) {
   std::string words;
   const auto add = [&](const std::string& part) { words += (words.empty() ? "at " : ", ") + part; };
-  if (at.frequency_hz) add(to_text(*at.frequency_hz, Unit::hertz));
-  if (at.level_v) add(to_text(*at.level_v, Unit::volt));
-  if (at.level_a) add(to_text(*at.level_a, Unit::ampere));
-  if (at.bias_a) add("bias " + to_text(*at.bias_a, Unit::ampere));
-  if (at.temperature_degc) add(to_text(*at.temperature_degc, Unit::degree_celsius));
+  if (at.frequency_hz) add(stated_in_words(*at.frequency_hz, Unit::hertz));
+  if (at.level_v) add(stated_in_words(*at.level_v, Unit::volt));
+  if (at.level_a) add(stated_in_words(*at.level_a, Unit::ampere));
+  if (at.bias_a) add("bias " + stated_in_words(*at.bias_a, Unit::ampere));
+  if (at.temperature_degc) add(stated_in_words(*at.temperature_degc, Unit::degree_celsius));
   if (!at.definition.empty()) words += (words.empty() ? "by " : ", by ") + at.definition;
   return words;
 }

@@ -149,7 +149,7 @@ TEST(CheckSheet, ExplainsASheetAndNamesContradictions) {
   const LotBench bench;
   const ProgramEnd good = run_program_process({"inspect", "--check-sheet", bench.sheet()});
   EXPECT_EQ(good.exit_code, 0) << good.error;
-  EXPECT_THAT(good.out, AllOf(HasSubstr("37.60 µH to 56.40 µH"), HasSubstr("ringdown"), HasSubstr("guarded")));
+  EXPECT_THAT(good.out, AllOf(HasSubstr("37.6 µH to 56.4 µH"), HasSubstr("ringdown"), HasSubstr("guarded")));
   const ProgramEnd json = run_program_process({"inspect", "--check-sheet", bench.sheet(), "--json", "--lot-size", "500"});
   EXPECT_EQ(schema_trouble(json.out, "sheet-check"), "") << json.out;
   EXPECT_TRUE(nlohmann::json::parse(json.out).at("usable").get<bool>());

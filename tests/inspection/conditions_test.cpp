@@ -39,7 +39,7 @@ TEST(Conditions, EachThatTheLimitNamesMustFitWithinItsTolerance) {
     return c;
   };
   for (const Row& row : {Row{"frequency = \"100 kHz\"", only(&Conditions::frequency_hz, 100.9e3), true, ""},
-                         Row{"frequency = \"100 kHz\"", only(&Conditions::frequency_hz, 101.1e3), false, "frequency 101.1 kHz, stated 100.0 kHz"},
+                         Row{"frequency = \"100 kHz\"", only(&Conditions::frequency_hz, 101.1e3), false, "frequency 101.1 kHz, stated 100 kHz"},
                          Row{"frequency = \"100 kHz\"", {}, false, "frequency is not known"},
                          Row{"level = \"100 mV\"", only(&Conditions::level_v, 0.119), true, ""},
                          Row{"level = \"100 mV\"", only(&Conditions::level_v, 0.125), false, "level"},

@@ -28,7 +28,7 @@ TEST(SheetCheck, ExplainsASheetInPlainWords) {
       "[sampling]\nscheme = \"attributes\"\naql = 1.0\n[check_standard]\nserial = \"CS-1\"\nquantity = \"L_s\"\n");
   EXPECT_TRUE(check.usable());
   const std::string text = all_of(check);
-  for (const char* said : {"drum-47, revision C", "L_s (series inductance): 37.60 µH to 56.40 µH at 100.0 kHz, from sine", "frequency 1 % (not stated: this is taken)",
+  for (const char* said : {"drum-47, revision C", "L_s (series inductance): 37.6 µH to 56.4 µH at 100 kHz, from sine", "frequency 1 % (not stated: this is taken)",
                            "3 captures a unit, <serial>.sine.1.<ext>", "guarded: a unit passes when it conforms", "50 units, up to 1 may be nonconforming",
                            "a lot with 5 % bad passes", "counts as nonconforming", "Check standard CS-1: L_s every 8 h", "one attempt"}) {
     EXPECT_THAT(text, HasSubstr(said));
