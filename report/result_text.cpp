@@ -44,7 +44,13 @@ void write_values(TextPage& page, const Measurement& m) {
   }
   if (!conditions.empty()) page.paragraph(fmt::format("{}", fmt::join(conditions, ", ")), "  Conditions: ");
   // What was left out of a circuit says as much as what is in it.
-  if (m.test == "sweep" && m.model && was_measured(m)) page.paragraph(m.model->name, "  Circuit: ");
+  if (m.test != "sweep" || !m.model || !was_measured(m)) return;
+  page.paragraph(m.model->name, "  Circuit: ");
+  constexpr std::size_t kNamed = 3;   // --verbose has all
+  std::string left;
+  for (std::size_t i = 0; i < m.model->left_out.size() && i < kNamed; ++i) left += (i == 0 ? "" : "; ") + shown(m.model->left_out[i]);
+  if (m.model->left_out.size() > kNamed) left += fmt::format("; {} more", m.model->left_out.size() - kNamed);
+  if (!left.empty()) page.paragraph(left, "  Left out: ");
 }
 
 void write_points(TextPage& page, const Measurement& m) {
