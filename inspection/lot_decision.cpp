@@ -25,14 +25,14 @@ void decide_by_count(LotDecision& lot, const SamplingPlan& plan, bool set_aside)
   }
   if (bad >= plan.reject) {
     lot.decision = LotResult::reject;
-    lot.why = fmt::format("{}; {} reject the lot", seen, plan.reject);
+    lot.why = fmt::format("{}; {}", seen, plan.reject == 1 ? "1 rejects the lot" : fmt::format("{} reject the lot", plan.reject));
   } else if (worst < plan.reject) {
     lot.decision = LotResult::accept;
     lot.between_accept_and_reject = bad > plan.accept;
     lot.why = lot.between_accept_and_reject
-                  ? fmt::format("{}; up to {} is accepted, and this lies between that and {}: normal inspection comes back", seen,
+                  ? fmt::format("{}; up to {} are allowed, and this lies between that and {}: accepted, and normal inspection comes back", seen,
                                 plan.accept, plan.reject)
-                  : fmt::format("{}; up to {} is accepted", seen, plan.accept);
+                  : fmt::format("{}; {}", seen, plan.accept == 0 ? "none is allowed" : fmt::format("up to {} are allowed", plan.accept));
   } else {
     lot.decision = LotResult::undecided;
     lot.why = fmt::format("{}; with what is set aside it could be {} and {} would reject the lot", seen, worst, plan.reject);
