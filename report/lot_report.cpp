@@ -134,7 +134,7 @@ void write_values(HtmlBuilder& page, const LotRecord& lot) {
 
 void write_remarks(HtmlBuilder& page, const LotRecord& lot) {
   page.open("section").element("h2", "What to watch out for");
-  const auto findings = by_weight(lot.findings);
+  const auto findings = findings_to_tell(lot);
   if (findings.empty() && lot.cautions.empty()) page.element("p", "Nothing was found that a reader would have to know.");
   else page.open("ul", {{"class", "remarks"}});
   const auto item = [&page](Severity severity, std::string_view message, std::string_view after) {

@@ -101,7 +101,7 @@ void write_values(TextPage& page, const LotRecord& lot) {
 }
 
 void write_warnings(TextPage& page, const LotRecord& lot) {
-  const auto findings = by_weight(lot.findings);
+  const auto findings = findings_to_tell(lot);
   if (findings.empty() && lot.cautions.empty()) return;
   page.heading("What to watch out for");
   for (const Finding& each : findings) page.remark(each.severity, shown(each.message, 1000));

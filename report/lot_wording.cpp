@@ -116,6 +116,33 @@ std::string protection_in_words(const LotRecord& lot) {
   return passes_in_words(*lot.plan, 0.05);
 }
 
+std::vector<Finding> findings_to_tell(const LotRecord& lot) {
+  std::vector<Finding> findings = lot.findings;
+  struct OfAKind {
+    Finding first;
+    std::string serial;
+    std::size_t others = 0;
+  };
+  std::vector<OfAKind> kinds;
+  for (const LotUnitRecord& unit : lot.units) {
+    for (const Finding& each : unit.verdict.findings) {
+      if (each.code == "not_comparable") continue;  // told with the unit
+      const auto known = std::find_if(kinds.begin(), kinds.end(), [&](const OfAKind& kind) {
+        return kind.first.code == each.code && kind.first.about == each.about && kind.first.severity == each.severity;
+      });
+      if (known == kinds.end()) kinds.push_back({each, unit.verdict.serial, 0});
+      else if (known->serial != unit.verdict.serial) ++known->others;
+    }
+  }
+  for (OfAKind& kind : kinds) {
+    std::string whose = "unit " + shown(kind.serial, 60);
+    if (kind.others > 0) whose += fmt::format(" and {} more", kind.others);
+    kind.first.message = whose + ": " + kind.first.message;
+    findings.push_back(std::move(kind.first));
+  }
+  return by_weight(std::move(findings));
+}
+
 std::string record_in_words(const LotRecord& lot) {
   if (!lot.ledger) return "Nothing was recorded: a ledger keeps verdicts, with --ledger FILE.";
   const LotLedger& place = *lot.ledger;

@@ -37,6 +37,10 @@ std::string capability_in_words(const LotValues& values);
 /// "a lot with 5 % bad passes 66 times in 100, one with 10 % bad 43 times"; empty for a plan that looks at every unit.
 std::string protection_in_words(const LotRecord& lot);
 
+/// What to watch out for, the weightiest first: findings of the lot, and those of its units that their reasons do not tell, one
+/// of a kind with the number of the others.
+std::vector<Finding> findings_to_tell(const LotRecord& lot);
+
 /// Where the record is, or that there is none.
 std::string record_in_words(const LotRecord& lot);
 

@@ -149,6 +149,16 @@ TEST(LotText, SaysOnceWhyUnitsHaveNoValue) {
   EXPECT_THAT(text, HasSubstr("no value of L_s, R_s: no capture of the test ringdown"));
 }
 
+TEST(LotText, TellsAFindingOfManyUnitsOnce) {
+  LotRecord lot = made_up_lot();
+  const Finding wide{"guard_band_too_wide", Severity::caution, "L_s: the bench is too coarse", "L_s", 1, Unit::one};
+  for (LotUnitRecord& each : lot.units) each.verdict.findings = {wide};
+  const std::string text = to_text(lot, {.script = Script::utf8, .color = false, .verbose = false, .width = 200});
+  EXPECT_THAT(text, HasSubstr("unit 01 and 4 more: L_s: the bench is too coarse"));
+  EXPECT_EQ(text.find("too coarse"), text.rfind("too coarse"));
+  EXPECT_THAT(page_of(lot), HasSubstr("unit 01 and 4 more"));
+}
+
 TEST(LotFigures, ShowEveryValueBetweenItsLimits) {
   const LotRecord lot = made_up_lot();
   const Figure figure = lot_values_figure(lot, 0);
