@@ -8,6 +8,7 @@
 #include "base/number_text.h"
 #include "base/outside_text.h"
 #include "fitting/statistics.h"
+#include "inspection/capability.h"
 
 namespace coilassay {
 
@@ -17,6 +18,18 @@ constexpr double kLimitSigmas = 3;
 constexpr double kDay_s = 86400;
 
 double seconds_between(UtcTime from, UtcTime to) { return static_cast<double>((to - from).count()); }
+
+/// Within the limits readings can still hang together: the run rules of capability.h on the chart's own centre and sigma.
+std::string trend_in_words(const CheckChart& chart, std::size_t seen) {
+  std::vector<double> values;
+  for (std::size_t i = 0; i < seen; ++i) values.push_back(chart.readings[i].value);
+  const auto individuals = individuals_chart(values, chart.centre, chart.sigma);
+  if (!individuals) return {};
+  for (const RunSignal& signal : individuals->signals) {
+    if (signal.at + 1 == seen && signal.rule != RunRule::beyond_3_sigma) return std::string(name(signal.rule));
+  }
+  return {};
+}
 
 }  // namespace
 
@@ -88,6 +101,7 @@ CheckStatus check_status(const CheckStandard& standard, const CheckChart& chart,
   } else {
     status.state = CheckState::good;
     status.why = fmt::format("check standard {} is good", serial);
+    status.trend = trend_in_words(chart, seen);
   }
   // While the first readings are being collected there is nothing to refuse by.
   status.may_inspect = status.state == CheckState::good || status.state == CheckState::not_established || !standard.refuse;

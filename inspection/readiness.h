@@ -39,6 +39,7 @@ struct CheckStatus {
   bool may_inspect = false;                // what the sheet's `refuse` makes of it
   std::optional<UtcTime> last_good;        // units measured since then are in doubt when it is out
   std::string why;
+  std::string trend;                       // a run rule that the newest reading completes within the limits; else empty
 };
 CheckStatus check_status(const CheckStandard& standard, const CheckChart& chart, UtcTime now);
 

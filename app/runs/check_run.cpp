@@ -93,6 +93,10 @@ Result<CheckOutcome> run_check(const std::vector<PreparedTest>& tests, const std
   if (outcome.status.state != CheckState::good) {
     outcome.findings.push_back({"check_standard", Severity::caution, outcome.status.why, standard.serial,
                                 static_cast<double>(outcome.chart.readings.size()), Unit::one});
+  } else if (!outcome.status.trend.empty()) {
+    outcome.findings.push_back({"check_standard", Severity::note,
+                                outcome.status.why + ", but its readings hang together (" + outcome.status.trend + "): look for what drifts",
+                                standard.serial, static_cast<double>(outcome.chart.readings.size()), Unit::one});
   }
   return outcome;
 }

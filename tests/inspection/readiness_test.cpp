@@ -61,6 +61,17 @@ TEST(Readiness, WhenItIsOutTheLastGoodCheckIsNamed) {
   EXPECT_TRUE(check_status(mark, chart, kShift + hours(8)).may_inspect);
 }
 
+TEST(Readiness, ADriftWithinTheLimitsIsNamed) {
+  const CheckStandard check = standard();
+  std::vector<CheckReading> readings;
+  for (int i = 0; i < 8; ++i) readings.push_back({kShift + hours(i), 47.005e-6});
+  const auto status = [&] { return check_status(check, check_chart(check, readings), readings.back().time); };
+  EXPECT_EQ(status().state, CheckState::good);
+  EXPECT_EQ(status().trend, "8 in a row on one side");
+  readings.push_back({kShift + hours(8), 46.995e-6});
+  EXPECT_EQ(status().trend, "") << "the newest reading ends it";
+}
+
 TEST(Readiness, ItsFirstReadingsMakeTheChart) {
   CheckStandard check = standard();
   check.centre.reset();
