@@ -112,4 +112,23 @@ std::vector<Caution> sine_cautions(const SineLoad& load) {
   return cautions;
 }
 
+std::vector<Caution> coupling_cautions(const StepUp& step) {
+  constexpr double kTouchable_v = 42, kNoteworthy = 3;
+  if (std::isfinite(step.test_v)) {
+    const double open = step.ratio * step.test_v;
+    if (!(open > kTouchable_v)) return {};
+    return {{"open_side_voltage", Severity::caution,
+             "a test voltage of " + to_text(step.test_v, Unit::volt, Script::utf8, 3) + " peak across the other winding stands as " +
+                 to_text(open, Unit::volt, Script::utf8, 3) + " peak at the open " + step.open_side +
+                 ": do not touch it, and use a probe that stands it",
+             open, Unit::volt, "from memory"}};
+  }
+  if (!(step.ratio > kNoteworthy)) return {};
+  const double enough = kTouchable_v / step.ratio;
+  return {{"open_side_voltage", Severity::note,
+           "the open " + step.open_side + " carries " + to_text(step.ratio, Unit::one, Script::utf8, 2) + " times the test voltage: from " +
+               to_text(enough, Unit::volt, Script::utf8, 2) + " peak on it passes 42 V",
+           enough, Unit::volt, "from memory"}};
+}
+
 }  // namespace coilassay

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <cmath>
+#include <string>
 #include <vector>
 
 #include "analysis/measurement.h"
@@ -38,5 +39,14 @@ struct SineLoad {
 };
 /// Energy at the crest, voltage, heat of the shunt, and where the shunt must sit on an earthed scope.
 std::vector<Caution> sine_cautions(const SineLoad& load);
+
+/// What stands at the open one of two windings.
+struct StepUp {
+  double ratio = 0;                  // of its voltage to that across the driven one
+  double test_v = std::nan("");      // peak across the driven one; NaN: not known
+  std::string open_side;             // "secondary"
+};
+/// Voltage at the open side above 42 V peak, or the test voltage from which on it is, where the ratio is above 3.
+std::vector<Caution> coupling_cautions(const StepUp& step);
 
 }  // namespace coilassay

@@ -47,6 +47,9 @@ constexpr std::array kSymbols = {
     Symbol{"M", Unit::henry, "mutual inductance"},
     Symbol{"k", Unit::one, "coupling factor"},
     Symbol{"n", Unit::one, "ratio sqrt(L_1/L_2)"},
+    Symbol{"one_minus_k", Unit::one, "1 - k"},
+    Symbol{"k_over_n", Unit::one, "open ratio secondary/primary, k/n"},
+    Symbol{"k_times_n", Unit::one, "open ratio primary/secondary, k n"},
     Symbol{"L_leak_1", Unit::henry, "leakage seen from the primary"},
     Symbol{"L_leak_2", Unit::henry, "leakage seen from the secondary"},
 };

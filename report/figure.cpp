@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/outside_text.h"
+#include "report/figure_coupling.h"
 #include "report/figure_resistance.h"
 #include "report/figure_ramp.h"
 #include "report/figure_sine.h"
@@ -114,6 +115,7 @@ Figure figure_of(const Measurement& m) {
     }
   }
   if (m.test == "sine") figure.panels = sine_panels(m);
+  if (m.test == "coupling") figure.panels = coupling_panels(m);
   if (m.test == "ramp") figure.panels = ramp_panels(m);
   if (m.test == "sweep") figure.panels = sweep_panels(m);
   if (m.test == "resistance") figure.panels = resistance_panels(m);

@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/outside_text.h"
+#include "report/coupling_tables.h"
 #include "report/figure.h"
 #include "report/html_builder.h"
 #include "report/page_style.h"
@@ -72,6 +73,13 @@ void write_remarks(HtmlBuilder& page, const Measurement& m) {
     page.close();
   }
   page.close();
+}
+
+void write_tables(HtmlBuilder& page, const Measurement& m) {
+  for (const TitledTable& each : coupling_tables(m, kScript)) {
+    const std::vector<std::vector<std::string>> rows(each.rows.begin() + 1, each.rows.end());
+    page.open("section").element("h2", each.title).table(each.rows.front(), rows, "points").close();
+  }
 }
 
 void write_figure(HtmlBuilder& page, const Measurement& m) {
@@ -201,10 +209,12 @@ std::string html_report(const Measurement& m, const ReportContext& context) {
     write_remarks(page, m);
     write_values(page, m);
     write_points(page, m);
+    write_tables(page, m);
     write_figure(page, m);
   } else {
     write_values(page, m);
     write_points(page, m);
+    write_tables(page, m);
     write_remarks(page, m);
     write_figure(page, m);
   }

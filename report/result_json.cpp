@@ -220,6 +220,56 @@ Json points(const std::vector<Point>& all) {
   return list;
 }
 
+Json inputs(const std::vector<InputCheck>& all) {
+  Json list = Json::array();
+  for (const InputCheck& each : all) {
+    Json item = {{"item", each.item},
+                 {"value", number(each.value.value)},
+                 {"u", number(each.value.standard_uncertainty)},
+                 {"unit", symbol(each.value.unit)},
+                 {"predicted", number(each.predicted)},
+                 {"residual_u", number(each.residual_u)}};
+    add_number(item, "at_Hz", each.at_hz);
+    list.push_back(std::move(item));
+  }
+  return list;
+}
+
+Json equivalents(const std::vector<Equivalent>& all) {
+  Json object = Json::object();
+  for (const Equivalent& each : all) {
+    Json item = Json::object();
+    add_estimates(item, each.elements);
+    Json between = Json::array();
+    for (std::size_t a = 0; a < each.correlation.size(); ++a) {
+      for (std::size_t b = a + 1; b < each.elements.size(); ++b) {
+        between.push_back({each.elements[a].symbol, each.elements[b].symbol, number(each.correlation[a][b])});
+      }
+    }
+    item["correlations"] = std::move(between);
+    object[each.name] = std::move(item);
+  }
+  return object;
+}
+
+Json matrix(const std::vector<std::vector<double>>& rows_of) {
+  Json all = Json::array();
+  for (const std::vector<double>& row : rows_of) {
+    Json line = Json::array();
+    for (const double value : row) line.push_back(number(value));
+    all.push_back(std::move(line));
+  }
+  return all;
+}
+
+Json matrices(const InductanceMatrices& m) {
+  return {{"ports", m.ports},
+          {"inductance_H", matrix(m.inductance_h)},
+          {"U_H", matrix(m.U_h)},
+          {"coupling", matrix(m.coupling)},
+          {"positive_definite", m.positive_definite}};
+}
+
 }  // namespace
 
 Json findings_document(const std::vector<Finding>& all) { return findings(all); }
@@ -244,6 +294,9 @@ Json result_document(const Measurement& m, std::string_view program) {
   if (m.model) document["model"] = model(*m.model);
   if (!m.points.empty()) document["points"] = points(m.points);
   if (!m.pulses.empty()) document["pulses"] = points(m.pulses);
+  if (!m.inputs.empty()) document["inputs"] = inputs(m.inputs);
+  if (!m.equivalents.empty()) document["equivalents"] = equivalents(m.equivalents);
+  if (m.matrices) document["matrices"] = matrices(*m.matrices);
   for (const Table& table : m.tables) {
     // Tables for figures: the samples are in the file that was read, what a line goes through stands in the points.
     if (table.name.starts_with("trace") || table.name == "line") continue;

@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/outside_text.h"
+#include "report/coupling_tables.h"
 #include "report/text_layout.h"
 #include "report/text_page.h"
 #include "report/wording.h"
@@ -15,7 +16,9 @@ namespace {
 
 void write_head(TextPage& page, const Measurement& m) {
   const Script script = page.style().script;
-  if (m.sources.size() == 1) {
+  if (m.sources.empty()) {
+    page.heading(test_in_words(m.test) + " of stated values");
+  } else if (m.sources.size() == 1) {
     page.heading(test_in_words(m.test) + " of " + source_in_words(m.sources.front(), script));
   } else {
     page.heading(fmt::format("{} of {} files", test_in_words(m.test), m.sources.size()));
@@ -62,6 +65,13 @@ void write_points(TextPage& page, const Measurement& m) {
   table.resize(table.size() - left);
   page.table(table);
   if (left > 0) page.paragraph(fmt::format("and {} more with --verbose", left));
+}
+
+void write_tables(TextPage& page, const Measurement& m) {
+  for (const TitledTable& each : coupling_tables(m, page.style().script)) {
+    page.heading(each.title);
+    page.table(each.rows);
+  }
 }
 
 void write_composition(TextPage& page, const Measurement& m) {
@@ -186,6 +196,7 @@ std::string to_text(const Measurement& m, const TextStyle& style) {
   }
   write_values(page, m);
   write_points(page, m);
+  write_tables(page, m);
   write_composition(page, m);
   write_warnings(page, m);
   if (was_measured(m)) write_advice(page, m);

@@ -178,6 +178,12 @@ std::optional<std::string> Arguments::text(std::string_view option) const {
   return all.empty() ? std::nullopt : std::optional(all.front().text);
 }
 
+std::vector<std::string> Arguments::all_text(std::string_view option) const {
+  std::vector<std::string> result;
+  for (const Value& value : values(option, {ValueKind::text, ValueKind::file})) result.push_back(value.text);
+  return result;
+}
+
 std::vector<std::string_view> Arguments::never_asked() const {
   std::vector<std::string_view> result;
   for (const OptionGroup& group : command_->groups) {

@@ -42,6 +42,7 @@ class Arguments {
   std::optional<std::uint64_t> count(std::string_view option) const;
   /// Of a text, a file or a choice.
   std::optional<std::string> text(std::string_view option) const;
+  std::vector<std::string> all_text(std::string_view option) const;
 
   /// Declared options that nobody has asked for yet: an option that does nothing shows up here.
   std::vector<std::string_view> never_asked() const;

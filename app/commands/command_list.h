@@ -37,6 +37,8 @@ Command acquire_command();
 Command station_command();
 Command simulate_instrument_command();
 Command gauge_command();
+Command coupling_command();
+Command simulate_coupled_command();
 Command help_command();
 Command man_command();
 Command completion_command();

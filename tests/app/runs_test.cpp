@@ -284,6 +284,8 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
       {"ringdown", {ring, "--capacitor", "10nF"}},
       {"simulate ringdown", {"-o", folder / "new.csv"}},
       {"acquire", {profile, "-o", folder / "run.csv", "--count", "1"}},
+      {"coupling", {"--primary-open", "100uH±1%", "--primary-short", "19uH±1%"}},
+      {"simulate coupled", {"-o", folder / "pair.s2p"}},
       {"simulate sweep", {"-o", folder / "new-sweep.csv"}},
       {"sweep", {folder.file("coil.csv", sweep_csv())}},
       {"gauge", {folder.file("gauge.csv", "part,operator,trial,value\n1,a,1,1\n1,a,2,2\n2,a,1,5\n2,a,2,7\n")}},

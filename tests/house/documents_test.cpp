@@ -8,6 +8,7 @@
 #include <set>
 #include <string>
 
+#include "analysis/coupling.h"
 #include "analysis/reading.h"
 #include "analysis/resistance.h"
 #include "analysis/ring_down.h"
@@ -197,6 +198,11 @@ TEST(Documents, DefaultTolerancesAreThoseOfTheCode) {
       {"gain of an ammeter, readings of a winding", "±" + percent(resistance_defaults::kMeterCurrentRatio)},
       {"thermal offset, one polarity only", "±" + to_text(resistance_defaults::kThermalOffset_v, Unit::volt, Script::utf8, 2)},
       {"accuracy of an instrument, not stated in its profile", "±" + percent(reading_defaults::kAccuracyRatio)},
+      {"value of a meter, coupled windings, given without tolerance", "±" + percent(coupling_defaults::kValueRatio)},
+      {"impedances of a file, coupled windings", "±" + to_shortest(100 * coupling_defaults::kSweepRatio) + " %"},
+      {"scattering of a port file, coupled windings", "±" + to_shortest(coupling_defaults::kScattering)},
+      {"inductance of a short, not given", "0 to " + to_text(coupling_defaults::kLink_h, Unit::henry, Script::utf8, 2)},
+      {"inductance or resistance of a short, given without tolerance", "±" + percent(coupling_defaults::kLinkRatio)},
       {"temperature of a winding or of the air", "±" + to_text(resistance_defaults::kTemperature_k, Unit::kelvin, Script::utf8, 1)},
       {"temperature coefficient of the wire", "±" + percent(resistance_defaults::kCoefficientRatio)},
       {"cold resistance of a winding", "±" + percent(resistance_defaults::kColdRatio)},
