@@ -132,11 +132,17 @@ Result<void> arrange(std::span<const GaugeReading> readings, GaugeStudy& study) 
 }
 
 void judge(GaugeStudy& study) {
-  const double grr = study.grr_of_tolerance ? study.grr_of_tolerance->value : study.grr_of_study.value;
+  const WithInterval& interval = study.grr_of_tolerance ? *study.grr_of_tolerance : study.grr_of_study;
+  const double grr = interval.value;
   const std::string base = study.grr_of_tolerance ? "of the tolerance" : "of the study's variation";
   const auto verdict = [&](bool good, bool conditional) { return good ? "good" : conditional ? "conditional" : "poor"; };
   study.judgement = verdict(grr < kGood, grr <= kConditional);
   study.why.push_back(fmt::format("%GRR is {:.1f} % {}: below 10 % is good, up to 30 % conditional", 100 * grr, base));
+  const auto grade = [&](double ratio) { return std::string(verdict(ratio < kGood, ratio <= kConditional)); };
+  if (const std::string best = grade(interval.low), worst = grade(interval.high); best != worst) {
+    study.why.push_back(fmt::format("Its interval, {:.1f} % to {:.1f} %, reaches from {} to {}: more parts, and above all more operators, would tell",
+                                    100 * interval.low, 100 * interval.high, best, worst));
+  }
   if (study.ndc < kEnoughCategories) {
     // Against a tolerance parts need not differ; for telling them apart they must.
     if (!study.grr_of_tolerance) study.judgement = "poor";

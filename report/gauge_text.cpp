@@ -108,7 +108,7 @@ std::string to_text(const GaugeRecord& record, const TextStyle& style) {
   if (study.grr_of_tolerance) {
     rows.push_back({"%GRR of the tolerance", interval(*study.grr_of_tolerance)});
   }
-  rows.push_back({"categories (ndc)", fmt::format("{} ({:.3g}; {:.2g} to {:.2g})", study.ndc, study.categories.value, study.categories.low, study.categories.high)});
+  rows.push_back({"categories (ndc)", fmt::format("{} ({:.1f}; {:.1f} to {:.1f})", study.ndc, study.categories.value, study.categories.low, study.categories.high)});
   page.rows(rows);
   for (const std::string& sentence : study.why) page.paragraph(sentence + ".");
   if (!record.findings.empty()) {

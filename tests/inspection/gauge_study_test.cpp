@@ -118,6 +118,15 @@ TEST(GaugeStudy, IsRefusedWhereItIsNotCrossed) {
   EXPECT_THAT(refused(equal), HasSubstr("last digit"));
 }
 
+// Two parts and one operator: the value says good, and the study cannot know.
+TEST(GaugeStudy, TooSmallToBeSureSaysSo) {
+  const auto small = study_gauge(simulated({0.1, 0, 0, 3}, 2, 1, 2, 3), {});
+  ASSERT_TRUE(small);
+  EXPECT_THAT(small->why, testing::Contains(HasSubstr("reaches from good to")));
+  const auto large = study_gauge(simulated({0.1, 0.02, 0, 4}, 40, 10, 3, 3), {});
+  EXPECT_THAT(large->why, testing::Each(testing::Not(HasSubstr("reaches from"))));
+}
+
 TEST(GaugeStudy, AGaugeThatCannotTellPartsApartIsPoor) {
   const auto study = study_gauge(simulated({1, 0.2, 0, 0.5}, 10, 3, 3, 4), {});
   ASSERT_TRUE(study);
