@@ -147,7 +147,14 @@ std::vector<char> decimals(const ReadOptions& options) {
   return {'.', ','};
 }
 
-/// First line from which rows of numbers run on: the next two, where there are two, are such rows as well.
+/// A remark between rows; one with as many cells as a row may be the names above it.
+bool is_remark(std::string_view line, std::size_t cells, std::size_t width) {
+  const std::string_view text = bare_cell(line);
+  return cells < width && (text.starts_with('#') || text.starts_with('!') || text.starts_with('%'));
+}
+
+/// First line from which rows of numbers run on: the next two, where there are two, are such rows as well. Remarks between
+/// them do not count.
 std::size_t first_row(const std::vector<TableLine>& lines, const TableDialect& dialect) {
   std::size_t run = 0;
   std::size_t begin = lines.size();
@@ -157,7 +164,7 @@ std::size_t first_row(const std::vector<TableLine>& lines, const TableDialect& d
     if (cells.size() == dialect.width && is_row_of_numbers(cells, dialect.decimal)) {
       if (run++ == 0) begin = i;
       if (run == 3) return begin;
-    } else {
+    } else if (!is_remark(lines[i].text, cells.size(), dialect.width)) {
       run = 0;
     }
   }

@@ -92,8 +92,20 @@ Result<void> TableJoin::append(const BlockColumns& block, std::size_t from, std:
     if (const auto done = resolve(block, from); !done) return done;
     pending_.clear();
   }
+  if (const auto row = store_.row_without_time(block, from, to)) return no_time(block, *row);
   store_.append(block, from, to - from);
   return {};
+}
+
+/// A value without its time belongs nowhere; taken as the next one it would move all that follow.
+tl::unexpected<Error> TableJoin::no_time(const BlockColumns& block, std::size_t row) const {
+  std::size_t line = line_ + row;
+  for (const TableBreak& at : block.breaks) line += at.row <= row ? 1 : 0;
+  // Blank lines among the rows are passed over and not counted one by one.
+  const bool known = block.lines == block.rows + block.breaks.size();
+  return failure(Problem::damaged, known ? fmt::format("{}:{}", name_, line) : name_,
+                 fmt::format("{} has values and no time", known ? "this row" : "a row"),
+                 "repair that row; where the steps are even, leave the column of time out with [file] columns in a bench sheet, and state sample_interval");
 }
 
 Result<void> TableJoin::resolve(const BlockColumns& block, std::size_t row) {

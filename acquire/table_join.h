@@ -35,6 +35,7 @@ class TableJoin {
  private:
   Result<void> append(const BlockColumns& block, std::size_t from, std::size_t to);
   Result<void> resolve(const BlockColumns& block, std::size_t row);
+  tl::unexpected<Error> no_time(const BlockColumns& block, std::size_t row) const;
   tl::unexpected<Error> damaged(const TableBreak& at, const std::string& finding) const;
   std::string label() const;
 

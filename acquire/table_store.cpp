@@ -91,6 +91,14 @@ bool TableStore::begins_record(const BlockColumns& block, std::size_t row) const
   return meaning_.time && records_.back().time.restarts_at(block.values[*meaning_.time][row]);
 }
 
+std::optional<std::size_t> TableStore::row_without_time(const BlockColumns& block, std::size_t from, std::size_t to) const {
+  if (!meaning_.time) return std::nullopt;
+  const double* const stamps = block.values[*meaning_.time].data();
+  const double* const found = std::find_if(stamps + from, stamps + to, [](double stamp) { return std::isnan(stamp); });
+  if (found == stamps + to) return std::nullopt;
+  return static_cast<std::size_t>(found - stamps);
+}
+
 void TableStore::begin_labelled(const std::string& label) {
   if (records_.back().rows > 0) begin_record(records_.back().rows);
   records_.back().label = label;

@@ -3,6 +3,7 @@
 
 #include <cstddef>
 #include <span>
+#include <optional>
 #include <string>
 #include <vector>
 
@@ -32,6 +33,8 @@ class TableStore {
 
   /// Joins rows [from, from + count) of a block. Where time jumps back another record begins.
   void append(const BlockColumns& block, std::size_t from, std::size_t count);
+  /// The first of these rows whose time is missing.
+  std::optional<std::size_t> row_without_time(const BlockColumns& block, std::size_t from, std::size_t to) const;
   /// Whether the row would begin another record by its time.
   bool begins_record(const BlockColumns& block, std::size_t row) const;
   /// The next row begins another record, with this label; before the first row it labels the first.

@@ -3,6 +3,7 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <cmath>
 
 #include "acquire/number_scan.h"
 #include "acquire/table_cells.h"
@@ -55,7 +56,7 @@ tl::unexpected<Error> damaged(const std::string& place, const std::string& findi
 
 Result<std::size_t> count_of(const TouchstoneKeyword& keyword, const std::string& place, std::size_t most) {
   const auto value = positive(bare_cell(keyword.rest));
-  if (!value || *value != static_cast<double>(static_cast<std::size_t>(*value)) || *value > static_cast<double>(most)) {
+  if (!value || *value > static_cast<double>(most) || *value != std::floor(*value)) {
     return damaged(place, fmt::format("[{}] needs a whole number from 1 to {}, not '{}'", keyword.name, most, shown(keyword.rest, 40)));
   }
   return static_cast<std::size_t>(*value);

@@ -95,6 +95,16 @@ TEST_F(ReaderDamage, ABlankBehindTheLastRowIsNone) {
   EXPECT_EQ(read->front().samples(), 20u);
 }
 
+// Taken as the next sample it would be measured at a time nobody knows.
+TEST_F(ReaderDamage, ARowWithoutItsTime) {
+  expect(error_of("t (s),v (V)\n0,1\n1e-6,2\n,3\n3e-6,4\n4e-6,3\n"), Problem::damaged, "capture.csv:4", "no time");
+  expect(error_of("# a\nt (s),v (V)\n0,1\n# b\n1e-6,2\nOL,3\n3e-6,4\n4e-6,3\n"), Problem::damaged, "capture.csv:6", "no time");
+  ReadOptions stated;
+  stated.sample_interval_s = 1e-6;
+  stated.columns = {"-", "v [V]"};
+  EXPECT_TRUE(captures(made("capture.csv", "t (s),v (V)\n0,1\n1e-6,2\n,3\n3e-6,4\n4e-6,3\n"), stated));
+}
+
 TEST_F(ReaderDamage, ALineWithoutEnd) {
   std::string text = good_rows(50000);
   text.insert(text.size() / 2, std::string(10'000'000, '1'));

@@ -78,5 +78,16 @@ TEST_F(TableRecords, ARecordWithoutASingleNumberIsLeftOutAndSaid) {
   EXPECT_NE(said->message.find("1 of 2 records hold no number"), std::string::npos) << said->message;
 }
 
+TEST_F(TableRecords, ARemarkBehindTheFirstRowsDoesNotMakeThemAPreamble) {
+  const auto c = captures(made("remark.csv", "t (s),v (V)\n0,1\n1e-6,2\n# gain changed\n2e-6,3\n3e-6,4\n4e-6,5\n"));
+  ASSERT_TRUE(c) << c.error().finding;
+  EXPECT_EQ(c->front().samples(), 5u);
+  EXPECT_EQ(c->front().channels.front().name, "v");
+  // A remark that names the columns begins the table.
+  const auto named = captures(made("named.csv", "1000,2\n# t (s),v (V)\n0,1\n1e-6,2\n2e-6,3\n3e-6,4\n"));
+  ASSERT_TRUE(named) << named.error().finding;
+  EXPECT_EQ(named->front().samples(), 4u);
+}
+
 }  // namespace
 }  // namespace coilassay
