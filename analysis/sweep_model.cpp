@@ -18,6 +18,7 @@ constexpr double kCounts = 2.5;           // from which a lag's correlation ente
 constexpr std::size_t kMostLags = 40;
 constexpr double kNormalQuantile = 1.96;
 constexpr double kFactorsBelow = 5;       // times the standard uncertainty by the errors of the bench
+constexpr double kRefused = 10;           // of the criterion: a probability below 1 in 150
 constexpr double kClearlyBetter = 10;     // log likelihood: e^10 to one
 
 /// Log likelihood of errors alike in S less that of errors alike in ln Z, the fits being equally good descriptions.
@@ -173,8 +174,7 @@ void look_for_hidden_losses(SweepModel& model) {
 void take_choice(SweepModel& model, CircuitChoice choice) {
   model.fit = std::move(choice.best);
   model.outliers = std::move(choice.left_out);
-  model.families.clear();
-  for (const CircuitCandidate& each : choice.candidates) model.families.push_back(each.family);
+  model.tried = std::move(choice.candidates);
   model.runner_up.clear();
   if (choice.runner_up) {
     model.runner_up = name(choice.runner_up->family) + " (criterion " + to_text(choice.lead, Unit::one, Script::utf8, 3) + " higher)";
@@ -232,17 +232,42 @@ Result<void> choose(SweepModel& model, const SweepData& data, const CircuitChoic
 }
 
 /// Families for the joint choice: those of one resonance, and with a second one what the first choice had of them.
-std::vector<CircuitFamily> joint_families(const std::vector<CircuitFamily>& tried) {
+std::vector<CircuitFamily> joint_families(const std::vector<CircuitCandidate>& tried) {
   std::vector<CircuitFamily> families;
   for (const bool loss : {false, true}) {
     families.push_back({.parallel_loss = loss});
     families.push_back({.parallel_loss = loss, .skin = true});
     families.push_back({.parallel_loss = loss, .relaxation = true});
   }
-  for (const CircuitFamily& each : tried) {
-    if (each.second_resonance) families.push_back(each);
+  for (const CircuitCandidate& each : tried) {
+    if (each.family.second_resonance) families.push_back(each.family);
   }
   return families;
+}
+
+/// The circuits that were tried and are not clearly refused, without errors of the bench.
+void keep_alternatives(SweepModel& model) {
+  CircuitData rest = model.points;
+  for (const std::size_t i : model.outliers) rest.z[i] = std::nan("");
+  CircuitFitOptions options;
+  options.reference_hz = model.fit.circuit.reference_hz;
+  options.limits = false;
+  const auto best = std::min_element(model.tried.begin(), model.tried.end(), [](const CircuitCandidate& a, const CircuitCandidate& b) {
+    return a.criterion < b.criterion;
+  });
+  for (const CircuitCandidate& each : model.tried) {
+    const double lead = each.criterion - best->criterion;
+    if (each.family == model.fit.circuit.family || lead >= kRefused) continue;
+    const Result<CircuitFit> fit = fit_circuit(rest, each.family, options);
+    if (fit && fit->usable()) model.alternatives.push_back({std::exp(-lead / 2), fit->circuit, fit->order, fit->fit.covariance});
+  }
+}
+
+/// Weights that add up to one with that of the circuit chosen.
+void share_weights(SweepModel& model) {
+  double sum = 1;
+  for (const SweepModel::Alternative& each : model.alternatives) sum += each.weight;
+  for (SweepModel::Alternative& each : model.alternatives) each.weight /= sum;
 }
 
 /// Points with their noise as standard deviations, by differences of neighbouring residuals.
@@ -269,7 +294,7 @@ void choose_jointly(SweepModel& model) {
     double criterion;
   };
   std::vector<Tried> tried;
-  for (const CircuitFamily& family : joint_families(model.families)) {
+  for (const CircuitFamily& family : joint_families(model.tried)) {
     CircuitFitOptions options;
     options.reference_hz = model.fit.circuit.reference_hz;
     options.limits = false;
@@ -283,6 +308,12 @@ void choose_jointly(SweepModel& model) {
   }
   if (tried.empty()) return;
   std::stable_sort(tried.begin(), tried.end(), [](const Tried& a, const Tried& b) { return a.criterion < b.criterion; });
+  for (std::size_t k = 1; k < tried.size(); ++k) {
+    const double lead = tried[k].criterion - tried[0].criterion;
+    const JointFit& other = tried[k].joint;
+    if (lead >= kRefused) continue;
+    model.alternatives.push_back({std::exp(-lead / 2), other.circuit, other.order, other.covariance + other.shifts * other.shifts.transpose()});
+  }
   JointFit& joint = tried.front().joint;
   model.fit = std::move(tried.front().fit);
   model.fit.circuit = joint.circuit;
@@ -343,6 +374,8 @@ Result<SweepModel> fit_sweep(const SweepData& data, const SweepRequest& request)
   ImpedanceErrorTerm frequency = frequency_error(data, model.fit.circuit, request);
   if (!frequency.basis.empty()) model.errors.push_back(std::move(frequency));
   choose_jointly(model);
+  if (!model.jointly) keep_alternatives(model);
+  share_weights(model);
   judge_residuals(model);
   if (model.misfit) fit_parts(model, data);
   if (data.has_phase) {

@@ -24,7 +24,7 @@ struct SweepModel {
   double correlation = 0;                       // of the residuals of neighbouring points
   double inflation = 1;                         // of the covariance, for residuals that hang together
   bool misfit = false;                          // they do so beyond chance
-  std::vector<CircuitFamily> families;          // that were tried at first
+  std::vector<CircuitCandidate> tried;          // at first
   bool jointly = false;                         // the circuit was fitted together with the errors below
   std::vector<std::complex<double>> cleaned;    // then: the points with the most likely errors taken out
   struct Drift {                                // what the circuit becomes on parts of the span
@@ -35,6 +35,13 @@ struct SweepModel {
     Circuit circuit;                            // with that loss as large as the data would let pass unseen
   };
   std::vector<Hidden> hidden;                   // losses the circuit does not have
+  struct Alternative {
+    double weight;                              // share of the probability among the circuits tried, by the criterion
+    Circuit circuit;
+    std::vector<CircuitParameter> order;
+    Eigen::MatrixXd covariance;                 // by the noise and by the errors of the bench
+  };
+  std::vector<Alternative> alternatives;        // circuits the data do not clearly refuse
   std::vector<ImpedanceErrorTerm> errors;       // common ones, the frequency's among them
   Eigen::MatrixXd shifts;                       // of the parameters (rows) by one standard uncertainty of each error (columns)
 

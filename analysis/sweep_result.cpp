@@ -2,9 +2,12 @@
 
 #include <algorithm>
 #include <cmath>
+#include <functional>
+#include <optional>
 #include <utility>
 
 #include "base/number_text.h"
+#include "fitting/statistics.h"
 
 namespace coilassay {
 
@@ -116,6 +119,75 @@ std::vector<ExtraTerm> misfit_terms(const SweepModel& model, const std::vector<I
   return terms;
 }
 
+/// What the choice of the circuit adds to the variance of a quantity. Each circuit the data do not clearly refuse has its value and its
+/// uncertainty; the mixture of these laws by their weights (averaging of models as Burnham and Anderson, Sociological
+/// Methods & Research 33 (2004) 261, from memory) holds 95 % within some distance of the value of the circuit chosen. A normal law of that
+/// reach less the circuit's own.
+double variance_of_choice(const SweepModel& model, const std::function<double(const Circuit&)>& value,
+                          const std::function<double(const Circuit&, const std::vector<P>&, const Eigen::MatrixXd&)>& variance) {
+  struct Law {
+    double weight, offset, u;
+  };
+  const double best = value(model.fit.circuit);
+  const Eigen::MatrixXd all = model.fit.fit.covariance + model.shifts * model.shifts.transpose();
+  const double own = std::sqrt(variance(model.fit.circuit, model.fit.order, all));
+  std::vector<Law> laws;
+  double left = 1;
+  for (const SweepModel::Alternative& each : model.alternatives) {
+    const double offset = value(each.circuit) - best, u = std::sqrt(variance(each.circuit, each.order, each.covariance));
+    if (!std::isfinite(offset) || !std::isfinite(u)) continue;
+    laws.push_back({each.weight, offset, u});
+    left -= each.weight;
+  }
+  if (laws.empty() || !(own > 0)) return 0;
+  laws.push_back({left, 0, own});
+  const auto outside = [&](double reach) {
+    double sum = 0;
+    for (const Law& law : laws) {
+      const double u = std::fmax(law.u, 1e-3 * own);
+      sum += law.weight * (normal_cdf((law.offset - reach) / u) + normal_cdf((-law.offset - reach) / u));
+    }
+    return sum;
+  };
+  double low = 0, high = kNormalQuantile * own;
+  while (outside(high) > 0.05 && high < 1e6 * own) high *= 2;
+  for (int k = 0; k < 50; ++k) {
+    const double middle = (low + high) / 2;
+    (outside(middle) > 0.05 ? low : high) = middle;
+  }
+  const double u = high / kNormalQuantile;
+  return std::fmax(u * u - own * own, 0);
+}
+
+std::vector<ExtraTerm> choice_terms(const SweepModel& model, const std::vector<Item>& items, std::optional<double> f_r) {
+  std::vector<ExtraTerm> terms;
+  const auto add = [&](const std::string& symbol, double variance) {
+    if (variance > 0) terms.push_back({symbol, "choice of the circuit", {ErrorLaw::Kind::normal, std::sqrt(variance), 0}, 'A', false, "data"});
+  };
+  for (const Item& item : items) {
+    // A circuit without the element says that it is nothing.
+    const double variance = variance_of_choice(
+        model, [&](const Circuit& c) { return c[item.parameter]; },
+        [&](const Circuit&, const std::vector<P>& order, const Eigen::MatrixXd& covariance) {
+          const auto at = std::find(order.begin(), order.end(), item.parameter);
+          const auto k = at - order.begin();
+          return at == order.end() ? 0.0 : covariance(k, k);
+        });
+    const double value = model.fit.circuit[item.parameter];
+    add(item.symbol, item.inverse ? variance / std::pow(value, 4) : variance);
+  }
+  if (f_r) {
+    add("f_r", variance_of_choice(
+                   model, [&](const Circuit& c) { return nearby_resonance_hz(c, *f_r); },
+                   [&](const Circuit& c, const std::vector<P>&, const Eigen::MatrixXd& covariance) {
+                     const std::vector<double> slopes = falling_zero_slopes(c, *f_r);
+                     const Eigen::Map<const Eigen::VectorXd> d(slopes.data(), static_cast<Eigen::Index>(slopes.size()));
+                     return d.dot(covariance * d);
+                   }));
+  }
+  return terms;
+}
+
 /// Where the reactance changes sign outside the span, if the fitted circuit says so.
 void add_resonance_bound(Measurement& result, const SweepModel& model, const SweepData& data) {
   const double at_top = impedance(model.fit.circuit, data.high_hz).imag(), at_bottom = impedance(model.fit.circuit, data.low_hz).imag();
@@ -177,7 +249,8 @@ void add_circuit(Measurement& result, const SweepModel& model, const SweepData& 
     for (std::size_t k = 0; k < items.size(); ++k) y[k] = drawn[items[k].parameter];
     if (f_r) y[items.size()] = nearby_resonance_hz(drawn, *f_r);
   };
-  const std::vector<ExtraTerm> extra = misfit_terms(model, items, f_r.value_or(std::nan("")), data.high_hz);
+  std::vector<ExtraTerm> extra = misfit_terms(model, items, f_r.value_or(std::nan("")), data.high_hz);
+  for (ExtraTerm& each : choice_terms(model, items, f_r)) extra.push_back(std::move(each));
   add_estimates(result, sweep_errors(model), sweep_fitted(model), outputs, function, extra, request.propagation);
   for (Estimate& each : result.estimates) {
     if (each.symbol != "R_ac") continue;
