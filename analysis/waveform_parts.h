@@ -17,7 +17,8 @@ struct WaveformPair {
 /// How one channel of one record looks at its ends.
 struct QuietEnds {
   bool quiet = false;         // both ends are small beside the burst
-  double variance = 0;        // of a sample there, about the mean of each end
+  double variance = 0;        // of a sample at rest
+  double samples = 0;         // that told it
   double tail = 0;            // what is left at the end beyond the level at the beginning and the noise: amplitude
   double peak = 0;            // of the burst over the level at the beginning
   std::size_t active = 0;     // samples that differ from it by more than a step of the converter and the noise

@@ -18,12 +18,14 @@ constexpr std::size_t kShortest = 128;         // samples of a segment
 constexpr std::size_t kUsual = 4096;           // a thousand points
 constexpr std::size_t kLongest = 65536;
 constexpr std::size_t kSegmentsInRecord = 16;  // at least: some thirty averages
-constexpr std::size_t kLowestBin = 3;          // below, the window still sees the offset and the slowest drifts
+constexpr std::size_t kLowestBin = 16;         // below, a window is too short to tell a slope from a level
 constexpr double kHighest = 0.4;               // of the sample rate
-constexpr double kLargestError = 0.15;
+constexpr double kLargestError = 0.08;
 constexpr double kLeastCoherence = 0.8;
 constexpr double kBiasCounts = 0.5;            // of the random error, r.m.s.: then longer segments are tried
 constexpr double kBiasIsNoError = 0.1;         // of |Z|: a point whose bias may be more is left out
+constexpr double kBiasKnown = 0.2;             // of the bias that is taken out: so much of it stays as an error
+constexpr double kBiasNoise = 0.05;            // of the square of a point's error: what segments half as long scatter
 constexpr double kNoiseKnown = 0.05;           // what a little leakage in the bins makes of the noise found from them
 constexpr double kTooRestless = 3.5, kTooSteady = 1.4;   // 2 is noise
 
@@ -53,7 +55,7 @@ TransferSpectra spectra_of(const std::vector<WaveformPair>& records, std::size_t
 std::vector<std::size_t> carrying(const TransferSpectra& s) {
   std::vector<std::size_t> kept;
   const auto last = static_cast<std::size_t>(kHighest * static_cast<double>(s.segment));
-  for (std::size_t k = kLowestBin + 1; k <= last; k += 2) {
+  for (std::size_t k = kLowestBin; k <= last; k += 2) {
     const double g = s.coherence(k);
     if (g > kLeastCoherence && random_error_of(g, s.averages()) < kLargestError) kept.push_back(k);
   }
@@ -109,29 +111,73 @@ struct Attempt {
   TransferSpectra spectra;
   std::vector<std::size_t> bins;
   Ratio ratio;
-  std::vector<Complex> bias;     // relative, smoothed
-  double bias_in_u = 0;          // r.m.s.
+  std::vector<Complex> bias;         // relative, to be taken out
+  std::vector<double> unexplained;   // what segments half as long show beyond it
+  double bias_in_u = 0;              // r.m.s. of that over the random error
 };
 
-/// A Hann window smears H over a bin or two: the bias is H'' of it over 6 T², four times as large in segments half as long.
-/// A third of the difference is therefore the bias of the longer ones; smoothed over neighbours, to be more than noise.
+/// Slope and curvature over ln(bin) of a logarithm around one of the bins: y = p t + q t², t = ln(k/k_i), through the point itself.
+struct Bend {
+  Complex p = 0, q = 0;
+};
+template <class Log>
+Bend bend_at(const std::vector<std::size_t>& bins, std::size_t i, const Log& log_ratio) {
+  constexpr std::size_t kReach = 5;
+  const std::size_t first = i < kReach ? 0 : i - kReach, end = std::min(bins.size(), i + kReach + 1);
+  double n = 0, t1 = 0, t2 = 0, t3 = 0, t4 = 0;
+  Complex y0 = 0, y1 = 0, y2 = 0;
+  for (std::size_t j = first; j < end; ++j) {
+    const double t = std::log(static_cast<double>(bins[j]) / static_cast<double>(bins[i]));
+    const Complex y = log_ratio(bins[j], bins[i]);
+    n += 1, t1 += t, t2 += t * t, t3 += t * t * t, t4 += t * t * t * t;
+    y0 += y, y1 += t * y, y2 += t * t * y;
+  }
+  // Normal equations of a + p t + q t², by Cramer's rule.
+  const double d = n * (t2 * t4 - t3 * t3) - t1 * (t1 * t4 - t3 * t2) + t2 * (t1 * t3 - t2 * t2);
+  if (!(std::fabs(d) > 0)) return {};
+  return {(n * (y1 * t4 - t3 * y2) - y0 * (t1 * t4 - t3 * t2) + t2 * (t1 * y2 - y1 * t2)) / d,
+          (n * (t2 * y2 - y1 * t3) - t1 * (t1 * y2 - y1 * t2) + y0 * (t1 * t3 - t2 * t2)) / d};
+}
+
+/// A Hann window smears H over a bin or two, weighted by the current's spectrum S: to second order the relative bias is
+/// (H''/2 + H' S'/S)/(3 H) in units of bins. In segments half as long it is four times as large: a third of their difference tells
+/// the same, with more noise, and checks it.
 void add_bias(Attempt& a, const TransferSpectra& half) {
   const std::size_t count = a.bins.size();
-  std::vector<Complex> raw(count);
+  a.bias.resize(count);
+  a.unexplained.resize(count);
+  if (count < 8) return;
+  std::vector<Complex> rest(count);
+  const TransferSpectra& s = a.spectra;
   for (std::size_t i = 0; i < count; ++i) {
     const std::size_t k = a.bins[i];   // even: segments half as long have it too
-    raw[i] = (half.h1(k / 2) / a.spectra.h1(k) - 1.0) / 3.0;
+    const Bend h = bend_at(a.bins, i, [&s](std::size_t j, std::size_t at) { return std::log(s.h1(j) / s.h1(at)); });
+    const Bend power = bend_at(a.bins, i, [&s](std::size_t j, std::size_t at) { return Complex(std::log(s.xx[j] / s.xx[at])); });
+    const double square = 3.0 * static_cast<double>(k) * static_cast<double>(k);
+    a.bias[i] = ((h.p * h.p - h.p + 2.0 * h.q) / 2.0 + h.p * power.p) / square;
+    rest[i] = (half.h1(k / 2) / s.h1(k) - 1.0) / 3.0 - a.bias[i];
   }
   constexpr std::size_t kReach = 3;
   double sum = 0;
-  a.bias.resize(count);
   for (std::size_t i = 0; i < count; ++i) {
     const std::size_t first = i < kReach ? 0 : i - kReach, end = std::min(count, i + kReach + 1);
-    for (std::size_t k = first; k < end; ++k) a.bias[i] += raw[k] / static_cast<double>(end - first);
-    const double u = random_error_of(a.spectra.coherence(a.bins[i]), a.spectra.averages());
-    sum += std::norm(a.bias[i]) / (2 * u * u + 1e-14);
+    Complex mean = 0;
+    for (std::size_t k = first; k < end; ++k) mean += rest[k] / static_cast<double>(end - first);
+    const double u = random_error_of(s.coherence(a.bins[i]), s.averages());
+    sum += std::norm(mean) / (2 * u * u + 1e-14);
+    // What may be chance counts for nothing.
+    a.unexplained[i] = std::sqrt(std::fmax(0, std::norm(mean) - 2 * kBiasNoise * u * u));
   }
-  a.bias_in_u = count == 0 ? 0 : std::sqrt(sum / static_cast<double>(count));
+  a.bias_in_u = std::sqrt(sum / static_cast<double>(count));
+}
+
+/// Random error of a point, from the mean over its neighbours: what lifts one bin by chance would lift its weight too.
+double random_error_near(const Attempt& a, std::size_t i) {
+  constexpr std::size_t kReach = 4;
+  const std::size_t first = i < kReach ? 0 : i - kReach, end = std::min(a.bins.size(), i + kReach + 1);
+  double square = 0;
+  for (std::size_t k = first; k < end; ++k) square += std::pow(random_error_of(a.spectra.coherence(a.bins[k]), a.spectra.averages()), 2);
+  return std::sqrt(square / static_cast<double>(end - first));
 }
 
 Attempt attempt(const std::vector<WaveformPair>& records, std::size_t segment) {
@@ -188,29 +234,27 @@ RatioPoints ratio_of_segments(const std::vector<WaveformPair>& records, double s
   }
   points.segment = segment;
   points.averages = a.spectra.averages();
-  RatioPoints::Shared bias{"segment length", "data", ErrorLaw::Kind::normal, {}};
   RatioPoints::Shared noise{"noise of the current", "data", a.ratio.law, {}};
   std::size_t left_out = 0;
   double worst_bias = 0;
   for (std::size_t i = 0; i < a.bins.size(); ++i) {
-    if (std::abs(a.bias[i]) > kBiasIsNoError) {
+    if (std::abs(a.bias[i]) + a.unexplained[i] > kBiasIsNoError) {
       ++left_out;
       continue;
     }
     const std::size_t k = a.bins[i];
     points.frequency_hz.push_back(static_cast<double>(k) / (static_cast<double>(segment) * step_s));
-    points.ratio.push_back(a.ratio.value[i]);
-    points.u.push_back(random_error_of(a.spectra.coherence(k), points.averages) + 1e-7);
-    bias.relative.push_back(a.bias[i]);
+    points.ratio.push_back(a.ratio.value[i] / (1.0 + a.bias[i]));
+    points.u.push_back(std::hypot(random_error_near(a, i), kBiasKnown * std::abs(a.bias[i]), a.unexplained[i]) + 1e-7);
     noise.relative.emplace_back(a.ratio.shared[i]);
-    worst_bias = std::max(worst_bias, std::abs(a.bias[i]));
+    worst_bias = std::max(worst_bias, a.unexplained[i]);
   }
-  points.shared = {bias, noise};
+  points.shared = {noise};
   const auto percent = [](double ratio) { return to_percent_text(ratio); };
   if (left_out > 0 || a.bias_in_u > kBiasCounts) {
     points.findings.push_back({"segment_bias", Severity::caution,
                                "segments of " + std::to_string(segment) + " samples and of half as many differ: the impedance changes within "
-                               "their resolution. The difference enters as an error of up to " + percent(worst_bias) +
+                               "their resolution. The errors are widened by up to " + percent(worst_bias) +
                                    (left_out > 0 ? ", and " + std::to_string(left_out) + " frequencies are left out" : std::string()) +
                                    "; a longer record resolves more",
                                about.volt_name, worst_bias, Unit::one});

@@ -16,13 +16,21 @@ using Complex = std::complex<double>;
 
 constexpr double kSmallAtRest = 0.1;       // of the burst's peak: noise of a steady signal is a quarter of its peak
 constexpr double kHighest = 0.4;           // of the sample rate: beyond, what folds back comes from just above
-constexpr double kLeastPower = 25;         // of a line over its noise, each channel
+// A line must stand out of its noise, by its neighbours' energy where the spectrum is smooth. Where it is not, by its own: noise
+// that lifts a line over the limit would make the impedance too small, so that limit lies where noise lifts little.
+constexpr double kLeastPower = 25, kLeastOwnPower = 100;
 constexpr double kLeastPerRecord = 5;      // where many are added up
-constexpr double kLargestError = 0.15;
+constexpr double kRough = 0.3;             // median of |line/neighbours - 1|: 0.7 for noise
+constexpr double kOutOfPlace = 0.3;        // of its neighbours: a line that is less stands in a gap
+constexpr std::size_t kNeighbours = 3;     // on either side
+constexpr double kLargestError = 0.05;      // beyond, the error of a ratio is no longer normal
 constexpr double kLargestFold = 0.1;
 constexpr double kCutTail = 0.02;          // of the peak
 constexpr std::size_t kMostPoints = 2000;
 constexpr double kRounding = 1e-7;         // of the transforms and of samples written with some digits
+
+/// Samples at each end of a record that tell its noise.
+std::size_t quiet_block(std::size_t samples) { return std::max<std::size_t>(16, samples / 100); }
 
 struct Level {
   double mean = 0, variance = 0, count = 0;
@@ -36,14 +44,41 @@ Level level_of(const double* from, std::size_t count) {
   return level;
 }
 
+/// Noise of a record, from as much of its beginning and end as is at rest: block after block, as long as level and scatter stay.
+struct QuietStretch {
+  double variance = 0, samples = 0;
+};
+QuietStretch quiet_stretch(const std::vector<double>& samples, std::size_t block, const Level& lead, const Level& tail) {
+  double squares = 0, dof = 0;
+  const auto walk = [&](const Level& from, const auto& place) {
+    const double sigma = std::sqrt(from.variance), n = from.count;
+    for (std::size_t k = 0; k < samples.size() / block / 2; ++k) {
+      const Level here = level_of(samples.data() + place(k), block);
+      const bool at_rest = here.variance <= from.variance * (1 + 6 * std::sqrt(2 / n)) && std::fabs(here.mean - from.mean) <= 6 * sigma / std::sqrt(n);
+      if (!at_rest) break;
+      squares += here.variance * (n - 1);
+      dof += n - 1;
+    }
+  };
+  walk(lead, [block](std::size_t k) { return k * block; });
+  // A tail that still swings is no measure of the noise.
+  if (tail.variance <= lead.variance * (1 + 5 * std::sqrt(2 / lead.count))) {
+    walk(tail, [&](std::size_t k) { return samples.size() - (k + 1) * block; });
+  }
+  return {squares / dof, dof};
+}
+
 /// Sums of the lines of all records, and what is known of their noise.
 struct Lines {
   std::vector<double> ii, vv;      // energies
   std::vector<Complex> iv;         // conj(I) V
+  std::vector<double> ii_near, vv_near;   // energies to be expected: means of the neighbours, or the lines' own
+  bool rough = false;
   double i_noise = 0, v_noise = 0; // energy of the noise in one line of one record
   double i_tail = 0, v_tail = 0;   // amplitude left at the end, root of the sum of squares
   double i_peak = 0, v_peak = 0;
   double records = 1;
+  double quiet = 0;                // samples that told the noise
 };
 
 /// Energy of the noise in one line: the quiet ends' variance in every sample, and the converter's rounding where the burst
@@ -67,6 +102,7 @@ Lines lines_of(const std::vector<WaveformPair>& records, const DrivenRecord& abo
     const QuietEnds v = look_at_ends(record.volts, about.volt_resolution), i = look_at_ends(record.amps, about.amp_resolution);
     lines.v_noise += noise_energy(v, about.volt_resolution, samples) / lines.records;
     lines.i_noise += noise_energy(i, about.amp_resolution, samples) / lines.records;
+    lines.quiet += std::min(v.samples, i.samples);
     lines.v_tail = std::hypot(lines.v_tail, v.tail);
     lines.i_tail = std::hypot(lines.i_tail, i.tail);
     lines.v_peak = std::max(lines.v_peak, v.peak);
@@ -81,14 +117,47 @@ Lines lines_of(const std::vector<WaveformPair>& records, const DrivenRecord& abo
   return lines;
 }
 
+/// Mean over the neighbours, without the line itself and line 0.
+std::vector<double> of_neighbours(const std::vector<double>& energy) {
+  std::vector<double> mean(energy.size());
+  for (std::size_t k = 1; k < energy.size(); ++k) {
+    const std::size_t first = k <= kNeighbours ? 1 : k - kNeighbours, end = std::min(energy.size(), k + kNeighbours + 1);
+    double sum = 0, count = 0;
+    for (std::size_t j = first; j < end; ++j) {
+      if (j == k) continue;
+      sum += energy[j];
+      count += 1;
+    }
+    mean[k] = count > 0 ? sum / count : energy[k];
+  }
+  return mean;
+}
+
+/// Which energies tell the errors: those of the neighbours keep the noise of a line out of its own weight.
+void look_around(Lines& lines) {
+  lines.ii_near = of_neighbours(lines.ii);
+  lines.vv_near = of_neighbours(lines.vv);
+  std::vector<double> away;
+  for (std::size_t k = 1; k < lines.ii.size(); ++k) {
+    if (lines.ii_near[k] > 400 * lines.records * lines.i_noise && lines.vv_near[k] > 400 * lines.records * lines.v_noise) {
+      away.push_back(std::fabs(lines.ii[k] / lines.ii_near[k] - 1));
+    }
+  }
+  lines.rough = away.size() >= 10 && median(away) > kRough;
+  if (!lines.rough) return;
+  lines.ii_near = lines.ii;
+  lines.vv_near = lines.vv;
+}
+
 /// Lines whose both channels stand out of their noise.
 std::vector<std::size_t> carrying(const Lines& lines) {
   std::vector<std::size_t> kept;
-  const double least = std::max(kLeastPower, kLeastPerRecord * lines.records);
+  const double least = std::max(lines.rough ? kLeastOwnPower : kLeastPower, kLeastPerRecord * lines.records);
   const auto last = static_cast<std::size_t>(kHighest * 2 * static_cast<double>(lines.ii.size() - 1));
   for (std::size_t k = 1; k < std::min(last, lines.ii.size()); ++k) {
-    const double v = lines.vv[k], i = lines.ii[k];
+    const double v = lines.vv_near[k], i = lines.ii_near[k];
     if (!(v > least * lines.v_noise) || !(i > least * lines.i_noise)) continue;
+    if (lines.ii[k] < kOutOfPlace * i || lines.vv[k] < kOutOfPlace * v) continue;
     if (std::sqrt((lines.v_noise / v + lines.i_noise / i) / 2) < kLargestError) kept.push_back(k);
   }
   return kept;
@@ -107,12 +176,13 @@ Groups grouped(const Lines& lines, const std::vector<std::size_t>& kept, std::si
   Groups groups;
   for (std::size_t at = 0; at < kept.size();) {
     const std::size_t first = kept[at];
-    double ii = 0, vv = 0, centre = 0, root = 0, count = 0;
+    double ii = 0, ii_near = 0, vv_near = 0, centre = 0, root = 0, count = 0;
     Complex iv = 0;
     for (; at < kept.size() && kept[at] < first + together; ++at) {
       const std::size_t k = kept[at];
       ii += lines.ii[k];
-      vv += lines.vv[k];
+      ii_near += lines.ii_near[k];
+      vv_near += lines.vv_near[k];
       iv += lines.iv[k];
       centre += lines.ii[k] * static_cast<double>(k);
       root += std::sqrt(lines.ii[k]);
@@ -120,7 +190,7 @@ Groups grouped(const Lines& lines, const std::vector<std::size_t>& kept, std::si
     }
     groups.line.push_back(centre / ii);
     groups.ratio.push_back(iv / (ii - (count - 1) * lines.i_noise));
-    groups.u.push_back(std::sqrt((lines.v_noise / vv + lines.i_noise / ii) / 2) + kRounding);
+    groups.u.push_back(std::sqrt((lines.v_noise / vv_near + lines.i_noise / ii_near) / 2) + kRounding);
     groups.per_amp.push_back(root / ii);
   }
   return groups;
@@ -161,21 +231,22 @@ std::vector<double> excess_scatter(const Groups& g) {
   return excess;
 }
 
-/// What folds back from beyond half the sample rate: the channel's level there, taken as the same on the other side.
-double folded_level(const std::vector<double>& energy, double noise) {
+/// What folds back from beyond half the sample rate: the channel's level there, taken as the same on the other side. Its noise is
+/// known from `quiet` samples; only what is clearly above it counts.
+double folded_level(const std::vector<double>& energy, double noise, double quiet) {
   const std::size_t first = energy.size() * 9 / 10;
   double sum = 0;
   for (std::size_t k = first; k < energy.size(); ++k) sum += energy[k];
-  const double mean = sum / static_cast<double>(energy.size() - first);
-  // The mean of the noise's own lines scatters; only what is clearly above it counts.
-  const double floor = noise * (1 + 3 / std::sqrt(static_cast<double>(energy.size() - first)));
+  const auto lines = static_cast<double>(energy.size() - first);
+  const double mean = sum / lines;
+  const double floor = noise * (1 + 5 * std::sqrt(1 / lines + 2 / quiet));
   return mean > floor ? std::sqrt(mean - noise) : 0;
 }
 
 }  // namespace
 
 QuietEnds look_at_ends(const std::vector<double>& samples, double resolution) {
-  const std::size_t count = samples.size(), block = std::max<std::size_t>(16, count / 100);
+  const std::size_t count = samples.size(), block = quiet_block(count);
   QuietEnds ends;
   if (count < 4 * block) return ends;
   const Level lead = level_of(samples.data(), block), tail = level_of(samples.data() + (count - block), block);
@@ -183,14 +254,12 @@ QuietEnds look_at_ends(const std::vector<double>& samples, double resolution) {
   const double small = kSmallAtRest * ends.peak;
   ends.quiet = ends.peak > 0 && lead.variance < small * small && tail.variance < small * small &&
                std::fabs(tail.mean - lead.mean) < small;
-  ends.variance = (lead.variance + tail.variance) / 2;
+  const QuietStretch noise = quiet_stretch(samples, block, lead, tail);
+  ends.variance = noise.variance;
+  ends.samples = noise.samples;
   // The end swings more than the beginning, or stands elsewhere: by more than chance.
   const double chance = 1 + 5 * std::sqrt(2 / lead.count);
-  double left = 0;
-  if (tail.variance > chance * lead.variance) {
-    left += std::sqrt(2 * (tail.variance - lead.variance));
-    ends.variance = lead.variance;
-  }
+  double left = tail.variance > chance * lead.variance ? std::sqrt(2 * (tail.variance - lead.variance)) : 0;
   const double step = std::fabs(tail.mean - lead.mean);
   const double rounding = resolution > 0 ? 0.5 * resolution : 0;
   if (step > 4 * std::sqrt(2 * ends.variance / lead.count) + rounding) left += step;
@@ -204,7 +273,7 @@ RatioPoints ratio_of_whole(const std::vector<WaveformPair>& records, double step
   RatioPoints points;
   points.segment = records.front().volts.size();
   points.averages = static_cast<double>(records.size());
-  const Lines lines = lines_of(records, about);
+  Lines lines = lines_of(records, about);
   for (const auto& [tail, peak, name] : {std::tuple{lines.v_tail, lines.v_peak, about.volt_name},
                                          std::tuple{lines.i_tail, lines.i_peak, about.amp_name}}) {
     if (!(tail > kCutTail * peak)) continue;
@@ -214,6 +283,7 @@ RatioPoints ratio_of_whole(const std::vector<WaveformPair>& records, double step
                                name, tail / peak, Unit::one});
     return points;
   }
+  look_around(lines);
   const std::vector<std::size_t> kept = carrying(lines);
   // As few points as keep the impedance straight between them.
   std::size_t together = (kept.size() + kMostPoints - 1) / kMostPoints;
@@ -225,7 +295,8 @@ RatioPoints ratio_of_whole(const std::vector<WaveformPair>& records, double step
     if (together <= 1 || *std::max_element(excess.begin(), excess.end()) == 1) break;
   }
   const double samples = static_cast<double>(records.front().volts.size());
-  const double v_fold = folded_level(lines.vv, lines.records * lines.v_noise), i_fold = folded_level(lines.ii, lines.records * lines.i_noise);
+  const double v_fold = folded_level(lines.vv, lines.records * lines.v_noise, lines.quiet),
+               i_fold = folded_level(lines.ii, lines.records * lines.i_noise, lines.quiet);
   RatioPoints::Shared tail{"cut tail", "data", ErrorLaw::Kind::normal, {}}, fold{"sharp edges", "data", ErrorLaw::Kind::normal, {}};
   double worst_fold = 0, worst_tail = 0, worst_excess = 1;
   for (std::size_t i = 0; i < groups.line.size(); ++i) {

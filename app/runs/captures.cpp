@@ -80,4 +80,10 @@ Result<CapturesRead> read_captures(const CaptureRequest& request, const RunConte
   return read;
 }
 
+void tell_unused_fixture(const BenchSetup& bench, std::vector<std::string>& notes) {
+  if (!bench.fixture_set) return;
+  notes.push_back("the bench sheet names the fixture set " + shown(*bench.fixture_set, 80) +
+                  ", which only sweeps use: here leads and contacts are part of the result");
+}
+
 }  // namespace coilassay

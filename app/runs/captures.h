@@ -5,6 +5,7 @@
 #include <string>
 #include <vector>
 
+#include "acquire/bench_sheet.h"
 #include "acquire/capture.h"
 #include "acquire/reader.h"
 #include "app/runs/context.h"
@@ -31,5 +32,8 @@ Result<Capture> chosen_capture(Recording recording, const std::string& file, con
 
 /// One capture per file. usage: standard input twice, and what chosen_capture() refuses.
 Result<CapturesRead> read_captures(const CaptureRequest& request, const RunContext& context);
+
+/// A test that does without a fixture set says so when the bench sheet names one, in the notes.
+void tell_unused_fixture(const BenchSetup& bench, std::vector<std::string>& notes);
 
 }  // namespace coilassay

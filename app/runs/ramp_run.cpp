@@ -21,6 +21,7 @@ Result<Measurement> run_ramp(const RampJob& job, const RunContext& context) {
   Result<CapturesRead> read = read_captures(
       {.files = {job.file}, .segment = job.segment, .reading = request.bench.reading, .test = "ramp"}, context);
   if (!read) return failure(read);
+  tell_unused_fixture(request.bench, read->notes);
   request.from_s = job.from_s;
   request.to_s = job.to_s;
   request.propagation = job.propagation;

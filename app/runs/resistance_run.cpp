@@ -60,6 +60,7 @@ Result<Measurement> run_resistance(const ResistanceJob& job, const RunContext& c
   Result<CapturesRead> read = read_captures(
       {.files = job.files, .segment = job.segment, .reading = request.bench.reading, .test = "resistance"}, context);
   if (!read) return failure(read);
+  tell_unused_fixture(request.bench, read->notes);
   Result<Measurement> measured = measure_resistance(read->captures, request);
   if (!measured) return measured;
   measured->advice.insert(measured->advice.end(), read->notes.begin(), read->notes.end());

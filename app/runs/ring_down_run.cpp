@@ -40,6 +40,7 @@ Result<Measurement> run_ring_down(const RingDownJob& job, const RunContext& cont
   Result<CapturesRead> read = read_captures(
       {.files = job.files, .segment = job.segment, .reading = bench->reading, .test = "ringdown"}, context);
   if (!read) return failure(read);
+  tell_unused_fixture(*bench, read->notes);
 
   RingDownRequest request;
   request.bench = std::move(*bench);

@@ -165,6 +165,7 @@ Result<Measurement> run_sine(const SineJob& job, const RunContext& context) {
   Result<CapturesRead> read = read_captures(
       {.files = job.files, .segment = job.segment, .reading = request.bench.reading, .test = "sine"}, context);
   if (!read) return failure(read);
+  tell_unused_fixture(request.bench, read->notes);
   Result<Measurement> measured = job.of_resistor               ? run_skew(job, request, read->captures.front(), context)
                                  : read->captures.size() == 1 ? measure_sine(read->captures.front(), request)
                                                               : measure_sine_points(read->captures, request);

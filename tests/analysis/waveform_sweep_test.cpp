@@ -62,7 +62,7 @@ TEST(WaveformSweep, AChirpThatIsCutIsRefusedAndSaysWhy) {
 }
 
 TEST(WaveformSweep, TheBandWithEnergyIsSaid) {
-  DrivenBurstBench b = noisy(BurstKind::chirp, 1e-1, 1e-3);
+  DrivenBurstBench b = noisy(BurstKind::chirp, 3e-2, 3e-4);
   b.from_hz = 200e3;
   b.to_hz = 2e6;
   const WaveformSweep w = swept(simulated_burst(b).capture, exact_burst_request(b));
