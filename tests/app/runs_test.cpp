@@ -290,6 +290,10 @@ TEST(Commands, LookAtEveryOptionTheyDeclare) {
       {"sweep", {folder.file("coil.csv", sweep_csv())}},
       {"gauge", {folder.file("gauge.csv", "part,operator,trial,value\n1,a,1,1\n1,a,2,2\n2,a,1,5\n2,a,2,7\n")}},
       {"simulate burst", {"-o", folder / "new-burst.csv"}},
+      {"fixture",
+       {"clips", "--short-inductance", "0", "-o", folder / "clips.toml", "--open",
+        folder.file("open.csv", "frequency [Hz],Re(Z) [ohm],Im(Z) [ohm]\n1e3,0,-1e8\n1e4,0,-1e7\n"), "--short",
+        folder.file("short.csv", "frequency [Hz],Re(Z) [ohm],Im(Z) [ohm]\n1e3,0.02,1e-4\n1e4,0.02,1e-3\n")}},
       {"inspect", {part, lot}},
   };
   for (const auto& [name, words] : lines) {
