@@ -127,7 +127,7 @@ OptionGroup files() {
           {{.name = "-o",
             .kind = ValueKind::file,
             .value_name = "NAME",
-            .help = "NAME.s2p or .s3p: a Touchstone file; any other: one table each connection, NAME-primary-open.csv ...",
+            .help = "NAME.s2p or .s3p: a Touchstone file; any other: one table each connection, NAME-primary-open.csv and so on",
             .example = "pair.s2p"},
            {.name = "--truth",
             .kind = ValueKind::file,
