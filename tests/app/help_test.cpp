@@ -112,7 +112,7 @@ std::string completed(const std::vector<std::string>& words) {
 
 TEST(Completion, OffersCommandsOptionsAndChoicesInBash) {
   EXPECT_EQ(completed({"coilassay", "ring"}), "ringdown\n");
-  EXPECT_EQ(completed({"coilassay", "simulate", ""}), "burst\ninstrument\nramp\nresistance\nringdown\nsine\nsweep\n");
+  EXPECT_EQ(completed({"coilassay", "simulate", ""}), "burst\ncoupled\ninstrument\nramp\nresistance\nringdown\nsine\nsweep\n");
   EXPECT_EQ(completed({"coilassay", "ringdown", "--capacitor-"}), "--capacitor-dissipation\n");
   EXPECT_EQ(completed({"coilassay", "ringdown", "x.csv", "--propagate", ""}), "first-order\ntrials\n");
   EXPECT_EQ(completed({"coilassay", "simulate", "ringdown", "--transient-"}), "--transient-time\n");
