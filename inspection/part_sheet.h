@@ -70,7 +70,6 @@ struct TestPlan {
   std::optional<std::size_t> port;
   bool from_waveform = false;
   std::optional<std::string> fixture;          // sweep: path of a fixture set
-  std::optional<std::string> saturation;       // sweep: path of a ramp's result document
   std::optional<std::string> dots;             // coupling: "same", "opposite"
   std::optional<StatedValue> link_inductance, link_resistance;
   std::vector<StatedValue> winding_resistances;

@@ -60,11 +60,10 @@ void read_what_is_across(SheetSection& section, TestPlan& test) {
   }
 }
 
-void read_sweep(SheetSection& section, TestPlan& test, const std::string& sheet_path) {
+void read_sweep(SheetSection& section, TestPlan& test) {
   test.connection = section.choice("connection", {"reflect", "series", "shunt"});
   if (const auto port = section.count("port", 1, 1000)) test.port = static_cast<std::size_t>(*port);
   test.from_waveform = section.flag("from_waveform").value_or(false);
-  test.saturation = read_path(section, "saturation", sheet_path);
 }
 
 void read_frequencies(SheetSection& section, TestPlan& test) {
@@ -137,7 +136,7 @@ TestPlan read_test_plan(SheetSection& section, const std::string& test_name, con
     read_frequencies(section, test);
     test.fixture = read_path(section, "fixture", sheet_path);
   }
-  if (is("sweep")) read_sweep(section, test, sheet_path);
+  if (is("sweep")) read_sweep(section, test);
   if (is("coupling")) read_coupling(section, test);
   if (is("resistance")) read_resistance(section, test);
   if (test.joint_captures() > 1 && test.repeats > 1) {

@@ -140,7 +140,7 @@ class Problems {
   void about_test(const TestPlan& test) {
     const bool used = std::any_of(sheet_.limits.begin(), sheet_.limits.end(), [&](const Limit& l) { return limit_uses(l, test); });
     if (!used) look(test.place, fmt::format("no limit is judged from the test {}", test.name), "take it out, or add a limit");
-    for (const auto& [what, path] : {std::pair{"bench sheet", test.bench}, {"fixture set", test.fixture}, {"ramp result", test.saturation}}) {
+    for (const auto& [what, path] : {std::pair{"bench sheet", test.bench}, {"fixture set", test.fixture}}) {
       std::error_code error;
       if (path && !std::filesystem::exists(*path, error)) {
         contradiction(test.place, fmt::format("the {} {} of the test {} is not there", what, shown(*path), test.name), "correct the path");

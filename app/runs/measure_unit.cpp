@@ -71,6 +71,7 @@ const std::array kKinds = {
          [](const UnitTest& test, const RunContext& context) {
            auto job = windowed(job_of_files<SweepJob>(test), test);
            job.at_hz = test.at_hz;
+           job.preparation = test.preparation;
            return run_sweep(job, context);
          }},
     Kind{"resistance", kMany,

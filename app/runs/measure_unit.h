@@ -10,6 +10,7 @@
 #include "analysis/budget.h"
 #include "analysis/measurement.h"
 #include "app/runs/context.h"
+#include "app/runs/sweep_preparation.h"
 #include "base/result.h"
 
 namespace coilassay {
@@ -25,6 +26,7 @@ struct UnitTest {
   std::vector<double> at_hz;                           // sweep: where the model is asked for values
   std::vector<StatedValue> dissipation_factors;        // ringdown: one for all capacitors, or one for each
   std::vector<StatedValue> biases;                     // sine: one for each capture
+  SweepPreparation preparation;                        // sweep: how the part hung on the ports
   std::optional<std::string> material;                 // resistance
   std::optional<StatedValue> temperature_coefficient;  // resistance
   PropagationOptions propagation;

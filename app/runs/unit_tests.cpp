@@ -110,6 +110,11 @@ UnitTest unit_test(const TestPlan& plan, const std::vector<double>& at_hz, std::
   test.to_s = plan.to_s;
   test.at_hz = at_hz;
   test.dissipation_factors = plan.dissipation_factors;
+  for (const Connection each : {Connection::reflect, Connection::series, Connection::shunt}) {
+    if (plan.connection == name(each)) test.preparation.connection = each;
+  }
+  test.preparation.port = plan.port;
+  test.preparation.from_waveform = plan.from_waveform;
   test.material = plan.material;
   test.temperature_coefficient = plan.temperature_coefficient;
   BenchSetup& stated = test.stated;

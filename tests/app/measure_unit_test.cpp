@@ -3,6 +3,10 @@
 
 #include <gmock/gmock.h>
 
+#include <complex>
+#include <numbers>
+#include <sstream>
+
 #include "app/runs/ring_down_run.h"
 #include "app/runs/simulate_ramp_run.h"
 #include "app/runs/simulate_resistance_run.h"
@@ -86,6 +90,30 @@ TEST(MeasureUnit, KnowsRampSineSweepAndResistance) {
     EXPECT_EQ(measured->test, kind);
     EXPECT_NE(measured->find(leading), nullptr) << kind;
   }
+}
+
+TEST(MeasureUnit, TakesASweepFromTheSeriesConnectionWhenTheSheetSaysSo) {
+  const TemporaryFolder folder;
+  // A two-port file of a part in series between 50 ohm ports: S21 = 2 Z0/(2 Z0 + Z), here for Z = 1 + j 2 pi f 100 uH.
+  std::string file = "# Hz S RI R 50\n";
+  for (double f = 1e4; f < 2e6; f *= 1.2) {
+    const std::complex<double> z(1, 2 * std::numbers::pi * f * 100e-6);
+    const std::complex<double> through = 100.0 / (100.0 + z), back = z / (100.0 + z);
+    std::ostringstream row;
+    row.precision(15);
+    row << f << ' ' << back.real() << ' ' << back.imag() << ' ' << through.real() << ' ' << through.imag() << ' ' << through.real() << ' '
+        << through.imag() << ' ' << back.real() << ' ' << back.imag() << '\n';
+    file += row.str();
+  }
+  UnitTest test;
+  test.kind = "sweep";
+  test.files = {folder.file("part.s2p", file)};
+  test.preparation.connection = Connection::series;
+  const auto measured = measure_unit(test, {});
+  ASSERT_TRUE(measured) << measured.error().finding;
+  const Estimate* inductance = measured->find("L");
+  ASSERT_NE(inductance, nullptr);
+  EXPECT_NEAR(inductance->quantity.value, 100e-6, 1e-6);
 }
 
 TEST(MeasureUnit, GivesTheSameDigitsWhenUnitsAreMeasuredAtOnce) {
