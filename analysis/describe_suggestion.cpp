@@ -8,6 +8,7 @@
 #include "analysis/describe_shapes.h"
 #include "analysis/describe_spectrum.h"
 #include "analysis/even_steps.h"
+#include "analysis/waveform_parts.h"
 #include "base/outside_text.h"
 
 namespace coilassay {
@@ -199,6 +200,20 @@ std::vector<DrivenPair> pairs_of(const Capture& capture, bool in_ampere) {
   return pairs;
 }
 
+/// Voltage and current that begin and end at rest, whatever they do between.
+std::optional<Likeness> burst(const Capture& capture, const DescribeOptions& options, DrivenPair pair) {
+  constexpr std::size_t kFewest = 256;
+  if (!capture.time.uniform() || !time_is_known(capture) || capture.samples() < kFewest) return std::nullopt;
+  for (const std::size_t place : {pair.voltage, pair.current}) {
+    const Channel& channel = capture.channels[place];
+    if (channel.missing > 0 || !look_at_ends(channel.samples, channel.resolution).quiet) return std::nullopt;
+  }
+  std::vector<std::string> words = pair_words(capture, pair);
+  words.push_back("--from-waveform");
+  return Likeness{std::nullopt, suggestion_of(capture.source, "sweep", "a burst of voltage and current between quiet ends", words,
+                                              joined(note_on_current(capture, pair), note_on_time(capture)), options)};
+}
+
 bool plain_everywhere(const std::string& word) {
   return !word.empty() && std::all_of(word.begin(), word.end(), [](char c) {
     return (c >= 'a' && c <= 'z') || (c >= 'A' && c <= 'Z') || (c >= '0' && c <= '9') ||
@@ -221,7 +236,13 @@ Likeness likely_test(const Capture& capture, const DescribeOptions& options) {
   for (const DrivenPair pair : pairs_of(capture, false)) {
     if (auto found = driven(capture, options, pair)) return *found;
   }
-  return swings.value_or(Likeness{});
+  if (swings) return *swings;
+  for (const bool in_ampere : {true, false}) {
+    for (const DrivenPair pair : pairs_of(capture, in_ampere)) {
+      if (auto found = burst(capture, options, pair)) return *found;
+    }
+  }
+  return Likeness{};
 }
 
 Suggestion likely_test(const Sweep& sweep, const DescribeOptions& options) {

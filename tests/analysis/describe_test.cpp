@@ -322,6 +322,18 @@ TEST(DescribeSuggestion, ReadingsOfBothPolaritiesAreAResistance) {
   EXPECT_EQ(d.suggestion.command, "coilassay resistance coil.csv --voltage V --current I");
 }
 
+TEST(DescribeSuggestion, AVoltageAndACurrentBetweenQuietEndsAreABurst) {
+  // A chirp of 60 periods with quiet before and after; the current lags and falls with frequency.
+  const Shape volts = [](double i) { return i < 500 || i > 3500 ? 0 : std::sin(kTurn * (i - 500) * (i - 500) / 150000); };
+  const Shape amps = [](double i) {
+    return i < 500 || i > 3500 ? 0 : -0.02 * std::cos(kTurn * (i - 500) * (i - 500) / 150000) * 300 / (i - 200);
+  };
+  const auto d = described(capture_of({channel_of("CH1", Unit::volt, record_of(5000, volts, 1e-3, 1)),
+                                       channel_of("CH2", Unit::ampere, record_of(5000, amps, 1e-5, 2))}));
+  EXPECT_EQ(d.suggestion.test, "sweep");
+  EXPECT_EQ(d.suggestion.command, "coilassay sweep coil.csv --voltage CH1 --current CH2 --from-waveform");
+}
+
 TEST(DescribeSuggestion, NothingIsMadeOfNoiseStepsAndDrifts) {
   const Shape silence = [](double) { return 0.0; };
   for (const Shape* shape : {&silence, &kOneStep, &kSquare, &kRamp}) {
