@@ -41,7 +41,7 @@ std::string help_of(const Option& option) {
 
 std::string overview(std::span<const Command> commands, const TextStyle& style) {
   std::string page =
-      painted("coilassay", style) + in_words(" measures inductors from captured waveforms.", style) + '\n';
+      painted("coilassay", style) + in_words(" measures inductors and judges them.", style) + '\n';
   page += heading("Commands", style);
   std::size_t widest = 0;
   for (const Command& command : commands) widest = std::max(widest, command.name.size());

@@ -41,7 +41,7 @@ std::string upper(std::string_view text) {
 
 std::string man_page(std::span<const Command> commands, std::string_view version) {
   std::string page = ".TH COILASSAY 1 \"\" \"coilassay " + std::string(version) + "\" \"coilassay\"\n";
-  page += ".SH NAME\ncoilassay \\- measures inductors from captured waveforms\n.SH SYNOPSIS\n";
+  page += ".SH NAME\ncoilassay \\- measures inductors and judges them\n.SH SYNOPSIS\n";
   for (const Command& command : commands) page += ".br\n" + roff(usage_of(command)) + '\n';
   for (const Command& command : commands) {
     page += ".SH " + roff(upper(command.name)) + "\n" + roff(command.summary) + ".\n.PP\n";

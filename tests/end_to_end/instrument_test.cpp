@@ -1,9 +1,11 @@
 // Instruments as the program's users meet them: simulate instrument, acquire, acquire --try.
 #include <gmock/gmock.h>
 #include <gtest/gtest.h>
+
 #include <sys/wait.h>
 #include <unistd.h>
 
+#include <algorithm>
 #include <csignal>
 #include <filesystem>
 #include <memory>
@@ -188,8 +190,12 @@ TEST(AcquireProgram, AnInstrumentThatIsGoneForGoodEndsItWithFourAndKeepsTheRows)
   const std::string file = kept / "run.csv";
   const std::string profile = kept.file("meter.toml", contents_of(meter->profile));
   BackgroundProgram running({"acquire", profile, "-o", file, "--every", "5ms", "--json"});
-  for (int i = 0; i < 400 && !std::filesystem::exists(file); ++i) std::this_thread::sleep_for(std::chrono::milliseconds(10));
-  std::this_thread::sleep_for(std::chrono::milliseconds(300));
+  // Until some readings are there, however long a busy machine takes for them.
+  const auto lines = [&] {
+    const std::string text = std::filesystem::exists(file) ? contents_of(file) : std::string();
+    return std::count(text.begin(), text.end(), '\n');
+  };
+  for (int i = 0; i < 3000 && lines() < 25; ++i) std::this_thread::sleep_for(std::chrono::milliseconds(10));
   meter.reset();
   const std::string out = running.rest();
   EXPECT_EQ(running.exit_code(), 4);
