@@ -125,7 +125,7 @@ Result<WaveformSweep> sweep_of_waveforms(std::span<const Capture> captures, cons
   WaveformSweep result;
   std::optional<DrivenRecord> about;
   std::vector<WaveformPair> records;
-  bool whole = true, complete = true;
+  bool volts_rest = true, amps_rest = true, complete = true;
   for (const Capture& capture : captures) {
     Result<DrivenRecord> record = driven_record(capture, request.bench, request.propagation);
     if (!record) return failure(record);
@@ -150,7 +150,8 @@ Result<WaveformSweep> sweep_of_waveforms(std::span<const Capture> captures, cons
     }
     complete = complete && !missing(pair.volts) && !missing(pair.amps);
     if (complete) {
-      whole = whole && look_at_ends(pair.volts, record->volt_resolution).quiet && look_at_ends(pair.amps, record->amp_resolution).quiet;
+      volts_rest = volts_rest && look_at_ends(pair.volts, record->volt_resolution).quiet;
+      amps_rest = amps_rest && look_at_ends(pair.amps, record->amp_resolution).quiet;
     }
     records.push_back(std::move(pair));
     if (!about) about = std::move(*record);
@@ -166,7 +167,15 @@ Result<WaveformSweep> sweep_of_waveforms(std::span<const Capture> captures, cons
            about->volt_name, static_cast<double>(records.front().volts.size()));
     return result;
   }
-  whole = whole && complete;
+  if (complete && volts_rest != amps_rest) {
+    refuse(result, "burst_cut",
+           volts_rest ? "the voltage begins and ends at rest, and the current does not: the coil is not discharged at the end of the record; make it "
+                        "longer, or let a resistance discharge the coil"
+                      : "the current begins and ends at rest, and the voltage does not: capture the burst whole, with a quiet stretch before and after",
+           volts_rest ? about->amp_name : about->volt_name);
+    return result;
+  }
+  const bool whole = volts_rest && amps_rest && complete;
   result.method = whole ? "whole record" : "averaged segments";
   finish(result, whole ? ratio_of_whole(records, about->step_s, *about) : ratio_of_segments(records, about->step_s, *about), *about);
   if (result.sweep) {

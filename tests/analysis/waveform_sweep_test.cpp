@@ -160,6 +160,13 @@ TEST(WaveformSweep, SharpEdgesACutTailAndClippingAreFound) {
   EXPECT_FALSE(cut.sweep);
   EXPECT_NE(finding(cut, "burst_cut"), nullptr);
 
+  b = noisy(BurstKind::pulse, 1e-4, 1e-6);
+  b.source_ohm = 0.01;   // L/R of 0.2 ms: the current stays
+  const WaveformSweep charged = swept(simulated_burst(b).capture, exact_burst_request(b));
+  EXPECT_FALSE(charged.sweep);
+  ASSERT_NE(finding(charged, "burst_cut"), nullptr);
+  EXPECT_THAT(finding(charged, "burst_cut")->message, testing::HasSubstr("the coil is not discharged"));
+
   b = noisy(BurstKind::pulse, 1e-3, 1e-5);
   b.bits = 12;
   b.current_full_scale_a = 0.01;
