@@ -79,9 +79,11 @@ void add_accuracy(SweepData& data, const Sweep& sweep, const SweepRequest& reque
     const double r = points.reference_ohm;
     // A transmission is worth twice a reflection of the reference that stands for it (one_port_of).
     const double worth = sweep.as_read == "S21" ? r : 2 * r;
+    data.scatter_s = sweep_defaults::kPointToPoint * s.half_width * (2 * r / worth) / std::sqrt(3.0);
     add_pair(data.errors, "accuracy of S", "accuracy of S", s, points, [r, worth](Complex z) { return (z + r) * (z + r) / worth; });
   } else {
     const Accuracy a = accuracy_of(stated.ratio, sweep_defaults::kAccuracyRatio, "±0.5 % of an analyser without its data sheet", request);
+    data.scatter_ratio = sweep_defaults::kPointToPoint * a.half_width / std::sqrt(3.0);
     add_pair(data.errors, "accuracy", "accuracy of the angle", a, points, [](Complex z) { return z; });
   }
   add_pair(data.errors, "series floor", "series floor", accuracy_of(stated.series_floor, 0, "", request), points,

@@ -16,6 +16,7 @@ struct SweepData {
   std::vector<std::size_t> index;            // of each in the sweep
   std::vector<std::string> left_out;         // "1.000 MHz: marked as bad"
   std::vector<ImpedanceErrorTerm> errors;    // as in the request, and the accuracy of the analyser; dz_ohm by point of `points`
+  double scatter_ratio = 0, scatter_s = 0;   // of each point for itself, by the accuracy: of ln Z, or of S; standard deviations
   bool has_phase = true;
   bool scattering = false;                   // the file holds S
   double low_hz = 0, high_hz = 0;
@@ -26,6 +27,7 @@ namespace sweep_defaults {
 inline constexpr double kAccuracyRatio = 0.005;   // of Z: a hand-held meter, an analyser without its data sheet
 inline constexpr double kScattering = 0.01;       // of S: what is left after an ordinary calibration
 inline constexpr double kFrequencyRatio = 100e-6; // a poor crystal
+inline constexpr double kPointToPoint = 0.1;      // share of it that may differ from point to point
 inline constexpr double kWandering = 0.5;         // share of a stated accuracy that may differ from decade to decade
 }  // namespace sweep_defaults
 

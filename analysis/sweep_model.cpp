@@ -270,21 +270,35 @@ void share_weights(SweepModel& model) {
   for (SweepModel::Alternative& each : model.alternatives) each.weight /= sum;
 }
 
-/// Points with their noise as standard deviations, by differences of neighbouring residuals.
-CircuitData with_noise(const SweepModel& model) {
+/// Points with their noise as standard deviations: by differences of neighbouring residuals, and what the analyser's error may
+/// differ from point to point.
+CircuitData with_noise(const SweepModel& model, const SweepData& data) {
   CircuitData points = model.points;
-  if (points.scale_known) return points;
-  const double noise = std::fmax(noise_profile(model.fit).all * model.fit.scale, 1e-300);
-  for (double& u : points.u) u *= noise;
-  for (double& u : points.u_phase) u *= noise;
-  points.scale_known = true;
+  if (!points.scale_known) {
+    const double noise = std::fmax(noise_profile(model.fit).all * model.fit.scale, 1e-300);
+    for (double& u : points.u) u *= noise;
+    for (double& u : points.u_phase) u *= noise;
+    points.scale_known = true;
+  }
+  if (!(data.scatter_ratio > 0) && !(data.scatter_s > 0)) return points;
+  if (points.u.size() == 1) points.u.assign(points.size(), points.u.front());
+  if (points.u_phase.size() == 1) points.u_phase.assign(points.size(), points.u_phase.front());
+  for (std::size_t i = 0; i < points.size(); ++i) {
+    const Complex z = points.z[i], sum = z + points.reference_ohm;
+    const double s_by_ratio = std::abs(2 * points.reference_ohm * z / (sum * sum));
+    const bool reflection = model.alike == SweepErrors::reflection;
+    const double own = reflection ? std::hypot(data.scatter_s, data.scatter_ratio * s_by_ratio)
+                                  : std::hypot(data.scatter_ratio, data.scatter_s / s_by_ratio);
+    points.u[i] = std::hypot(points.u[i], own);
+    if (!points.u_phase.empty()) points.u_phase[i] = std::hypot(points.u_phase[i], own);
+  }
   return points;
 }
 
 /// The choice once more, together with the errors the points share: what those can do to the points is no element.
-void choose_jointly(SweepModel& model) {
+void choose_jointly(SweepModel& model, const SweepData& data) {
   if (model.errors.empty()) return;
-  const CircuitData points = with_noise(model);
+  const CircuitData points = with_noise(model, data);
   const JointProblem problem{points, model.fit.used, model.errors};
   CircuitData rest = points;
   for (const std::size_t i : model.outliers) rest.z[i] = std::nan("");
@@ -373,7 +387,7 @@ Result<SweepModel> fit_sweep(const SweepData& data, const SweepRequest& request)
   model.errors = data.errors;
   ImpedanceErrorTerm frequency = frequency_error(data, model.fit.circuit, request);
   if (!frequency.basis.empty()) model.errors.push_back(std::move(frequency));
-  choose_jointly(model);
+  choose_jointly(model, data);
   if (!model.jointly) keep_alternatives(model);
   share_weights(model);
   judge_residuals(model);

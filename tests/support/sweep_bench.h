@@ -33,10 +33,11 @@ inline synthetic::CoilSweepBench draw_coil(Random& random, double noise) {
   return b;
 }
 
-/// What the analyser of a trial is off by: constant and wandering parts as docs/uncertainty.md has them.
+/// What the analyser of a trial is off by: constant, wandering and scattered parts as docs/uncertainty.md has them.
 struct DrawnErrors {
   std::complex<double> constant = 0;
   std::vector<std::complex<double>> nodes;
+  std::vector<std::complex<double>> points;
   double frequency = 0;
 };
 
@@ -46,6 +47,7 @@ inline DrawnErrors draw_errors(Random& random, double accuracy, double frequency
   errors.constant = accuracy * std::complex<double>(part(), part());
   const auto nodes = static_cast<std::size_t>(std::fmax(1, std::round(std::log10(b.stop_hz / b.start_hz)))) + 1;
   for (std::size_t k = 0; k < nodes; ++k) errors.nodes.push_back(accuracy / 2 * std::complex<double>(part(), part()));
+  for (std::size_t i = 0; i < b.points; ++i) errors.points.push_back(accuracy / 10 * std::complex<double>(part(), part()));
   errors.frequency = frequency * part();
   return errors;
 }
@@ -59,7 +61,7 @@ inline Sweep seen_with(const DrawnErrors& errors, const synthetic::CoilSweepBenc
     const double at = std::log(f / b.start_hz) / span * static_cast<double>(errors.nodes.size() - 1);
     const auto k = std::min(static_cast<std::size_t>(std::fmax(at, 0)), errors.nodes.size() - 2);
     const double t = at - static_cast<double>(k);
-    const std::complex<double> ratio = 1.0 + errors.constant + (1 - t) * errors.nodes[k] + t * errors.nodes[k + 1];
+    const std::complex<double> ratio = 1.0 + errors.constant + (1 - t) * errors.nodes[k] + t * errors.nodes[k + 1] + errors.points[i];
     sweep.z_ohm[i][0] *= ratio * synthetic::coil_impedance(b, f * (1 + errors.frequency)) / synthetic::coil_impedance(b, f);
   }
   return sweep;
