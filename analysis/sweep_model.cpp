@@ -231,7 +231,7 @@ Result<void> choose(SweepModel& model, const SweepData& data, const CircuitChoic
   return {};
 }
 
-/// Families for the joint choice: those of one resonance, and with a second one what the first choice had of them.
+/// Families for the joint choice: the usual ones, and of those with a second resonance or two laws what the first choice had.
 std::vector<CircuitFamily> joint_families(const std::vector<CircuitCandidate>& tried) {
   std::vector<CircuitFamily> families;
   for (const bool loss : {false, true}) {
@@ -240,7 +240,8 @@ std::vector<CircuitFamily> joint_families(const std::vector<CircuitCandidate>& t
     families.push_back({.parallel_loss = loss, .relaxation = true});
   }
   for (const CircuitCandidate& each : tried) {
-    if (each.family.second_resonance) families.push_back(each.family);
+    const CircuitFamily& family = each.family;
+    if (family.second_resonance || (family.skin && family.relaxation)) families.push_back(family);
   }
   return families;
 }

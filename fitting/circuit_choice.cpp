@@ -158,6 +158,15 @@ Result<Tried> try_families(const CircuitData& data, const CircuitChoiceOptions& 
   rank(tried);
   if (!options.families.empty() || !shows_structure(data, tried.fits[tried.best])) return tried;
 
+  // Skin and relaxation together (a winding of thick wire over a core) where one of them is not enough.
+  for (const bool loss : {false, true}) {
+    Result<CircuitFit> both = fit_family(data, {.parallel_loss = loss, .skin = true, .relaxation = true}, options, tried);
+    if (both && criterion_of(data, *both) < tried.candidates[tried.best].criterion) {
+      add(data, std::move(*both), tried);
+      rank(tried);
+    }
+  }
+  if (!shows_structure(data, tried.fits[tried.best])) return tried;
   // The second tank is looked for from the best circuit of one resonance; only where it pays do all families get one.
   CircuitFamily with = tried.candidates[tried.best].family;
   with.second_resonance = true;

@@ -113,8 +113,9 @@ struct CircuitChoice {
 
 struct CircuitChoiceOptions {
   double reference_hz = 0;
-  std::vector<CircuitFamily> families{};  // empty: R L C with any of no AC law, skin, relaxation, with and without parallel loss,
-                                          // and with a second resonance where the residuals of the best of them show it
+  std::vector<CircuitFamily> families{};  // empty: R L C with any of no AC law, skin, relaxation, with and without parallel loss;
+                                          // where the residuals of the best of them hang together, skin and relaxation together,
+                                          // and where they still do, each with a second resonance
   bool leave_out = true;                  // the robust second pass
 };
 

@@ -23,6 +23,7 @@ constexpr std::size_t kMostRounds = 40;
 constexpr std::size_t kRow = 2;                // points off together that may be a resonance
 constexpr std::size_t kMostResonances = 4;
 constexpr double kPlainGain = 20;              // of chi-square
+constexpr double kLeftOver = 0.1;              // of the circuit's misfit
 constexpr double kLeastRest = 0.02;           // variance a residual must keep to say anything
 
 /// More elements while chi-square falls by more than ln n for each, and while mu leaves room.
@@ -95,25 +96,28 @@ double likeness_probability(const std::vector<Complex>& residuals) {
 
 struct Judged {
   CausalSolution solved;
-  double sigma = 1;
+  double sigma = 1;       // of the errors
+  double spread = 1;      // of the errors and of what a limited number of elements leaves
 };
 
 /// Takes out points that lie off, the worst first, until none does.
-Judged judge(CausalEquations& equations, std::vector<bool>& used, bool scale_known) {
+Judged judge(CausalEquations& equations, std::vector<bool>& used, bool scale_known, double left_over) {
   Judged now;
   const double limit = worst_by_chance(used.size(), kFalseAlarms, scale_known);
   for (std::size_t round = 0; round < kMostRounds; ++round) {
     now.solved = grown(equations, used, scale_known);
     if (!scale_known) now.sigma = neighbour_noise(even_residuals(now.solved, used));
-    if (!(now.sigma > 0)) break;
+    if (!(now.sigma >= 0)) break;
+    now.spread = std::hypot(now.sigma, left_over);
+    if (!(now.spread > 0)) break;
     double worst = limit;
     for (std::size_t i = 0; i < used.size(); ++i) {
-      if (used[i]) worst = std::fmax(worst, surprise(now.solved, i, now.sigma));
+      if (used[i]) worst = std::fmax(worst, surprise(now.solved, i, now.spread));
     }
     std::size_t removed = 0;
     for (std::size_t i = 0; i < used.size(); ++i) {
       // Those much like the worst go with it; lesser ones may only be in its shadow.
-      if (used[i] && surprise(now.solved, i, now.sigma) > std::fmax(limit, 0.3 * worst)) used[i] = false, ++removed;
+      if (used[i] && surprise(now.solved, i, now.spread) > std::fmax(limit, 0.3 * worst)) used[i] = false, ++removed;
     }
     if (removed == 0 || std::count(used.begin(), used.end(), true) < static_cast<std::ptrdiff_t>(kFewestPoints)) break;
   }
@@ -164,7 +168,7 @@ bool add_resonance(CausalEquations& equations, const std::vector<bool>& used, st
     if (!better) step *= 0.4;
   }
   const double n = 2 * static_cast<double>(used.size());
-  if (before - least < (4 * std::log(n) + kPlainGain) * now.sigma * now.sigma) return false;
+  if (before - least < (4 * std::log(n) + kPlainGain) * now.spread * now.spread) return false;
   equations.add_resonance(best);
   return true;
 }
@@ -189,14 +193,18 @@ Result<KramersKronig> test_kramers_kronig(const CircuitData& data, const std::op
   CausalEquations equations(data, points, *circuit);
   std::vector<bool> used(points.size(), true);
   KramersKronig result;
-  Judged judged = judge(equations, used, data.scale_known);
+  // The chain follows what the circuit misses only so well: errors far below the circuit's own are not its matter.
+  std::vector<double> missed;
+  for (std::size_t i = 0; i < points.size(); ++i) missed.push_back(equations.y().segment<2>(CausalEquations::row(i)).norm());
+  const double left_over = kLeftOver * median(missed) + equations.rounding();
+  Judged judged = judge(equations, used, data.scale_known, left_over);
   // Several neighbours off together may be a resonance that the circuit lacks, and causal all the same.
   for (std::size_t k = 0; k < kMostResonances; ++k) {
     const auto row = longest_row(used);
     if (row.second == row.first || 4 * (row.second - row.first) > used.size()) break;
     for (std::size_t i = row.first; i < row.second; ++i) used[i] = true;
     const bool added = add_resonance(equations, used, row, judged);
-    judged = judge(equations, used, data.scale_known);
+    judged = judge(equations, used, data.scale_known, left_over);
     if (!added) break;
   }
   const CausalSolution& solved = judged.solved;
@@ -216,7 +224,9 @@ Result<KramersKronig> test_kramers_kronig(const CircuitData& data, const std::op
   result.chi_square = solved.chi;
   result.dof = solved.dof;
   result.scale = sigma;
-  result.probability = likeness_probability(even_residuals(solved, used));
+  // Likeness of neighbours says something where the residuals are more than what the chain leaves.
+  const bool told = solved.chi > 4 * solved.dof * left_over * left_over;
+  result.probability = told ? likeness_probability(even_residuals(solved, used)) : 1;
   if (data.scale_known) result.probability = std::fmin(1, 2 * std::fmin(result.probability, f_upper_tail(solved.chi / solved.dof, solved.dof, HUGE_VAL)));
   result.passed = result.not_causal.empty() && result.probability >= kFalseAlarms;
   return result;

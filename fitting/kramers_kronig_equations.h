@@ -2,6 +2,7 @@
 #pragma once
 
 #include <Eigen/Core>
+#include <cmath>
 #include <complex>
 #include <cstddef>
 #include <vector>
@@ -36,6 +37,7 @@ class CausalEquations {
   /// Half the logarithm of the ratio of the neighbours' frequencies.
   double spacing(std::size_t i) const;
   const Eigen::VectorXd& y() const { return y_; }
+  double rounding() const { return std::sqrt(equations_.rounding() / static_cast<double>(size())); }   // of a residual
   std::complex<double> unwhitened(std::size_t i, std::complex<double> r) const { return equations_.unwhitened(i, r); }
 
   /// Columns: a constant and two for what lies outside the sweep, the logarithms of the circuit's parameters, the resonances;
