@@ -16,6 +16,7 @@ namespace {
 constexpr double kFalseAlarms = 1e-3;      // sweeps that lose a point by chance
 constexpr std::size_t kMostRounds = 5;
 constexpr double kMostLeftOut = 0.2;       // share of the points: with more it is not single points that are wrong
+constexpr double kLeastError = 1e-5;       // of ln z or S
 constexpr double kFarOff = 0.7;            // of ln |z|: some five times this, a factor of 50, is far
 constexpr std::size_t kFewPoints = 51;
 constexpr std::size_t kSinglePoints = 3;   // as many neighbours may be wrong together; more are a feature of the curve
@@ -203,11 +204,15 @@ std::vector<std::size_t> outliers(const CircuitData& data, std::span<const std::
   if (data.scale_known) sigma = std::isnan(sigma) ? 1 : std::fmax(sigma, 1);
   std::vector<std::size_t> list;
   if (!(sigma > 0)) return list;
+  const CircuitEquations equations(data, points, false);
   const auto out = standing_out(residuals, sigma, data.scale_known, kFalseAlarms);
   for (std::size_t a = 0, b = 0; a < out.size(); a = b) {
     while (b < out.size() && out[b] == out[a] + (b - a)) ++b;
     if (b - a > kSinglePoints) continue;
-    for (std::size_t k = a; k < b; ++k) list.push_back(points[out[k]]);
+    for (std::size_t k = a; k < b; ++k) {
+      // The last digits of a file are no bad points, however quiet their neighbours.
+      if (std::abs(equations.unwhitened(out[k], residuals[out[k]])) > kLeastError) list.push_back(points[out[k]]);
+    }
   }
   std::sort(list.begin(), list.end());
   return list;

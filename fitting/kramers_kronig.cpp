@@ -24,6 +24,7 @@ constexpr std::size_t kRow = 2;                // points off together that may b
 constexpr std::size_t kMostResonances = 4;
 constexpr double kPlainGain = 20;              // of chi-square
 constexpr double kLeftOver = 0.1;              // of the circuit's misfit
+constexpr double kLeastError = 1e-5;            // of ln z or S: less is no finding
 constexpr double kLeastRest = 0.02;           // variance a residual must keep to say anything
 
 /// More elements while chi-square falls by more than ln n for each, and while mu leaves room.
@@ -110,14 +111,18 @@ Judged judge(CausalEquations& equations, std::vector<bool>& used, bool scale_kno
     if (!(now.sigma >= 0)) break;
     now.spread = std::hypot(now.sigma, left_over);
     if (!(now.spread > 0)) break;
+    std::vector<double> off(used.size(), 0);   // of points not used, and of those that only differ in the last digits of a file: 0
     double worst = limit;
     for (std::size_t i = 0; i < used.size(); ++i) {
-      if (used[i]) worst = std::fmax(worst, surprise(now.solved, i, now.spread));
+      const Eigen::Index r = CausalEquations::row(i);
+      if (!used[i] || std::abs(equations.unwhitened(i, {now.solved.residual[r], now.solved.residual[r + 1]})) < kLeastError) continue;
+      off[i] = surprise(now.solved, i, now.spread);
+      worst = std::fmax(worst, off[i]);
     }
     std::size_t removed = 0;
     for (std::size_t i = 0; i < used.size(); ++i) {
       // Those much like the worst go with it; lesser ones may only be in its shadow.
-      if (used[i] && surprise(now.solved, i, now.spread) > std::fmax(limit, 0.3 * worst)) used[i] = false, ++removed;
+      if (off[i] > std::fmax(limit, 0.3 * worst)) used[i] = false, ++removed;
     }
     if (removed == 0 || std::count(used.begin(), used.end(), true) < static_cast<std::ptrdiff_t>(kFewestPoints)) break;
   }
