@@ -7,6 +7,7 @@
 #include <map>
 
 #include "acquire/reader.h"
+#include "app/runs/measure_unit.h"
 #include "base/digest.h"
 #include "base/outside_text.h"
 #include "base/sheet.h"
@@ -36,7 +37,8 @@ std::vector<std::string_view> pieces_of(std::string_view name) {
 
 struct CaptureName {
   std::string serial, test;
-  int number = 0;  // 0: not numbered
+  int number = 0;    // 0: not numbered
+  std::string item;  // "primary_open"; empty for all other tests
 };
 
 /// What a file name says; nothing when it names no test.
@@ -49,6 +51,8 @@ std::optional<CaptureName> capture_name(const std::string& file, std::span<const
     name.serial = file.substr(0, static_cast<std::size_t>(pieces[i].data() - file.data()) - 1);
     name.test = pieces[i];
     if (i + 2 < pieces.size() && is_number(pieces[i + 1])) name.number = std::stoi(std::string(pieces[i + 1]));
+    const std::optional<CouplingItem> item = coupling_item_of(file.substr(name.serial.size()));
+    if (item) name.item = coilassay::name(*item);
     return name.serial.empty() ? std::nullopt : std::optional(name);
   }
   return std::nullopt;
@@ -82,12 +86,13 @@ void tell_strays(LotFolder& lot, std::span<const std::string_view> tests) {
                           lot.strays.front(), static_cast<double>(lot.strays.size()), Unit::one});
 }
 
-/// Captures of one place, a number each.
-using Numbered = std::multimap<int, std::string>;
+/// Captures of one place, a number or the item of a coupling each.
+using Place = std::pair<int, std::string>;
+using Numbered = std::multimap<Place, std::string>;
 
 UnitCaptures captures_of(const std::string& serial, const std::string& test, const Numbered& numbered) {
   UnitCaptures captures{test, {}, std::nullopt};
-  for (const auto& [number, path] : numbered) captures.files.push_back(path);
+  for (const auto& [place, path] : numbered) captures.files.push_back(path);
   for (auto it = numbered.begin(); it != numbered.end(); ++it) {
     const auto next = std::next(it);
     if (next == numbered.end() || next->first != it->first) continue;
@@ -122,7 +127,7 @@ Result<LotFolder> lot_of_names(const std::string& path, std::span<const std::str
     if (passed_over(entry)) continue;
     const std::string file = entry.path().filename().string();
     if (const auto name = capture_name(file, tests)) {
-      found[name->serial][name->test].emplace(name->number, entry.path().string());
+      found[name->serial][name->test].emplace(Place{name->number, name->item}, entry.path().string());
     } else {
       lot.strays.push_back(file);
     }
@@ -291,12 +296,12 @@ std::string end_of_file(const std::string& path) {
 }  // namespace
 
 Result<void> find_same_captures(LotFolder& lot) {
-  struct Place {
+  struct SeenCapture {
     LotUnit* unit;
     UnitCaptures* captures;
     std::string file;
   };
-  std::map<std::uintmax_t, std::vector<Place>> by_size;
+  std::map<std::uintmax_t, std::vector<SeenCapture>> by_size;
   for (LotUnit& unit : lot.units) {
     for (UnitCaptures& captures : unit.tests) {
       for (const std::string& file : captures.files) {
@@ -309,18 +314,18 @@ Result<void> find_same_captures(LotFolder& lot) {
   }
   for (auto& [size, places] : by_size) {
     if (places.size() < 2) continue;
-    std::map<std::string, std::vector<Place>> by_end, by_digest;
-    for (const Place& place : places) by_end[end_of_file(place.file)].push_back(place);
+    std::map<std::string, std::vector<SeenCapture>> by_end, by_digest;
+    for (const SeenCapture& place : places) by_end[end_of_file(place.file)].push_back(place);
     for (const auto& [end, alike] : by_end) {
       if (alike.size() < 2) continue;
-      for (const Place& place : alike) {
+      for (const SeenCapture& place : alike) {
         if (const Result<std::string> digest = digest_of_file(place.file)) by_digest[*digest].push_back(place);
       }
     }
     for (const auto& [digest, same] : by_digest) {
       if (same.size() < 2) continue;
-      for (const Place& place : same) {
-        const Place& other = place.file == same[0].file ? same[1] : same[0];
+      for (const SeenCapture& place : same) {
+        const SeenCapture& other = place.file == same[0].file ? same[1] : same[0];
         if (other.unit == place.unit && same.size() == 2) {
           place.captures->trouble =
               Error{Problem::ambiguous, place.file,
@@ -338,7 +343,7 @@ Result<void> find_same_captures(LotFolder& lot) {
       }
       if (same[0].unit == same[1].unit && same.size() == 2) continue;
       std::string names;
-      for (const Place& place : same) names += (names.empty() ? "" : " and ") + shown(place.unit->serial, 60);
+      for (const SeenCapture& place : same) names += (names.empty() ? "" : " and ") + shown(place.unit->serial, 60);
       lot.findings.push_back({"duplicate_serial", Severity::caution,
                               "one capture stands under the serials " + names +
                                   ": none of them is judged by it; capture them again",

@@ -36,7 +36,7 @@ struct LotFolder {
 };
 
 /// Reads the names in a folder: `<serial>.<test>.<ext>`, or `<serial>.<test>.<n>.<ext>` where a test takes several captures
-/// (`0017.ramp.csv`, `0017.ringdown.2.csv.gz`); a file `lot.toml` in it (or given in place of the folder) lists the units
+/// (`0017.ramp.csv`, `0017.ringdown.2.csv.gz`), and of coupling what it shows (`0017.coupling.primary_open.csv`); a file `lot.toml` in it (or given in place of the folder) lists the units
 /// instead. No capture is opened. Hidden files, folders and sheets are passed over without a word; every other file that fits no unit is a stray.
 ///
 /// @param tests  the kinds of test a name may have

@@ -2,7 +2,9 @@
 
 #include <algorithm>
 #include <array>
+#include <filesystem>
 
+#include "app/runs/coupling_run.h"
 #include "app/runs/ramp_run.h"
 #include "app/runs/resistance_run.h"
 #include "app/runs/ring_down_run.h"
@@ -40,6 +42,28 @@ Job windowed(Job job, const UnitTest& test) {
   return job;
 }
 
+Result<Measurement> measure_coupled(const UnitTest& test, const RunContext& context) {
+  auto job = windowed(job_of<CouplingJob>(test), test);
+  for (const std::string& file : test.files) {
+    if (const auto item = coupling_item_of(file)) {
+      job.items.push_back({*item, file});
+    } else if (test.files.size() == 1) {
+      job.ports_file = file;
+    } else {
+      return failure(Problem::usage, file, "its name does not say which measurement of the windings it is",
+                     "name it as in SERIAL.coupling.primary_open.csv");
+    }
+  }
+  job.at_hz = test.at_hz;
+  if (test.dots) job.dots = *test.dots == "same" ? Dots::same : Dots::opposite;
+  job.link_inductance = test.link_inductance;
+  job.link_resistance = test.link_resistance;
+  if (test.winding_resistances.size() == 2) {
+    job.winding_resistance = {test.winding_resistances[0], test.winding_resistances[1]};
+  }
+  return run_coupling(job, context);
+}
+
 struct Kind {
   std::string_view name;
   std::size_t most_files;
@@ -74,6 +98,7 @@ const std::array kKinds = {
            job.preparation = test.preparation;
            return run_sweep(job, context);
          }},
+    Kind{"coupling", kMany, measure_coupled},
     Kind{"resistance", kMany,
          [](const UnitTest& test, const RunContext& context) {
            auto job = job_of_files<ResistanceJob>(test);
@@ -84,6 +109,17 @@ const std::array kKinds = {
 };
 
 }  // namespace
+
+std::optional<CouplingItem> coupling_item_of(const std::string& path) {
+  using enum CouplingItem;
+  std::string file = "." + std::filesystem::path(path).filename().string();
+  std::replace(file.begin(), file.end(), '-', '_');  // "primary-open" is as good
+  for (const CouplingItem item : {primary_open, primary_short, secondary_open, secondary_short, aiding, opposing, ratio_forward,
+                                  ratio_reverse}) {
+    if (file.find("." + std::string(name(item)) + ".") != std::string::npos) return item;
+  }
+  return std::nullopt;
+}
 
 const std::vector<std::string_view>& unit_test_kinds() {
   static const std::vector<std::string_view> names = [] {
@@ -100,7 +136,7 @@ Result<Measurement> measure_unit(const UnitTest& test, const RunContext& context
   if (kind == kKinds.end()) {
     const std::string_view hint = nearest(test.kind, unit_test_kinds());
     return failure(Problem::usage, place, "there is no test '" + shown(test.kind, 60) + "'",
-                   hint.empty() ? "the tests are named like the measuring commands: ringdown, ramp, sine, sweep, resistance"
+                   hint.empty() ? "the tests are named like the measuring commands: ringdown, ramp, sine, sweep, coupling, resistance"
                                 : "did you mean " + std::string(hint) + "?");
   }
   if (test.files.empty()) {

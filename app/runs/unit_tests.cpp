@@ -115,6 +115,10 @@ UnitTest unit_test(const TestPlan& plan, const std::vector<double>& at_hz, std::
   }
   test.preparation.port = plan.port;
   test.preparation.from_waveform = plan.from_waveform;
+  test.dots = plan.dots;
+  test.link_inductance = plan.link_inductance;
+  test.link_resistance = plan.link_resistance;
+  test.winding_resistances = plan.winding_resistances;
   test.material = plan.material;
   test.temperature_coefficient = plan.temperature_coefficient;
   BenchSetup& stated = test.stated;
@@ -145,7 +149,9 @@ std::vector<TestRun> run_tests(const std::vector<PreparedTest>& tests, const Lot
       runs.push_back(run_of(test, refused(test.plan.kind, captures->files, *captures->trouble)));
       continue;
     }
-    const std::size_t together = test.plan.joint_captures();
+    // Windings are measured together from whatever was captured of them; the names say what each capture is.
+    const bool items = test.plan.kind == "coupling" && test.plan.repeats == 1 && coupling_item_of(captures->files.front());
+    const std::size_t together = items ? captures->files.size() : test.plan.joint_captures();
     const std::size_t wanted = together * test.plan.repeats;
     if (captures->files.size() != wanted) {
       const Error error{Problem::usage, "",

@@ -15,7 +15,7 @@ using testing::ElementsAre;
 using testing::HasSubstr;
 using testing::IsEmpty;
 
-constexpr std::array<std::string_view, 4> kTests{"ramp", "resistance", "ringdown", "sweep"};
+constexpr std::array<std::string_view, 5> kTests{"coupling", "ramp", "resistance", "ringdown", "sweep"};
 
 std::vector<std::string> serials(const LotFolder& lot) {
   std::vector<std::string> all;
@@ -75,6 +75,18 @@ TEST(LotFolderNames, TwoCapturesForOnePlaceAreNotChosenFrom) {
   ASSERT_TRUE(lot.units[0].find("ramp")->trouble);
   EXPECT_THAT(lot.units[0].find("ramp")->trouble->finding, HasSubstr("second capture"));
   EXPECT_FALSE(lot.units[1].find("ramp")->trouble);
+}
+
+TEST(LotFolderNames, SayWhichMeasurementOfTwoWindingsACaptureIs) {
+  const TemporaryFolder folder;
+  for (const char* name : {"T-1.coupling.primary_open.csv", "T-1.coupling.primary_short.csv", "T-1.coupling.ratio_forward.csv.gz"}) {
+    folder.file(name, name);
+  }
+  const LotFolder lot = read(folder);
+  ASSERT_EQ(serials(lot), std::vector<std::string>{"T-1"});
+  ASSERT_NE(lot.units[0].find("coupling"), nullptr);
+  EXPECT_EQ(lot.units[0].find("coupling")->files.size(), 3u);
+  EXPECT_FALSE(lot.units[0].find("coupling")->trouble);
 }
 
 TEST(LotFolderNames, AFolderWithoutUnitsIsRefused) {

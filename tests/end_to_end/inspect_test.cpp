@@ -118,6 +118,26 @@ TEST(Inspect, TakesRampAndRingdownOfOneUnitTogether) {
   EXPECT_EQ(lot.at("units").at(0).at("files").size(), 2u);
 }
 
+TEST(Inspect, JudgesCoupledWindingsFromAllCapturesOfThem) {
+  const TemporaryFolder folder;
+  ASSERT_EQ(run_program_process({"simulate", "coupled", "-o", folder / "pair", "--coupling", "0.97", "--noise", "0.1%", "--quiet"}).exit_code, 0);
+  std::filesystem::create_directory(folder / "lot");
+  for (const char* item : {"primary-open", "primary-short", "secondary-open"}) {
+    std::filesystem::copy_file(folder / (std::string("pair-") + item + ".csv"), folder / (std::string("lot/T-1.coupling.") + item + ".csv"));
+  }
+  const std::string sheet = folder.file("pair.toml", "[part]\nname = \"pair\"\n[[limit]]\nquantity = \"k\"\nmin = \"0.9\"\n"
+                                                     "test = \"coupling\"\nat = { frequency = \"20 kHz\" }\n[test.coupling]\n"
+                                                     "link_inductance = \"10 nH ± 5 nH\"\n");
+  const ProgramEnd end = run_program_process({"inspect", sheet, folder / "lot", "--json"});
+  EXPECT_EQ(end.exit_code, 0) << end.out << end.error;
+  const auto lot = nlohmann::json::parse(end.out, nullptr, false);
+  ASSERT_TRUE(lot.is_object());
+  const auto& limit = lot.at("units").at(0).at("limits").at(0);
+  ASSERT_EQ(limit.at("verdict"), "pass") << limit;
+  EXPECT_NEAR(limit.at("value").get<double>(), 0.97, 0.01);
+  EXPECT_EQ(lot.at("units").at(0).at("files").size(), 3u);
+}
+
 TEST(InspectReport, IsOnePageWithTheDecisionFirstAndFigures) {
   const LotBench bench;
   bench.good_units(4);
