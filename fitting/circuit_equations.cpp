@@ -248,7 +248,7 @@ class Coordinates {
 }  // namespace
 
 SettledCircuit descend(const CircuitEquations& equations, const Circuit& start, HeldParameters held, int most_iterations,
-                       double settled) {
+                       double settled, double damping) {
   const auto order = parameters_of(start.family);
   const std::size_t n = order.size();
   SettledCircuit best;
@@ -264,7 +264,6 @@ SettledCircuit descend(const CircuitEquations& equations, const Circuit& start, 
   best.stop = FitStop::max_iterations;
   const auto rows = static_cast<double>(equations.size());
   const double rounding = equations.rounding();
-  double damping = 1e-3;
   CircuitNormal trial_normal;
   for (; best.iterations < most_iterations; ++best.iterations) {
     CircuitMatrix damped = best.last.normal;

@@ -75,8 +75,9 @@ struct SettledCircuit {
 
 /// Levenberg's and Marquardt's descent over logarithms from `start`, until a step would lower chi-square by less than
 /// `settled` times chi-square per row. k_rel stops at 1.
+/// `damping`: of the first step; small where the start is known to be near.
 SettledCircuit descend(const CircuitEquations& equations, const Circuit& start, HeldParameters held, int most_iterations,
-                       double settled);
+                       double settled, double damping = 1e-3);
 
 /// The points of data that can be used, rising in frequency.
 std::vector<std::size_t> usable_points(const CircuitData& data);

@@ -22,6 +22,7 @@ constexpr double kFewSettled = 1e-3;
 constexpr int kQuickIterations = 40;
 constexpr double kQuickSettled = 1e-4;
 constexpr std::size_t kManyPoints = 800;
+constexpr double kNearDamping = 1e-8;  // after a descent on half of these
 constexpr double kLeastPivot = 1e-12;   // of the normal matrix with a diagonal of ones: below, nothing is left of 16 digits
 constexpr double kVisible = 4;         // information of a logarithm below which it is called not seen by the descent
 
@@ -225,14 +226,15 @@ Result<CircuitFit> fit_circuit(const CircuitData& data, const CircuitFamily& fam
     return failure(Problem::no_signal, "sweep", "the imaginary part of Z is positive nowhere: no inductance to be seen",
                    "check the sign of the phase, or begin the sweep at a lower frequency");
   }
+  double damping = 1e-3;
   if (points.size() > kManyPoints && !options.start) {
     const CircuitEquations some(data, thin_points(points, kManyPoints / 2), false);
     const SettledCircuit nearer = descend(some, *start, 0, kMostIterations, kFewSettled);
-    if (nearer.stop == FitStop::converged) start = nearer.circuit;
+    if (nearer.stop == FitStop::converged) start = nearer.circuit, damping = kNearDamping;
   }
   const int most = options.quick ? kQuickIterations : kMostIterations;
   const double settled_at = options.quick ? kQuickSettled : kSettled;
-  SettledCircuit settled = descend(equations, *start, 0, most, settled_at);
+  SettledCircuit settled = descend(equations, *start, 0, most, settled_at, damping);
   rescue(equations, result.phase_used, settled, most, settled_at);
   if ((settled.stop != FitStop::converged && !options.quick) || !std::isfinite(settled.chi)) {
     return failure(Problem::not_converged, "sweep", "no circuit of the kind " + name(family) + " follows the sweep", "");
