@@ -202,9 +202,10 @@ void weigh_by_residuals(CouplingSolution& s, Weighing round) {
     if (!trace.scatter) continue;
     double of_size = short_factor, of_angle = short_factor;
     if (trace.readings.size() >= 7) {
-      // A few unknowns are spread over all traces; what one of them loses to the fit is below one part in its rows.
+      // The fit takes about two readings of each trace; and a scatter that is itself an estimate of n - 2 of them makes the
+      // mean square of an error (n - 2)/(n - 4) of what it says.
       const double n = static_cast<double>(trace.readings.size());
-      const double left = n / std::fmax(n - 2, 1);
+      const double left = n / std::fmax(n - (round == Weighing::last ? 4 : 2), 1);
       of_size = std::sqrt(mean_square(residuals[t].size) * left);
       of_angle = std::sqrt(mean_square(residuals[t].angle) * left);
       if (round == Weighing::first) {

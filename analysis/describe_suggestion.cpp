@@ -246,6 +246,8 @@ Likeness likely_test(const Capture& capture, const DescribeOptions& options) {
 }
 
 Suggestion likely_test(const Sweep& sweep, const DescribeOptions& options) {
+  // What goes from one port to another is a coupling; a sweep is of one coil.
+  if (sweep.ports > 1) return suggestion_of(sweep.source, "coupling", "impedance between windings against frequency", {}, "", options);
   return suggestion_of(sweep.source, "sweep", "impedance against frequency", {}, "", options);
 }
 

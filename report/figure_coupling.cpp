@@ -25,11 +25,13 @@ FigurePanel over_frequency(std::string label, Unit unit, double height) {
 }
 
 void add_items(FigurePanel& panel, const Measurement& m, std::initializer_list<CouplingItem> items) {
+  bool further = false;   // the second curve of a panel is dashed, so that the key tells them apart
   for (const CouplingItem item : items) {
     const Table* table = find_table(m, "trace_" + std::string(name(item)));
     if (table == nullptr) continue;
-    panel.series.push_back({Mark::dots, std::string(in_words(item)), table->columns[0].values, table->columns[1].values, {}});
-    panel.series.push_back({Mark::line, "", table->columns[0].values, table->columns[2].values, {}});
+    panel.series.push_back({Mark::trace, further ? "" : "measured", table->columns[0].values, table->columns[1].values, {}});
+    panel.series.push_back({further ? Mark::dashes : Mark::line, std::string(in_words(item)), table->columns[0].values, table->columns[2].values, {}});
+    further = true;
   }
 }
 
@@ -47,9 +49,12 @@ std::vector<FigurePanel> coupling_panels(const Measurement& m) {
   FigurePanel second = over_frequency("L of the secondary", Unit::henry, 1.2);
   add_items(second, m, {secondary_open, secondary_short});
   keep(std::move(second));
-  FigurePanel series = over_frequency("in series, and M", Unit::henry, 1.2);
-  add_items(series, m, {aiding, opposing, mutual_12, mutual_21});
+  FigurePanel series = over_frequency("L in series", Unit::henry, 1.2);
+  add_items(series, m, {aiding, opposing});
   keep(std::move(series));
+  FigurePanel mutual = over_frequency("M", Unit::henry, 1.2);
+  add_items(mutual, m, {mutual_21, mutual_12});
+  keep(std::move(mutual));
   FigurePanel ratios = over_frequency("voltage ratio", Unit::one, 1);
   add_items(ratios, m, {ratio_forward, ratio_reverse});
   keep(std::move(ratios));

@@ -12,6 +12,12 @@ simulate() {
   # From inside the folder, as the truth names its capture.
   (cd "$to" && "$program" simulate "$kind" -o "$name.csv" --truth "$name.truth.json" --quiet "$@")
 }
+# windings NAME ENDING OPTION...: NAME.s2p or NAME.s3p and NAME.truth.json
+windings() {
+  name=$1 ending=$2
+  shift 2
+  (cd "$to" && "$program" simulate coupled -o "$name.$ending" --truth "$name.truth.json" --quiet "$@")
+}
 case $program in
   /*) ;;
   *) program=$(pwd)/$program ;;
@@ -82,10 +88,11 @@ simulate resistance drum-resistance --seed 23 --resistance 88mohm --temperature 
 simulate sweep drum-sweep --seed 24 --inductance 46.2uH --resistance 88mohm --skin-resistance 0.22ohm --skin-frequency 100kHz \
   --parallel-capacitance 9.1pF --parallel-resistance 31kohm --start 100Hz --stop 30MHz --points 201 --noise 0.05% --scale 1.0004 \
   --phase-error 0.3mrad --marked-points 2
+
+# The charging coils: one in the buoy, one in the landing stage, two-port file of an analyser; and with the coil of the water-level
+# sensor near them.
+windings charging-pair s2p --seed 25 --inductance 24.3uH --inductance 61.8uH --coupling 0.312 --resistance 0.11ohm --resistance 0.24ohm \
+  --capacitance 38pF --capacitance 55pF --noise 0.1% --first 5kHz --last 1MHz --points 81
+windings charging-three s3p --seed 26 --inductance 24.3uH --inductance 61.8uH --inductance 9.7uH --coupling 0.312 --coupling 0.054 \
+  --coupling -0.127 --resistance 0.11ohm --resistance 0.24ohm --resistance 0.3ohm --noise 0.2% --first 10kHz --last 1MHz --points 41
 }
-
-# The gauge study of the sweeps.
-if [ $# -lt 2 ]; then sh "$(dirname "$0")/make-gauge.sh" "$program"; else sh "$(dirname "$0")/make-gauge.sh" "$program" "$to/drum-gauge"; fi
-
-# The lot of the incoming inspection.
-if [ $# -lt 2 ]; then sh "$(dirname "$0")/make-lot.sh" "$program"; else sh "$(dirname "$0")/make-lot.sh" "$program" "$to/drum-lot"; fi

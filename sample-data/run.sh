@@ -68,6 +68,9 @@ measure ramp drum-ramp drum-ramp.csv --bench ramp-bench.toml
 measure sine drum-sine drum-sine.csv --bench sine-bench.toml
 measure sweep drum-sweep drum-sweep.csv --bench sweep-bench.toml --at 100kHz
 measure resistance drum-resistance drum-resistance.csv --temperature '21.4±0.5degC'
+# The charging coils of buoy and landing stage: how much of the field of one is caught by the other.
+measure coupling charging-pair charging-pair.s2p
+measure coupling charging-three charging-three.s3p
 
 echo
 echo "Pages with figures: build/sample-reports/"
