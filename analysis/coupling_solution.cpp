@@ -17,6 +17,7 @@ using Complex = std::complex<double>;
 
 constexpr double kSeen = 20;          // drop of chi-square by which a further element is believed
 constexpr double kMisfitRatio = 1.1;  // residuals over scatter
+constexpr double kLost = 100;         // chi-square over its degrees of freedom of a fit that is in the wrong place
 constexpr double kDisagree = 1e-3;    // probability of a chi-square this large
 
 /// Rows of a reading: one when it is real, two when complex.
@@ -254,6 +255,22 @@ bool try_unknowns(CouplingSolution& s, std::initializer_list<std::size_t> unknow
   return true;
 }
 
+/// Fits again from capacitances that make each winding resonate above the sweep, and keeps what is better.
+void start_further_on(CouplingSolution& s) {
+  CouplingSolution best = s;
+  for (const double part : {0.03, 0.1, 0.3}) {
+    CouplingSolution tried = s;
+    tried.fixed[kC1] = tried.fixed[kC2] = false;
+    Eigen::VectorXd x = s.fit.parameters;
+    // The scale of a capacitance is a tenth of what resonates at the last frequency.
+    x[kC1] = 10 * part * s.scale[kC1];
+    x[kC2] = 10 * part * s.scale[kC2];
+    fit_again(tried, x);
+    if (tried.fit.chi_square < best.fit.chi_square && tried.fit.parameters[kC1] >= 0 && tried.fit.parameters[kC2] >= 0) best = tried;
+  }
+  s = std::move(best);
+}
+
 bool over_frequency(const CouplingReadings& readings, std::initializer_list<CouplingItem> items) {
   std::size_t most = 0;
   std::vector<double> seen;
@@ -402,7 +419,9 @@ CouplingSolution solve_coupling(CouplingReadings readings, std::vector<CouplingP
   const bool second = over_frequency(s.readings, {secondary_open, mutual_21, mutual_12, ratio_forward});
   const bool series = over_frequency(s.readings, {aiding, opposing, primary_short, secondary_short});
   if (first || second || series) {
-    if (first && second) try_unknowns(s, {kC1, kC2}) ;
+    if (first && second) try_unknowns(s, {kC1, kC2});
+    // Windings in series may resonate inside the sweep, where the way from no capacitance down is blocked: from further on.
+    if (first && second && s.fit.chi_square > kLost * s.degrees) start_further_on(s);
     if (first || series) try_unknowns(s, {kC1});
     if (second || series) try_unknowns(s, {kC2});
     if (s.readings.complex_read && highest_omega(s.readings) > 0) {
