@@ -263,8 +263,7 @@ void start_further_on(CouplingSolution& s) {
     tried.fixed[kC1] = tried.fixed[kC2] = false;
     Eigen::VectorXd x = s.fit.parameters;
     // The scale of a capacitance is a tenth of what resonates at the last frequency.
-    x[kC1] = 10 * part * s.scale[kC1];
-    x[kC2] = 10 * part * s.scale[kC2];
+    for (const Eigen::Index c : {Eigen::Index{kC1}, Eigen::Index{kC2}}) x[c] = 10 * part * s.scale[static_cast<std::size_t>(c)];
     fit_again(tried, x);
     if (tried.fit.chi_square < best.fit.chi_square && tried.fit.parameters[kC1] >= 0 && tried.fit.parameters[kC2] >= 0) best = tried;
   }
@@ -272,15 +271,13 @@ void start_further_on(CouplingSolution& s) {
 }
 
 bool over_frequency(const CouplingReadings& readings, std::initializer_list<CouplingItem> items) {
-  std::size_t most = 0;
   std::vector<double> seen;
   for (const CouplingTrace& trace : readings.traces) {
     if (std::find(items.begin(), items.end(), trace.item) == items.end()) continue;
     for (const CouplingReading& r : trace.readings) {
       if (std::isfinite(r.omega) && std::find(seen.begin(), seen.end(), r.omega) == seen.end()) seen.push_back(r.omega);
     }
-    most = std::max(most, seen.size());
-    if (most >= 3) return true;
+    if (seen.size() >= 3) return true;
   }
   return false;
 }
