@@ -13,6 +13,7 @@ namespace {
 using Complex = std::complex<double>;
 constexpr double kPi = std::numbers::pi;
 constexpr double kDegree = kPi / 180;
+constexpr double kMostlyNotCausal = 0.2;   // of the points
 constexpr double kRounding = 1e-6;         // of |Z|: what the digits of a file leave, and no analyser sees
 constexpr double kNear = 0.1;              // f/f_r from which the capacitance shows: 1 % of L
 constexpr double kThroughout = 0.9;        // share of the points
@@ -72,23 +73,34 @@ std::string frequencies(const std::vector<double>& list) {
   return all;
 }
 
-/// One frequency within the span, or both ends of where the not causal points lie.
-void judge_causality(Measurement& m, const SweepModel& model) {
-  if (!model.causality || model.causality->passed) return;
+/// One frequency within the span, or both ends of where the not causal points lie. True when the self-resonance was withheld.
+bool judge_causality(Measurement& m, const SweepModel& model) {
+  if (!model.causality || model.causality->passed) return false;
   const KramersKronig& test = *model.causality;
   std::vector<double> where;
   for (const std::size_t i : test.not_causal) where.push_back(model.points.frequency_hz[i]);
   std::sort(where.begin(), where.end());
   double worst = 0;
   for (const Complex r : test.residual) worst = std::fmax(worst, std::abs(r));
-  if (worst < kRounding) return;
+  if (worst < kRounding) return false;
   const std::string what = where.empty()
                                ? "the sweep as a whole is not what a passive, linear circuit can do"
                                : "no passive, linear circuit can have made the points at " + frequencies(where);
+  std::string consequence;
+  if (static_cast<double>(where.size()) > kMostlyNotCausal * static_cast<double>(test.index.size())) {
+    // No circuit made most of this sweep: what is read off its narrowest features would be far surer than it is.
+    consequence = "; the self-resonance and the limits of small losses are withheld";
+    std::erase_if(m.estimates, [](const Estimate& e) { return e.symbol == "f_r"; });
+    std::erase_if(m.correlations, [](const Measurement::Correlation& c) { return c.a == "f_r" || c.b == "f_r"; });
+    m.budget.erase("f_r");
+    m.bounds.clear();
+  }
   m.findings.push_back({"not_causal", Severity::caution,
                         what + " (off by up to " + to_percent_text(worst) +
-                            "): a change of range or level, a loose contact, or a coil that changed meanwhile. Sweep again; look at these points",
+                            "): a change of range or level, a loose contact, or a coil that changed meanwhile. Sweep again; look at these points" +
+                            consequence,
                         "Z", worst, Unit::one});
+  return !consequence.empty();
 }
 
 void judge_misfit(Measurement& m, const SweepModel& model) {
@@ -229,9 +241,9 @@ void judge_sweep(Measurement& m, const SweepModel& model, const SweepData& data)
                           "phi", 0, Unit::one});
   }
   judge_misfit(m, model);
-  judge_causality(m, model);
+  const bool withheld = judge_causality(m, model);
   judge_resistance(m, model);
-  judge_resonance(m, model, data);
+  if (!withheld) judge_resonance(m, model, data);
 }
 
 void judge_points(Measurement& m) {

@@ -399,7 +399,7 @@ Result<SweepModel> fit_sweep(const SweepData& data, const SweepRequest& request)
       points.z = model.cleaned;
       points.scale_known = data.points.scale_known;
     }
-    if (Result<KramersKronig> test = test_kramers_kronig(points)) model.causality = std::move(*test);
+    if (Result<KramersKronig> test = test_kramers_kronig(points, model.fit.circuit)) model.causality = std::move(*test);
   }
   look_for_hidden_losses(model);
   if (!model.jointly) {

@@ -251,6 +251,15 @@ void add_circuit(Measurement& result, const SweepModel& model, const SweepData& 
   };
   std::vector<ExtraTerm> extra = misfit_terms(model, items, f_r.value_or(std::nan("")), data.high_hz);
   for (ExtraTerm& each : choice_terms(model, items, f_r)) extra.push_back(std::move(each));
+  // What folds back bends the sweep smoothly: neither noise nor residuals show it, and the narrowest features suffer most.
+  const auto folded = std::find_if(result.findings.begin(), result.findings.end(),
+                                   [](const Finding& finding) { return finding.code == "sharp_edges"; });
+  if (folded != result.findings.end()) {
+    if (f_r) {
+      extra.push_back({"f_r", "fold at half the sample rate",
+                       {ErrorLaw::Kind::rectangular, 0.5 * folded->figure * *f_r / std::sqrt(3.0), 0}, 'B', false, "data"});
+    }
+  }
   add_estimates(result, sweep_errors(model), sweep_fitted(model), outputs, function, extra, request.propagation);
   for (Estimate& each : result.estimates) {
     if (each.symbol != "R_ac") continue;
@@ -262,6 +271,9 @@ void add_circuit(Measurement& result, const SweepModel& model, const SweepData& 
   // Of a circuit that does not fit, residuals say nothing about what else might be there.
   if (model.misfit) return;
   for (const SweepModel::Hidden& each : model.hidden) add_hidden(result, each);
+  if (folded != result.findings.end()) {
+    std::erase_if(result.bounds, [](const Bound& bound) { return bound.symbol == "R_ac" || bound.symbol == "R_par"; });
+  }
 }
 
 ModelSummary model_of(const SweepModel& model, const SweepData& data) {

@@ -20,6 +20,7 @@ constexpr std::size_t kFewestPoints = 12;
 constexpr double kMu = 0.85;                  // Schoenleber's limit
 constexpr std::array<std::size_t, 9> kElements = {1, 2, 3, 5, 7, 10, 14, 20, 28};
 constexpr std::size_t kMostRounds = 40;
+constexpr std::size_t kManyPoints = 1000;
 constexpr std::size_t kRow = 2;                // points off together that may be a resonance
 constexpr std::size_t kMostResonances = 4;
 constexpr double kPlainGain = 20;              // of chi-square
@@ -105,7 +106,9 @@ struct Judged {
 Judged judge(CausalEquations& equations, std::vector<bool>& used, bool scale_known, double left_over) {
   Judged now;
   const double limit = worst_by_chance(used.size(), kFalseAlarms, scale_known);
-  for (std::size_t round = 0; round < kMostRounds; ++round) {
+  // Each round takes out what is more than a third of the worst: eight reach over four decades, and a long sweep's cost time.
+  const std::size_t rounds = used.size() > kManyPoints ? 8 : kMostRounds;
+  for (std::size_t round = 0; round < rounds; ++round) {
     now.solved = grown(equations, used, scale_known);
     if (!scale_known) now.sigma = neighbour_noise(even_residuals(now.solved, used));
     if (!(now.sigma >= 0)) break;
@@ -124,7 +127,9 @@ Judged judge(CausalEquations& equations, std::vector<bool>& used, bool scale_kno
       // Those much like the worst go with it; lesser ones may only be in its shadow.
       if (off[i] > std::fmax(limit, 0.3 * worst)) used[i] = false, ++removed;
     }
-    if (removed == 0 || std::count(used.begin(), used.end(), true) < static_cast<std::ptrdiff_t>(kFewestPoints)) break;
+    const auto left = static_cast<std::size_t>(std::count(used.begin(), used.end(), true));
+    // A sweep of which most points are off is condemned; going on would only cost time.
+    if (removed == 0 || left < kFewestPoints || 2 * left < used.size()) break;
   }
   return now;
 }
@@ -204,7 +209,8 @@ Result<KramersKronig> test_kramers_kronig(const CircuitData& data, const std::op
   const double left_over = kLeftOver * median(missed) + equations.rounding();
   Judged judged = judge(equations, used, data.scale_known, left_over);
   // Several neighbours off together may be a resonance that the circuit lacks, and causal all the same.
-  for (std::size_t k = 0; k < kMostResonances; ++k) {
+  const std::size_t resonances = points.size() > kManyPoints ? 1 : kMostResonances;
+  for (std::size_t k = 0; k < resonances; ++k) {
     const auto row = longest_row(used);
     if (row.second == row.first || 4 * (row.second - row.first) > used.size()) break;
     for (std::size_t i = row.first; i < row.second; ++i) used[i] = true;

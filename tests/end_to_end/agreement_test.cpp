@@ -84,6 +84,21 @@ TEST(Sweep, ANarrowResonanceIsAsWellKnownAsTheFrequencyIs) {
   EXPECT_LT(result.at("quantities").at("f_r").at("U").get<double>(), 1.2e-4 * f_r);
 }
 
+// Edges sharper than the samples can follow fold back and bend the whole sweep: what it would say of the resonance to a
+// millionth would be wrong.
+TEST(Sweep, ABurstThatFoldsBackSaysNothingSharpOfTheResonance) {
+  const TemporaryFolder folder;
+  const std::string file = folder / "burst.csv";
+  simulate("burst", file, {"--samples", "8000"});
+  const json result = measured_json({"sweep", "--from-waveform", file});
+  const double f_r = 1 / (2 * M_PI * std::sqrt(kL * kC));
+  EXPECT_TRUE(covers(result, "L", kL));
+  if (result.at("quantities").contains("f_r")) {
+    EXPECT_TRUE(covers(result, "f_r", f_r));
+  }
+  for (const char* symbol : {"R_ac", "R_par"}) EXPECT_FALSE(result.at("bounds").contains(symbol)) << symbol;
+}
+
 TEST(Sweep, DigitsOfANoiselessFileAreNoBreachOfCausality) {
   const TemporaryFolder folder;
   for (const char* name : {"sweep.csv", "sweep.s1p"}) {
