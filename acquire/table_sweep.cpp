@@ -75,6 +75,9 @@ const Channel* channel_at(const Capture& capture, std::size_t column) {
   return nullptr;
 }
 
+/// No frequency, impedance or part of a coil comes near: a code for "no value" that nobody stated, or a slip of the export.
+bool is_absurd(double value) { return std::fabs(value) > 1e15; }
+
 double largest_magnitude(const std::vector<double>& values) {
   double largest = 0;
   for (const double v : values) {
@@ -107,7 +110,10 @@ Result<Sweep> sweep_of(Capture capture, const SweepPlan& plan) {
   const Channel* const second = channel_at(capture, plan.second);
   const std::string& name = capture.source.name;
   if (frequency == nullptr || first == nullptr || second == nullptr) {
-    return failure(Problem::not_a_capture, name, "a column of the sweep holds no numbers", "export the sweep again");
+    const std::size_t column = frequency == nullptr ? plan.frequency : first == nullptr ? plan.first : plan.second;
+    return failure(Problem::not_a_capture, name,
+                   "column " + std::to_string(column + 1) + " of the sweep holds no usable number: its cells are empty, no numbers, or out of range",
+                   "export the sweep again, with the meter's range as wide as the values are");
   }
   Sweep sweep;
   sweep.dialect = capture.dialect;
@@ -132,6 +138,17 @@ Result<Sweep> sweep_of(Capture capture, const SweepPlan& plan) {
                                           shown(second->name, 60), plan.decibels ? ", 0 dB for 1 ohm" : ""),
                               first->name, 1, Unit::ohm});
   }
+  for (const Channel* column : {frequency, first, second}) {
+    const auto beyond = std::count_if(column->samples.begin(), column->samples.end(), is_absurd);
+    if (beyond == 0 || (column == second && second == first)) continue;
+    sweep.findings.push_back({"missing_samples", Severity::note,
+                              fmt::format("{} of {} values of '{}' are out of range (beyond 1e15), and these points are left out", beyond,
+                                          column->samples.size(), shown(column->name, 60)),
+                              column->name, static_cast<double>(beyond), Unit::one});
+    if (static_cast<std::size_t>(beyond) < column->samples.size()) continue;
+    return failure(Problem::not_a_capture, name, "all values of '" + shown(column->name, 60) + "' are out of range (beyond 1e15)",
+                   "export the sweep again, with the meter's range as wide as the values are");
+  }
   const Channel* const status = plan.status ? channel_at(capture, *plan.status) : nullptr;
   sweep.ports = 1;
   sweep.as_read = as_read(plan);
@@ -139,7 +156,8 @@ Result<Sweep> sweep_of(Capture capture, const SweepPlan& plan) {
     const double f = frequency->samples[i];
     const Complex z = impedance(plan, f, first->samples[i], second->samples[i], radians, reference);
     const bool marked = status != nullptr && status->samples[i] != 0;
-    const bool usable = f >= 0 && std::isfinite(f) && std::isfinite(z.real()) &&
+    const bool absurd = is_absurd(f) || is_absurd(first->samples[i]) || is_absurd(second->samples[i]);
+    const bool usable = !absurd && f >= 0 && std::isfinite(f) && std::isfinite(z.real()) &&
                         (std::isfinite(z.imag()) || plan.pair == SweepPair::magnitude);
     sweep.frequency_hz.push_back(f);
     sweep.z_ohm.push_back({usable ? z : Complex(std::nan(""), std::nan(""))});

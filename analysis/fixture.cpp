@@ -189,6 +189,13 @@ Result<CorrectedSweep> without_fixture(CorrectedSweep c, const FixtureSet& set, 
   const std::string of = "fixture " + label(set) + " of " + to_text(set.made);
   c.knowledge.corrections.push_back({of + ", short of", set.short_inductance.value, Unit::henry});
   if (set.load_value) c.knowledge.corrections.push_back({of + ", load of", set.load_value->value, set.load_value->unit});
+  if (std::chrono::sys_days(set.made) > std::chrono::sys_days(today)) {
+    const auto days = (std::chrono::sys_days(set.made) - std::chrono::sys_days(today)).count();
+    c.sweep.findings.push_back({"fixture_in_future", Severity::note,
+                                label(set) + " was made on " + to_text(set.made) + ", and today is " + to_text(today) +
+                                    ": one of the clocks is wrong, so nobody can tell whether it has expired",
+                                "fixture", static_cast<double>(days), Unit::one});
+  }
   if (set.expires && std::chrono::sys_days(today) > std::chrono::sys_days(*set.expires)) {
     const auto days = (std::chrono::sys_days(today) - std::chrono::sys_days(*set.expires)).count();
     c.sweep.findings.push_back({"fixture_expired", Severity::caution,

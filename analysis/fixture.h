@@ -45,7 +45,7 @@ struct CorrectedSweep {
 /// Between the set's frequencies the open's admittance, the short's and the load's impedance go by a cubic through the four
 /// nearest; what a straight line would give otherwise is an error too.
 ///
-/// Findings: fixture_expired (today is after the set's last day), fixture_residual (the fixture changed the value by more
+/// Findings: fixture_expired (today is after the set's last day), fixture_in_future (it was made after today), fixture_residual (the fixture changed the value by more
 /// than a tenth, as a caution by more than half).
 /// @return usage: the sweep leaves the set's frequencies, or the set belongs to another connection or port
 Result<CorrectedSweep> without_fixture(CorrectedSweep corrected, const FixtureSet& set, Connection connection, std::size_t port,

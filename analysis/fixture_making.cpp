@@ -4,6 +4,7 @@
 #include <numbers>
 
 #include "analysis/fixture.h"
+#include "analysis/fixture_checks.h"
 #include "analysis/fixture_relation.h"
 #include "analysis/interpolation.h"
 #include "base/number_text.h"
@@ -127,6 +128,7 @@ Result<FixtureSet> make_fixture_set(const StandardSweeps& sweeps, FixtureSet set
                    "sweep the standards with fewer points: between them the set interpolates");
   }
   if (const auto fine = check_contact(set, sweeps); !fine) return failure(fine);
+  if (const auto fine = check_kinds(set); !fine) return failure(fine);
   return set;
 }
 

@@ -156,8 +156,16 @@ Result<SweepData> sweep_data(const Sweep& sweep, const SweepRequest& request) {
   Choosing choosing(sweep, data);
   data.index = choosing.usable();
   if (data.index.empty() && data.scattering) {
-    return failure(Problem::no_signal, name, "S is that of an ideal open at every point, which is no impedance at all",
-                   "check that the coil was connected and that the calibration belongs to this set-up");
+    // An impedance of exactly zero at every point that was not left out as bad is the other end of the same mistake.
+    bool shorted = false, open = false;
+    for (std::size_t i = 0; i < sweep.frequency_hz.size(); ++i) (impedance_of(sweep, i) == 0.0 ? shorted : open) = true;
+    const bool only_short = shorted && !open, both = shorted && open;
+    return failure(Problem::no_signal, name,
+                   only_short ? "S is that of an ideal short at every point: an impedance of nothing"
+                   : both     ? "S is that of an ideal short or an ideal open at every point: no impedance of a coil"
+                              : "S is that of an ideal open at every point, which is no impedance at all",
+                   only_short ? "take the short away, connect the coil and sweep again"
+                              : "check that the coil was connected and that the calibration belongs to this set-up");
   }
   if (data.index.size() < kFewestPoints) {
     const std::string also = choosing.left_out() == 0 ? ""

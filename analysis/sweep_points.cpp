@@ -120,9 +120,10 @@ Point by_data(const SweepModel& model, double f, const SweepRequest& request) {
 void add_points(Measurement& result, const SweepModel& model, const SweepData& data, const SweepRequest& request) {
   for (const double f : request.at_hz) {
     if (f < data.low_hz / kAtTheEdge || f > data.high_hz * kAtTheEdge) {
-      result.advice.push_back("nothing is said at " + to_text(f, Unit::hertz, Script::utf8, 4) + ": the sweep goes from " +
-                              to_text(data.low_hz, Unit::hertz, Script::utf8, 4) + " to " +
-                              to_text(data.high_hz, Unit::hertz, Script::utf8, 4));
+      result.findings.push_back({"outside_span", Severity::caution,
+                                 "nothing is said at " + to_text(f, Unit::hertz, Script::utf8, 4) + ": the sweep goes from " +
+                                     to_text(data.low_hz, Unit::hertz, Script::utf8, 4) + " to " + to_text(data.high_hz, Unit::hertz, Script::utf8, 4),
+                                 "frequency", f, Unit::hertz});
       continue;
     }
     result.points.push_back(by_model(model, f, request));

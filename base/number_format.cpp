@@ -158,6 +158,8 @@ std::string to_text_expanded(double value, double half_width, Unit unit, Script 
 std::string to_percent_text(double ratio, Script script) {
   if (!std::isfinite(ratio)) return not_a_number(ratio);
   if (ratio == 0) return "0 %";
+  // Beyond that the figure says nothing but that it is absurd.
+  if (std::fabs(ratio) > 10) return ratio > 0 ? "more than 1000 %" : "less than -1000 %";
   Rounded rounded = to_digits(ratio, 2);
   const bool percent = rounded.magnitude() >= -3;
   const int power = percent ? -2 : -6;

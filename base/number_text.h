@@ -48,7 +48,7 @@ std::string to_text_expanded(double value, double half_width, Unit unit, Script 
 /// "232.1 kHz": engineering prefix, so many significant digits.
 std::string to_text(double value, Unit unit, Script script = Script::utf8, int digits = 4);
 
-/// "1.2 %", "310 ppm": a ratio for people, two digits or whole ones ("314 ppm"); ppm below 0.1 %.
+/// "1.2 %", "310 ppm": a ratio for people, two digits or whole ones ("314 ppm"); ppm below 0.1 %, words above 1000 %.
 std::string to_percent_text(double ratio, Script script = Script::utf8);
 
 /// The shortest decimal text that reads back to the same double ("0.1", "2e-08"); nan and inf are a programming mistake.

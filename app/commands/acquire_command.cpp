@@ -44,6 +44,18 @@ Result<ExitCode> try_profile(const Arguments& arguments, Console& console, const
   return report->works() ? ExitCode::done : ExitCode::broken;
 }
 
+/// A file without one value is no success: broken when no reply could be read, undecided when the replies said there is none.
+ExitCode ending(const AcquireSummary& summary, Console& console) {
+  if (summary.rows == 0 || summary.useless < summary.rows) return ExitCode::done;
+  const std::string all = summary.rows == 1 ? "the one reading" : "all " + std::to_string(summary.rows) + " readings";
+  if (summary.unreadable == summary.rows) {
+    console.say("no value was measured: " + all + " failed, the last because " + shown(summary.last_trouble, 300) + "; coilassay acquire PROFILE --try shows every byte");
+    return ExitCode::broken;
+  }
+  console.say("no value was measured: " + all + " came without one, over range or with a status that says not to use them; look at the part, its contacts and the range");
+  return ExitCode::undecided;
+}
+
 Result<ExitCode> run(const Arguments& arguments, Console& console) {
   const bool quiet = arguments.has("--quiet");
   RunSession session(arguments, console, true);
@@ -72,7 +84,7 @@ Result<ExitCode> run(const Arguments& arguments, Console& console) {
     if (!summary->instrument.empty()) words += ", from " + shown(summary->instrument, 80);
     console.say(words);
   }
-  return ExitCode::done;
+  return ending(*summary, console);
 }
 
 }  // namespace
@@ -85,7 +97,8 @@ Command acquire_command() {
               "power cut keeps what came. The file's head tells the identity and the settings; describe and the measuring commands read it.\n"
               "With [record] in the profile one waveform is taken, else readings: --count of them, every --every, or until Ctrl-C.\n"
               "With --try nothing is written: the profile is gone through step by step, showing what was sent, what came, how it was read, "
-              "and where it went wrong.",
+              "and where it went wrong.\n"
+              "Exit code: 3 when every reading came without a value, 4 when no reply could be read.",
           .positional = {.name = "PROFILE.toml", .help = "how to talk to the instrument", .least = 1, .most = 1},
           .groups = {{"What is taken",
                       {{.name = "-o", .kind = ValueKind::file, .value_name = "FILE", .help = "the new capture, as CSV; '-' is standard output", .example = "run.csv"},

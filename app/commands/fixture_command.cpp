@@ -37,6 +37,9 @@ Result<std::optional<StatedValue>> load_standard(const Arguments& arguments) {
 Result<FixtureJob> job_of(const Arguments& arguments) {
   FixtureJob job;
   job.name = arguments.words().front();
+  if (job.name.find_first_not_of(" \t") == std::string::npos) {
+    return failure(Problem::usage, "NAME", "the set has no name, and results could not name it", "give it one, like coilassay fixture tweezers");
+  }
   const auto open = required(arguments, "--open", "the sweep of the empty fixture is missing");
   const auto closed = required(arguments, "--short", "the sweep of the short is missing");
   const auto inductance = arguments.stated("--short-inductance");

@@ -1,5 +1,6 @@
 #include "app/runs/acquire_run.h"
 
+#include <algorithm>
 #include <cmath>
 #include <nlohmann/json.hpp>
 #include <sstream>
@@ -95,6 +96,8 @@ Result<void> acquire_readings(Session& s, UtcTime begun) {
       if (s.instrument.is_gone()) return failure(reading);
       // Not readable this time: the row says so, and the next turn comes.
       if (s.job.remark) s.job.remark(reading.error().finding);
+      ++s.summary.unreadable;
+      s.summary.last_trouble = reading.error().finding;
       Reading none;
       for (const ProfileField& field : s.instrument.profile().reading->fields) {
         if (field.is_value()) none.values.push_back({field.symbol, field.unit});
@@ -105,6 +108,8 @@ Result<void> acquire_readings(Session& s, UtcTime begun) {
     if (auto row = s.file.append(row_of(at_s, *reading)); !row) return row;
     ++s.summary.rows;
     if (!reading->good()) ++s.summary.without_value;
+    const bool any = std::any_of(reading->values.begin(), reading->values.end(), [](const ReadingValue& v) { return std::isfinite(v.value) && v.state == ValueState::measured; });
+    if (!reading->status_ok || !any) ++s.summary.useless;
     if (s.job.row_written) s.job.row_written(in_words(*reading));
   }
   s.summary.stopped = s.job.stopped && s.job.stopped();

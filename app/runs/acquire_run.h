@@ -29,6 +29,9 @@ struct AcquireSummary {
   std::string what;                     // "readings" or "records"
   std::uint64_t rows = 0;               // written
   std::uint64_t without_value = 0;      // of readings: over range, a bad status, or no readable reply
+  std::uint64_t useless = 0;            // of these: not one value that may be used
+  std::uint64_t unreadable = 0;         // of these: no reply, or one that was none
+  std::string last_trouble;             // of an unreadable one; outside text
   std::vector<std::pair<std::string, std::string>> settings;
   std::uint64_t timeouts = 0, resynchronised = 0, reconnected = 0;
   bool stopped = false;                 // by the user

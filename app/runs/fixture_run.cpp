@@ -5,6 +5,7 @@
 #include <filesystem>
 
 #include "analysis/connection.h"
+#include "analysis/fixture_checks.h"
 #include "base/number_text.h"
 
 namespace coilassay {
@@ -84,6 +85,7 @@ Result<FixtureMade> run_fixture(const FixtureJob& job, const RunContext& context
   if (!set) return failure(set);
 
   FixtureMade made{std::move(*set), {}, job.part_h, {}, job.file};
+  made.findings = doubts_about(made.set);
   made.effects = fixture_effects(made.set, job.part_h);
   const auto worst = std::max_element(made.effects.begin(), made.effects.end(),
                                       [](const FixtureEffect& a, const FixtureEffect& b) { return a.part_share < b.part_share; });

@@ -46,6 +46,11 @@ Result<StationLot> StationLot::open(const StationJob& job, PartSheet sheet, UtcT
     unit.from_ledger = true;
     unit.sources = entry.content.sources;
   }
+  if (job.lot_size && lot.order_.size() > *job.lot_size) {
+    return failure(Problem::usage, "--lot-size",
+                   std::to_string(lot.order_.size()) + " units of the lot are in the ledger, more than a lot of " + std::to_string(*job.lot_size),
+                   "give the number of units of the whole lot, measured or not");
+  }
   return lot;
 }
 

@@ -27,6 +27,9 @@ class StationLot {
   };
   /// nullptr when there is no attempt at it.
   const Known* find(const std::string& serial) const;
+  /// As many units were measured as the lot was said to have.
+  bool is_full() const { return lot_size_ && order_.size() >= *lot_size_; }
+  std::uint64_t lot_size() const { return lot_size_.value_or(0); }
   /// Attempts of this sheet that gave a result and count.
   std::uint64_t counted(const std::string& serial) const;
 

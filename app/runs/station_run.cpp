@@ -80,7 +80,9 @@ class Station {
         if (there.error().problem == Problem::interrupted) break;
         return end_broken(there.error());
       }
-      if (*there && !was_there) {
+      if (*there && !was_there && lot_.is_full()) {
+        tell_full("");
+      } else if (*there && !was_there) {
         if (const Step broke = measure(next_number(), "")) return end_broken(*broke);
       }
       was_there = *there;
@@ -117,10 +119,22 @@ class Station {
       notice(Kind::duplicate, shown(line, 60), "it was inspected already: " + std::string(name(stands.verdict)) + "; :again REASON measures it once more" + reasons());
       return std::nullopt;
     }
+    if (lot_.is_full()) {
+      tell_full(shown(line, 60));
+      return std::nullopt;
+    }
     const auto other = lot_.other_lot_of(line);
     if (!other) return other.error();
     if (*other) notice(Kind::told, shown(line, 60), "this serial was inspected in lot " + shown(**other, 60) + " as well: is it mistyped?");
     return measure(line, "");
+  }
+
+  /// One more would make another lot of it, with another plan.
+  void tell_full(const std::string& serial) {
+    const std::uint64_t size = lot_.lot_size();
+    notice(Kind::refused, serial,
+           "the lot of " + std::to_string(size) + (size == 1 ? " unit" : " units") +
+               " is complete: this one is not measured. Is it of another lot, or was --lot-size too small?");
   }
 
   std::string reasons() const {

@@ -96,6 +96,20 @@ TEST_F(SweepTable, AStatusOrAMissingNumberMarksThePoint) {
   EXPECT_EQ(s->bad, (std::vector<bool>{false, true, true, false}));
 }
 
+TEST_F(SweepTable, ValuesOutOfRangeAreLeftOutAndTheirColumnIsNamed) {
+  const auto s = sweep("f [Hz],R [ohm],X [ohm]\n1000.5,1.5,2.5\n2000.5,1.0e30,4.5\n3000.5,1.5,6.5\n");
+  ASSERT_TRUE(s) << s.error().finding;
+  EXPECT_EQ(s->bad, (std::vector<bool>{false, true, false}));
+  ASSERT_FALSE(s->findings.empty());
+  EXPECT_EQ(s->findings.back().message, "1 of 3 values of 'R' are out of range (beyond 1e15), and these points are left out");
+  const auto all = sweep("f [Hz],R [ohm],X [ohm]\n1000.5,1.5,1.0e30\n2000.5,1.5,1.5e30\n3000.5,1.5,-1.0e30\n");
+  ASSERT_FALSE(all);
+  EXPECT_EQ(all.error().finding, "all values of 'X' are out of range (beyond 1e15)");
+  const auto infinite = sweep("f [Hz],R [ohm],X [ohm]\n1000.5,inf,1.5\n2000.5,1.0e308,1.5\n3000.5,inf,2.5\n");
+  ASSERT_FALSE(infinite);
+  EXPECT_EQ(infinite.error().finding, "column 2 of the sweep holds no usable number: its cells are empty, no numbers, or out of range");
+}
+
 TEST_F(SweepTable, TheReferenceOfSIsTakenFromTheFileOrSaid) {
   const auto stated = sweep("# reference: 75 ohm\nf [Hz],S11 re,S11 im\n1e3,0,0\n2e3,0.5,0\n");
   ASSERT_TRUE(stated) << stated.error().finding;

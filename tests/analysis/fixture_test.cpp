@@ -7,6 +7,7 @@
 #include <cmath>
 #include <numbers>
 
+#include "analysis/fixture_checks.h"
 #include "base/random.h"
 
 namespace coilassay {
@@ -200,6 +201,7 @@ TEST(Fixture, AnExpiredSetAndALargeCorrectionAreSaid) {
   const CorrectedSweep last_day = corrected(measured({}, grid, 9, part), set, {}, 2027y / 3 / 1);
   EXPECT_TRUE(last_day.sweep.findings.empty()) << last_day.sweep.findings.front().message;
   EXPECT_TRUE(has(corrected(measured({}, grid, 9, part), set, {}, 2027y / 3 / 2), "fixture_expired", Severity::caution));
+  EXPECT_TRUE(has(corrected(measured({}, grid, 9, part), set, {}, 2026y / 11 / 30), "fixture_in_future", Severity::note));
   // Leads of 500 nH on 2.2 uH: a quarter.
   Bench leads;
   leads.lead_h = 500e-9;
@@ -227,6 +229,84 @@ TEST(FixtureMaking, AStandardThatIsNotWhatItIsCalledIsRefused) {
   EXPECT_THAT(finding([](StandardSweeps& s) { s.load = s.open; }), HasSubstr("about as much as the open"));
   EXPECT_THAT(finding([](StandardSweeps& s) { s.load = s.short_circuit; }), HasSubstr("about as much as the short"));
   EXPECT_THAT(finding([](StandardSweeps& s) { s.short_circuit.frequency_hz[3] *= 1.01; }), HasSubstr("other frequencies"));
+}
+
+TEST(FixtureMaking, AStandardOfAnotherKindIsRefusedWithWhatItIs) {
+  const auto grid = decades(10e3, 10e6, 61);
+  const auto finding = [&](const auto& spoil, const FixtureSet& as) {
+    StandardSweeps s = standards({}, grid);
+    spoil(s);
+    const auto set = make_fixture_set(s, as);
+    return set ? std::string("made") : set.error().finding;
+  };
+  const auto conjugate = [](Sweep& s) {
+    for (auto& z : s.z_ohm) z[0] = std::conj(z[0]);
+  };
+  const auto coil = [&](double h) { return measured({}, grid, 4, [h](double w) { return 1.0 / Complex(0.2, w * h); }); };
+  using testing::HasSubstr;
+  const auto stated = [](double value, Unit unit) {
+    FixtureSet as = described();
+    as.load_value = StatedValue::exact(value, unit);
+    if (unit != Unit::ohm) as.load_inductance.reset();
+    return as;
+  };
+  const auto nothing = [](StandardSweeps&) {};
+  EXPECT_EQ(finding(nothing, stated(100, Unit::ohm)), "made");
+  EXPECT_EQ(finding(nothing, stated(180, Unit::ohm)), "made");
+  EXPECT_EQ(finding(nothing, stated(1e6, Unit::ohm)), "the load behind open and short is about 100 Ω, and 1.00 MΩ is stated");
+  EXPECT_EQ(finding(nothing, stated(1e-12, Unit::farad)), "the load behind open and short is about 100 Ω, and 1.00 pF is stated");
+  // The same size at 100 kHz, and another kind.
+  EXPECT_THAT(finding(nothing, stated(1 / (kTwoPi * 1e5 * 100), Unit::farad)), HasSubstr("is about 100 Ω, and 15.9 nF is stated"));
+  const auto capacitor = [&](StandardSweeps& s) { s.load = measured({}, grid, 4, [](double w) { return Complex(0, w * 1e-9); }); };
+  EXPECT_EQ(finding(capacitor, stated(1e-9, Unit::farad)), "made");
+  EXPECT_THAT(finding(capacitor, stated(100, Unit::ohm)), HasSubstr("is about 1.00 nF, and 100 Ω is stated"));
+
+  FixtureSet as = described();
+  as.load_value.reset();
+  const auto without_load = [&](const auto& spoil) {
+    return finding([&](StandardSweeps& s) {
+      s.load.reset();
+      spoil(s);
+    }, as);
+  };
+  EXPECT_EQ(without_load(nothing), "made");
+  EXPECT_EQ(without_load([&](StandardSweeps& s) { s.open = coil(10e-6); }), "the open is inductive, like a coil of 10.0 µH: a part is still in the fixture");
+  EXPECT_THAT(without_load([&](StandardSweeps& s) { s.open = coil(10e-3); }), HasSubstr("the open is inductive, like a coil of 10.0 mH"));
+  EXPECT_THAT(without_load([&](StandardSweeps& s) { conjugate(s.open); }), HasSubstr("capacitance is negative (-1.20 pF)"));
+  EXPECT_THAT(without_load([&](StandardSweeps& s) { s.open = measured({}, grid, 4, [](double) { return Complex(0.01); }); }),
+              HasSubstr("like a resistor of 100 Ω"));
+  EXPECT_THAT(without_load([&](StandardSweeps& s) { s.short_circuit = coil(10e-6); }), HasSubstr("the short has 10.0 µH in series"));
+  EXPECT_THAT(without_load([&](StandardSweeps& s) { conjugate(s.short_circuit); }), HasSubstr("the short's reactance is negative, like -18.4 nH"));
+}
+
+TEST(FixtureMaking, ACleanOpenInNoiseAndAMeterThatIsALittleOffAreNoReasonToRefuse) {
+  // An open after the meter's own compensation: nothing but noise about zero, or an offset that does not follow any law.
+  const auto grid = decades(1e3, 1e6, 91);
+  Random random(7, 1);
+  for (const double offset : {0.0, -3e-6}) {
+    StandardSweeps s = standards({}, grid);
+    s.load.reset();
+    FixtureSet as = described();
+    as.load_value.reset();
+    for (auto& z : s.open.z_ohm) z[0] = 1.0 / Complex(1e-6 * random.normal(), offset + 1e-6 * random.normal());
+    // Of the short some milliohm and a phase error of the meter that turns its sign.
+    for (auto& z : s.short_circuit.z_ohm) z[0] = Complex(30e-3, -5e-3);
+    const auto set = make_fixture_set(s, as);
+    ASSERT_TRUE(set) << set.error().finding;
+    EXPECT_TRUE(doubts_about(*set).empty());
+  }
+}
+
+TEST(FixtureMaking, LeadsOfAMetreAreACaution) {
+  const auto grid = decades(10e3, 10e6, 61);
+  FixtureSet as = described();
+  Bench b;
+  EXPECT_TRUE(doubts_about(made(standards(b, grid), as)).empty());
+  b.lead_h = 1.5e-6;
+  const auto doubts = doubts_about(made(standards(b, grid), as));
+  ASSERT_EQ(doubts.size(), 1u);
+  EXPECT_EQ(doubts[0].code, "fixture_short");
+  EXPECT_THAT(doubts[0].message, testing::HasSubstr("1.50 µH"));
 }
 
 TEST(FixtureMaking, SaysWhatItTakesOutAtEachDecade) {

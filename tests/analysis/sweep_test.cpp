@@ -181,12 +181,30 @@ TEST(Sweep, SelfResonanceBeyondTheSpanIsALimit) {
   EXPECT_TRUE(below.has_finding("no_resonance"));
 }
 
+TEST(Sweep, AShortAtEveryPointIsCalledAShortAndAnOpenAnOpen) {
+  Sweep shorted = simulated(kCoil);
+  shorted.as_read = "S";
+  shorted.reference_ohm = {50};
+  for (auto& z : shorted.z_ohm) z[0] = 0;
+  Sweep open = shorted;
+  for (auto& z : open.z_ohm) z[0] = std::nan("");
+  open.bad.assign(open.frequency_hz.size(), true);
+  const auto of_short = measure_sweep(shorted, exact());
+  ASSERT_FALSE(of_short);
+  EXPECT_THAT(of_short.error().finding, HasSubstr("ideal short at every point"));
+  const auto of_open = measure_sweep(open, exact());
+  ASSERT_FALSE(of_open);
+  EXPECT_THAT(of_open.error().finding, HasSubstr("ideal open at every point"));
+}
+
 TEST(Sweep, PointsComeFromTheModelAndFromTheNearestData) {
   SweepRequest request = exact();
   request.at_hz = {1e6, 1e9};
   const Measurement m = measured(simulated(kCoil), request);
   ASSERT_EQ(m.points.size(), 2U);   // 1 GHz lies outside
-  EXPECT_THAT(m.advice, testing::Contains(HasSubstr("nothing is said at 1.000 GHz")));
+  const auto outside = std::find_if(m.findings.begin(), m.findings.end(), [](const Finding& f) { return f.code == "outside_span"; });
+  ASSERT_NE(outside, m.findings.end());
+  EXPECT_THAT(outside->message, HasSubstr("nothing is said at 1.000 GHz"));
   const auto z = synthetic::coil_impedance(kCoil, 1e6);
   const double w = kTwoPi * 1e6, l_s = z.imag() / w;
   const std::pair<const char*, double> truths[] = {{"Z", std::abs(z)}, {"phi", std::arg(z)}, {"L_s", l_s}, {"R_s", z.real()},

@@ -212,6 +212,32 @@ TEST(Station, PartsAreNumberedAsTheyArePutIn) {
   EXPECT_EQ(refused.error().problem, Problem::usage);
 }
 
+TEST(Station, AUnitBeyondTheLotsSizeIsRefusedAndTheLotKeepsItsSize) {
+  Fixture f;
+  const auto two = [](StationJob& job) { job.lot_size = 2; };
+  const auto end = f.run({{"1", f.part(47e-6)}, {"2"}, {"3"}, {"1"}}, two);
+  ASSERT_TRUE(end) << end.error().finding;
+  EXPECT_THAT(f.watcher.shown_verdicts, ElementsAre("1 pass", "2 pass"));
+  EXPECT_THAT(f.watcher.kinds, ElementsAre(Kind::refused, Kind::duplicate));
+  ASSERT_EQ(f.watcher.notices.size(), 2u);
+  EXPECT_EQ(f.watcher.notices[0].words, "the lot of 2 units is complete: this one is not measured. Is it of another lot, or was --lot-size too small?");
+  EXPECT_EQ(end->record.lot_size, 2u);
+  // Gone on with, and said to be smaller than what is there already.
+  const auto smaller = f.run({}, [](StationJob& job) { job.lot_size = 1; });
+  ASSERT_FALSE(smaller);
+  EXPECT_EQ(smaller.error().place, "--lot-size");
+
+  Fixture counted(kSheet, "[present]\nask = \"PRES?\"\n");
+  const auto in = [&] { counted.served->stand_in().set_present(true); };
+  const auto out = [&] { counted.served->stand_in().set_present(false); };
+  ASSERT_TRUE(counted.run({{"", out}, {"", in}, {"", out}, {"", in}, {":quit"}}, [](StationJob& job) {
+    job.count_serials = true;
+    job.lot_size = 1;
+  }));
+  EXPECT_THAT(counted.watcher.shown_verdicts, ElementsAre("1 pass"));
+  EXPECT_THAT(counted.watcher.kinds, ElementsAre(Kind::refused));
+}
+
 TEST(Station, NothingAnOperatorTypesHarmsIt) {
   Fixture f("[part]\nname = \"drum-47\"\nserial = \"[0-9]{4}\"\n" + std::string(kSheet).substr(std::string(kSheet).find("[[limit]]")));
   f.cut_end = true;

@@ -105,6 +105,9 @@ TEST(ToPercentText, ChangesToPartsPerMillionBelowATenthOfAPercent) {
   EXPECT_EQ(to_percent_text(1), "100 %");
   EXPECT_EQ(to_percent_text(1.234), "123 %");
   EXPECT_EQ(to_percent_text(2.5e-6), "2.5 ppm");
+  EXPECT_EQ(to_percent_text(9.994), "999 %");
+  EXPECT_EQ(to_percent_text(2.28e40), "more than 1000 %");
+  EXPECT_EQ(to_percent_text(-11), "less than -1000 %");
   EXPECT_EQ(to_percent_text(0), "0 %");
   EXPECT_EQ(to_percent_text(1e-12, Script::ascii), "1.0e-10 %");
 }

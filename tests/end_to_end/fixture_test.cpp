@@ -91,6 +91,9 @@ TEST_F(FixtureBench, WhatCannotBeASetIsRefusedInASentence) {
   EXPECT_THAT(made({"--short-inductance", "0", "--load", path("load.csv")}).error, HasSubstr("--load-standard"));
   EXPECT_THAT(made({"--short-inductance", "0", "--expires", "2001-01-01"}).error, HasSubstr("past already"));
   EXPECT_THAT(made({"--short-inductance", "0", "--expires", "soon"}).error, HasSubstr("no date"));
+  const ProgramEnd nameless = run_program_process({"fixture", "", "--open", path("open.csv"), "--short", path("short.csv"), "--short-inductance", "0"});
+  EXPECT_EQ(nameless.exit_code, 2);
+  EXPECT_THAT(nameless.error, HasSubstr("the set has no name"));
   EXPECT_FALSE(std::filesystem::exists(path("set.toml")));
   EXPECT_EQ(made({"--short-inductance", "0"}).exit_code, 0);
   const ProgramEnd again = made({"--short-inductance", "0"});

@@ -67,6 +67,28 @@ TEST(AcquireProgram, WritesReadingsThatDescribeReads) {
   EXPECT_NEAR(d["channels"][0]["first"].get<double>(), 47e-6, 1e-9);
 }
 
+TEST(AcquireProgram, AFileWithoutOneValueIsNoSuccess) {
+  const auto acquired = [](const Meter& meter, const std::string& profile) {
+    return run_program_process({"acquire", profile, "-o", meter.folder / "run.csv", "--count", "2"});
+  };
+  Meter over({"--over-range", "1"});
+  const ProgramEnd all_over = acquired(over, over.profile);
+  EXPECT_EQ(all_over.exit_code, 3);
+  EXPECT_THAT(all_over.error, HasSubstr("no value was measured: all 2 readings came without one"));
+
+  // The status is not the one that says the values may be used.
+  Meter fine;
+  const ProgramEnd status = acquired(fine, fine.folder.file("status.toml", with(contents_of(fine.profile), "status = \"0\"", "status = \"7\"")));
+  EXPECT_EQ(status.exit_code, 3) << status.error;
+
+  // Another number of fields than the profile states: no reply can be read.
+  Meter other;
+  const ProgramEnd fields = acquired(other, other.folder.file("fields.toml", with(contents_of(other.profile), "\"status\"]", "\"status\", \"Q\"]")));
+  EXPECT_EQ(fields.exit_code, 4) << fields.error;
+  EXPECT_THAT(fields.error, HasSubstr("no value was measured: all 2 readings failed, the last because"));
+  EXPECT_TRUE(std::filesystem::exists(other.folder / "run.csv"));
+}
+
 // A simulated coil of 1 mH and 2 ohm, sampled by the stand-in, fetched as blocks, measured: the truth is what it was told.
 TEST(AcquireProgram, AWaveformFetchedAsBlocksIsMeasuredBySine) {
   const TemporaryFolder folder;
