@@ -6,6 +6,7 @@
 #include <string>
 
 #include "analysis/cautions.h"
+#include "analysis/coupling_contradiction.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
 
@@ -22,6 +23,7 @@ constexpr double kShortRatio = 30;         // w L over R of the shorted winding
 constexpr double kSlopeCounts = 0.02;      // of the open inductance over the frequencies used
 constexpr double kCancelCounts = 0.2;      // half-width over k, or over 1 - k
 constexpr double kOtherFrequency = 1.02;   // ratio
+constexpr double kFarFrequency = 3;        // ratio over which inductances of real windings are seen to change
 
 std::string text(double value, Unit unit, int digits = 3) { return to_text(value, unit, Script::utf8, digits); }
 
@@ -46,26 +48,43 @@ const CouplingTrace* find_trace(const CouplingSolution& s, CouplingItem item) {
 std::string what_to_add(const CouplingSolution& s) {
   using enum CouplingItem;
   const bool first = has(s, {primary_open}), second = has(s, {secondary_open});
+  const std::string look_again = "what is needed was given, and does not tell it: look at the values, and measure where the inductances outweigh the resistances";
   if (has(s, {ratio_forward}) && !has(s, {ratio_reverse})) {
-    return first && second ? "check the ratio" : "add --ratio-reverse (k² is the product of both), or both windings open";
+    return first && second ? look_again : "add --ratio-reverse (k² is the product of both), or both windings open";
   }
-  if (has(s, {ratio_reverse}) && !has(s, {ratio_forward})) return "add --ratio-forward (k² is the product of both), or both windings open";
+  if (has(s, {ratio_reverse}) && !has(s, {ratio_forward})) {
+    return first && second ? look_again : "add --ratio-forward (k² is the product of both), or both windings open";
+  }
+  if (has(s, {ratio_reverse})) return look_again;
   if (has(s, {aiding, opposing})) {
-    std::string add;
-    if (!has(s, {aiding})) add = "--aiding";
-    if (!has(s, {opposing})) add = "--opposing";
-    if (!first && !second) add += std::string(add.empty() ? "" : ", ") + "--primary-open and --secondary-open";
-    else if (!first || !second) add += std::string(add.empty() ? "" : " and ") + (first ? "--secondary-open" : "--primary-open");
-    return "add " + add;
+    std::vector<std::string> add;
+    if (!has(s, {aiding})) add.emplace_back("--aiding");
+    if (!has(s, {opposing})) add.emplace_back("--opposing");
+    if (!first) add.emplace_back("--primary-open");
+    if (!second) add.emplace_back("--secondary-open");
+    if (add.empty()) return look_again;
+    std::string words = "add " + add.front();
+    for (std::size_t i = 1; i < add.size(); ++i) words += (i + 1 < add.size() ? ", " : " and ") + add[i];
+    return words;
   }
+  const bool short1 = has(s, {primary_short}), short2 = has(s, {secondary_short});
+  if ((first && short1) || (second && short2)) return look_again;
   if (first && second) return "add --primary-short (for close coupling), or --aiding and --opposing, or a voltage ratio (for loose coupling)";
   if (first) return "add --primary-short, which gives k by itself; with --secondary-open also M and n";
-  if (has(s, {primary_short})) return "add --primary-open, which gives k by itself; with --secondary-open also M and n";
+  if (short1) return "add --primary-open, which gives k by itself; with --secondary-open also M and n";
   if (second) return "add --secondary-short, which gives k by itself; with --primary-open also M and n";
   return "add --secondary-open, which gives k by itself; with --primary-open also M and n";
 }
 
 void note_refusals(Measurement& m, const CouplingSolution& s, const CouplingVerdict& v) {
+  if (v.short_over_open > 0) {
+    m.findings.push_back({"short_above_open", Severity::refusal,
+                          "a winding measures " + text(v.short_over_open, Unit::one) +
+                              " times as much with the other shorted as with it open, and a short can only lower it: the two files are "
+                              "exchanged, or the open winding resonates with its capacitance below the sweep",
+                          "k", v.short_over_open, Unit::one});
+    return;
+  }
   if (!s.k_determined) {
     m.findings.push_back({"too_few_inputs", Severity::refusal, "what was measured does not determine k: " + what_to_add(s), "k",
                           static_cast<double>(s.readings.traces.size()), Unit::one});
@@ -226,11 +245,13 @@ void note_frequencies(Measurement& m, const CouplingSolution& s) {
   const WindingPair pair = s.pair_at(unknowns(s));
   const bool modelled = pair.c1_f > 0 || pair.c2_f > 0 || (pair.r1_ohm > 0 && pair.r2_ohm > 0);
   if (!(high > kOtherFrequency * low) || modelled || m.has_finding("winding_capacitance")) return;
-  m.findings.push_back({"mixed_frequencies", Severity::caution,
+  const bool far = high > kFarFrequency * low && s.k_determined;
+  m.findings.push_back({"mixed_frequencies", far ? Severity::refusal : Severity::caution,
                         "the values were read at frequencies from " + text(low / kTwoPi, Unit::hertz) + " to " + text(high / kTwoPi, Unit::hertz) +
                             ", and without resistances and capacitances nothing says how they change between: read all at one "
                             "frequency, or state --winding-resistance",
                         "k", high / low, Unit::one});
+  if (far) withhold_coupling(m, Withheld::coupled);
 }
 
 void note_reciprocity(Measurement& m, const CouplingSolution& s) {
@@ -337,7 +358,8 @@ bool note_exchange(Measurement& m, const CouplingSolution& s) {
   const auto best = std::min_element(tried.begin(), tried.end(), [](const Exchange& a, const Exchange& b) { return a.chi_square < b.chi_square; });
   const double fine = fine_chi_square(s);
   if (!(best->chi_square < fine) || !(best->chi_square < before / 4)) return false;
-  m.findings.push_back({"swapped_inputs", Severity::caution, "the inputs do not fit each other, but would if " + best->words, "k", before, Unit::one});
+  m.findings.push_back({"swapped_inputs", Severity::refusal, "the inputs do not fit each other, but would if " + best->words, "k", before, Unit::one});
+  withhold_coupling(m);
   return true;
 }
 
@@ -421,11 +443,11 @@ void judge_coupling(Measurement& m, const CouplingSolution& s, const CouplingVer
   note_capacitance(m, s);
   note_frequencies(m, s);
   caution_step_up(m, s, request);
-  if (v.shown && m.find("n") == nullptr) m.advice.push_back("with the other winding open as well, M, n and its leakage follow too");
+  if (m.find("k") != nullptr && m.find("n") == nullptr) m.advice.push_back("with the other winding open as well, M, n and its leakage follow too");
   const auto independent = std::count_if(s.readings.traces.begin(), s.readings.traces.end(), [](const CouplingTrace& t) {
     return !t.scatter && t.kind == 'B' && t.basis == "stated";
   });
-  if (v.shown && independent > 1 && !request.common_accuracy) {
+  if (m.find("k") != nullptr && independent > 1 && !request.common_accuracy) {
     m.advice.push_back("tolerances of several values count as independent errors; an error that all share (one meter, one range) is "
                        "stated with --common-accuracy and leaves k alone");
   }

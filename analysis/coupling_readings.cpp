@@ -15,7 +15,8 @@ namespace {
 using Complex = std::complex<double>;
 constexpr double kTwoPi = 2 * std::numbers::pi;
 constexpr double kNoiseUnknown = 1e-3;   // of a trace too short to show its scatter, until the fit does
-constexpr double kLeastNoise = 1e-6;     // files have seven digits
+constexpr double kLeastInductance = 1e-15, kMostInductance = 1e6;   // of anything that is wound
+constexpr double kLeastRatio = 1e-9;
 constexpr std::size_t kScatterPoints = 7;
 constexpr std::size_t kMostPoints = 400;
 constexpr double kNoisy = 0.1;           // beyond, the logarithm of a noisy number is biased
@@ -33,7 +34,7 @@ std::pair<double, double> scatter_of(const std::vector<Complex>& z) {
   }
   // (1, -3, 3, -1): the squares add up to 20.
   const double n = 20 * static_cast<double>(count);
-  return {std::fmax(std::sqrt(size / n), kLeastNoise), std::fmax(std::sqrt(angle / n), kLeastNoise)};
+  return {std::fmax(std::sqrt(size / n), kLeastCouplingNoise), std::fmax(std::sqrt(angle / n), kLeastCouplingNoise)};
 }
 
 struct Curve {
@@ -81,6 +82,7 @@ class Collector {
       common_ = add_shared({"accuracy common to all", ErrorLaw::Kind::rectangular, 'B', true, "stated"});
       common_u_ = *request_.common_accuracy / std::sqrt(3.0);
     }
+    if (auto fine = check_files(); !fine) return failure(fine);
     for (const CouplingInput& input : request_.inputs) {
       Result<void> taken;
       if (const auto* value = std::get_if<CouplingValue>(&input.given)) taken = take_value(input.item, *value);
@@ -97,6 +99,37 @@ class Collector {
   }
 
  private:
+  /// One file cannot be two measurements; the two directions of a two-port file are.
+  Result<void> check_files() const {
+    struct File {
+      std::string sha256, name, as;
+      bool one_direction;
+    };
+    std::vector<File> files;
+    const auto add = [&](const Source& source, std::string as, bool one_direction) -> Result<void> {
+      if (source.sha256.empty()) return {};
+      for (const File& f : files) {
+        if (f.sha256 != source.sha256 || (f.one_direction && one_direction && f.as != as)) continue;
+        return failure(Problem::usage, source.name, "the same file is given as " + f.as + " and as " + as + ", and one measurement does not count twice",
+                       "give another file for one of the two, or leave one out");
+      }
+      files.push_back({source.sha256, source.name, std::move(as), one_direction});
+      return {};
+    };
+    for (const CouplingInput& input : request_.inputs) {
+      const std::string as(option_of(input.item));
+      Result<void> fine;
+      if (const auto* sweep = std::get_if<Sweep>(&input.given)) fine = add(sweep->source, as, is_ratio(input.item) && sweep->ports == 2);
+      if (const auto* sine = std::get_if<Measurement>(&input.given)) {
+        for (const SourceRecord& record : sine->sources) {
+          if (fine) fine = add(record.source, as, false);
+        }
+      }
+      if (!fine) return fine;
+    }
+    return request_.ports ? add(request_.ports->source, "file of ports", false) : Result<void>{};
+  }
+
   std::size_t add_shared(SharedError error) {
     all_.shared.push_back(std::move(error));
     return all_.shared.size() - 1;
@@ -106,6 +139,14 @@ class Collector {
   }
 
   Result<void> take_value(CouplingItem item, const CouplingValue& given) {
+    const double size = std::fabs(given.value.value);
+    const bool fine = is_ratio(item) ? size >= kLeastRatio && size <= 1 / kLeastRatio : size >= kLeastInductance && size <= kMostInductance;
+    if (!fine) {
+      return failure(Problem::bad_number, std::string(option_of(item)),
+                     is_ratio(item) ? "no pair of windings has a voltage ratio below 1e-9 or above 1e9"
+                                    : "no winding has an inductance below 1 fH or above 1 MH",
+                     "look at the unit and its prefix: 100uH±1%");
+    }
     CouplingTrace trace;
     trace.item = item;
     trace.source = in_words(item);
@@ -350,9 +391,9 @@ class Collector {
           variance += line.u * line.u / (per * per);
         }
       }
-      own = std::fmax(std::sqrt(variance), kLeastNoise);
+      own = std::fmax(std::sqrt(variance), kLeastCouplingNoise);
     };
-    reading.u_size = reading.u_angle = kLeastNoise;
+    reading.u_size = reading.u_angle = kLeastCouplingNoise;
     split("Z", size->quantity.value, Complex(1, 0), reading.u_size);
     split("phi", 1, Complex(0, 1), reading.u_angle);
     share_common(reading, item);

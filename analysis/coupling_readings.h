@@ -13,6 +13,9 @@
 
 namespace coilassay {
 
+/// Relative noise below which nothing is believed: digits of files, and what a solution still tells apart from a shared error.
+inline constexpr double kLeastCouplingNoise = 1e-5;
+
 /// One number that was read: an inductance or the size of a ratio (`real`), or a complex impedance or ratio.
 struct CouplingReading {
   double omega = std::nan("");       // NaN: no frequency, the ideal value

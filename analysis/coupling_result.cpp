@@ -5,6 +5,7 @@
 #include <cmath>
 #include <numbers>
 
+#include "analysis/coupling_contradiction.h"
 #include "analysis/symbols.h"
 
 namespace coilassay {
@@ -207,6 +208,7 @@ void to_bounds(Measurement& m, const CouplingVerdict& v) {
   Bound k{"k", Unit::one, std::nullopt, std::nullopt, 0.95}, mutual{"M", Unit::henry, std::nullopt, std::nullopt, 0.95};
   if (!v.at_low) k.at_least = v.low;
   if (!v.at_high) k.at_most = v.high;
+  if (!k.at_least && !k.at_most) return;
   m.bounds.push_back(k);
   if (l1 != nullptr && l2 != nullptr) {
     const double middle = std::sqrt(l1->quantity.value * l2->quantity.value);
@@ -432,7 +434,12 @@ CouplingVerdict coupling_verdict(const CouplingSolution& s, bool sign_known) {
 }
 
 CouplingVerdict add_coupling(Measurement& result, const CouplingSolution& s, const CouplingRequest& request) {
-  const CouplingVerdict v = coupling_verdict(s, s.readings.sign_shown);
+  CouplingVerdict v = coupling_verdict(s, s.readings.sign_shown);
+  v.short_over_open = short_above_open(s);
+  if (v.short_over_open > 0) {
+    v.beyond = true;
+    v.shown = false;
+  }
   const bool capacitive = !s.fixed[kC1] || !s.fixed[kC2];
   std::vector<double> omegas;
   for (const double f : request.at_hz) omegas.push_back(kTwoPi * f);
@@ -467,6 +474,7 @@ CouplingVerdict add_coupling(Measurement& result, const CouplingSolution& s, con
   add_inputs(result, s);
   add_model(result, s, request);
   if (v.shown && result.find("L_1") != nullptr && result.find("L_2") != nullptr && result.find("M") != nullptr) add_equivalents(result, s, request);
+  if (v.short_over_open > 0) withhold_coupling(result);
   return v;
 }
 

@@ -10,6 +10,7 @@ namespace coilassay {
 /// What is said about k, and why.
 struct CouplingVerdict {
   bool shown = false;           // k has a value
+  double short_over_open = 0;   // inductance shorted over open where files show that it is larger, more than chance explains; else 0
   bool beyond = false;          // best value beyond what is possible, more than chance explains
   bool labels_swapped = false;  // aiding reads less than opposing, more than chance explains
   double best = std::nan("");   // of k, within what is possible

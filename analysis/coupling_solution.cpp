@@ -218,8 +218,8 @@ void weigh_by_residuals(CouplingSolution& s, Weighing round) {
       }
     }
     for (CouplingReading& r : trace.readings) {
-      r.u_size = std::fmax(r.u_size * of_size, 1e-9);
-      r.u_angle = std::fmax(r.u_angle * of_angle, 1e-9);
+      r.u_size = std::fmax(r.u_size * of_size, kLeastCouplingNoise);
+      r.u_angle = std::fmax(r.u_angle * of_angle, kLeastCouplingNoise);
     }
   }
 }

@@ -119,8 +119,8 @@ Descent descend(const Engine& engine, const Eigen::VectorXd& start) {
         d.chi_square = d.r.squaredNorm();
         damping = std::fmax(damping / 10, 1e-12);
         improved = true;
-        // The gain that the whole quadratic promises is what is left to do.
-        if (gained < 1e-9 * (1 + d.chi_square) && damping < 1e-6) {
+        // The gain that the whole quadratic promises is what is left to do; and never more than all of chi-square.
+        if (gained < 1e-9 * (1 + d.chi_square) && (damping < 1e-6 || d.chi_square < 1e-9)) {
           d.converged = true;
           return d;
         }

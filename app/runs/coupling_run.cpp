@@ -6,6 +6,7 @@
 #include <fstream>
 #include <sstream>
 
+#include "analysis/coupling_contradiction.h"
 #include "analysis/coupling_matrix.h"
 #include "analysis/sine.h"
 #include "app/runs/captures.h"
@@ -222,11 +223,13 @@ Result<Measurement> run_coupling(const CouplingJob& job, const RunContext& conte
     request.ports = std::move(*sweep);
   }
   std::optional<InductanceMatrices> typed;
+  std::vector<std::vector<StatedValue>> stated_rows;
   if (job.matrix_file) {
     const auto rows = read_matrix(*job.matrix_file);
     if (!rows) return failure(rows);
     if (auto fine = check_pair(job, rows->size(), *job.matrix_file); !fine) return failure(fine);
     typed = matrices_of(*rows);
+    stated_rows = *rows;
     const auto [a, b] = job.pair;
     request.inputs.push_back({CouplingItem::primary_open, CouplingValue{(*rows)[a][a], std::nullopt}});
     request.inputs.push_back({CouplingItem::secondary_open, CouplingValue{(*rows)[b][b], std::nullopt}});
@@ -234,7 +237,8 @@ Result<Measurement> run_coupling(const CouplingJob& job, const RunContext& conte
   }
   Result<Measurement> measured = measure_coupling(request);
   if (!measured) return measured;
-  if (typed && typed->ports.size() > 2) judge_matrices(*measured, std::move(*typed));
+  const bool reciprocal = !typed || judge_reciprocity(*measured, stated_rows, job.pair);
+  if (typed && typed->ports.size() > 2 && reciprocal) judge_matrices(*measured, std::move(*typed));
   measured->advice.insert(measured->advice.end(), reading.notes.begin(), reading.notes.end());
   if (job.netlist_file) {
     if (const std::optional<std::string> netlist = coupling_netlist(*measured, program_name())) {

@@ -65,6 +65,77 @@ TEST(CouplingFindings, AShortThatMeasuresMoreThanTheOpenIsRefused) {
   EXPECT_NE(finding(loose, "k_cancellation"), nullptr);
 }
 
+TEST(CouplingFindings, ExchangedFilesOfOpenAndShortAreRefused) {
+  using enum synthetic::Connection;
+  for (const double ohm : {0.0, 0.5}) {
+    synthetic::CoupledWindings w;
+    w.windings = {{100e-6, ohm, 0, 0}, {100e-6, 1.4 * ohm, 0, 0}};
+    w.coupling = {0.5};
+    w.noise_ratio = 1e-3;
+    CouplingRequest request = swept(w, {synthetic::Connection::primary_open, synthetic::Connection::primary_short});
+    request.propagation.exact_bench = false;
+    const Measurement right = measure_coupling(request).value();
+    EXPECT_EQ(finding(right, "short_above_open"), nullptr);
+    EXPECT_TRUE(holds(right, "k", 0.5));
+    std::swap(request.inputs[0].item, request.inputs[1].item);
+    const Measurement wrong = measure_coupling(request).value();
+    ASSERT_NE(finding(wrong, "short_above_open"), nullptr) << ohm;
+    EXPECT_EQ(finding(wrong, "short_above_open")->severity, Severity::refusal);
+    EXPECT_EQ(finding(wrong, "too_few_inputs"), nullptr) << "both were given";
+    EXPECT_TRUE(wrong.estimates.empty());
+    EXPECT_TRUE(wrong.bounds.empty());
+  }
+}
+
+TEST(CouplingFindings, FilesWithoutNoiseStillReachEveryQuantity) {
+  using enum synthetic::Connection;
+  synthetic::CoupledWindings w;
+  w.windings = {{100e-6, 0, 0, 0}, {100e-6, 0, 0, 0}};
+  w.coupling = {0.5};
+  w.noise_ratio = 0;
+  CouplingRequest request = swept(w, {synthetic::Connection::primary_open, synthetic::Connection::primary_short});
+  request.propagation.exact_bench = false;
+  const Measurement files = measure_coupling(request).value();
+  for (const auto& [symbol, truth] : {std::pair{"k", 0.5}, std::pair{"L_1", 100e-6}, std::pair{"L_leak_1", 75e-6}}) {
+    ASSERT_NE(files.find(symbol), nullptr) << symbol;
+    EXPECT_TRUE(holds(files, symbol, truth)) << symbol;
+  }
+  EXPECT_GT(files.find("k")->half_width(), 0.003) << "two files, each with an accuracy of its own";
+  CouplingRequest ports;
+  ports.ports = synthetic::simulate_ports(w).value();
+  const Measurement both = measure_coupling(ports).value();
+  for (const auto& [symbol, truth] : {std::pair{"k", 0.5}, std::pair{"L_1", 100e-6}, std::pair{"L_2", 100e-6}, std::pair{"M", 50e-6}}) {
+    ASSERT_NE(both.find(symbol), nullptr) << symbol;
+    EXPECT_TRUE(holds(both, symbol, truth)) << symbol;
+  }
+  EXPECT_TRUE(both.model->converged);
+  EXPECT_GT(both.find("L_1")->half_width(), 0.003 * 100e-6) << "the accuracy of a file moves all of its inductances";
+}
+
+TEST(CouplingFindings, OneFileIsNotTwoMeasurements) {
+  using enum synthetic::Connection;
+  synthetic::CoupledWindings w = lossy_pair();
+  CouplingRequest request = swept(w, {synthetic::Connection::primary_open, synthetic::Connection::primary_short});
+  auto& first = std::get<Sweep>(request.inputs[0].given);
+  auto& second = std::get<Sweep>(request.inputs[1].given);
+  first.source.sha256 = "a";
+  second.source.sha256 = "b";
+  EXPECT_TRUE(measure_coupling(request).has_value());
+  second.source.sha256 = "a";
+  EXPECT_FALSE(measure_coupling(request).has_value());
+}
+
+TEST(CouplingFindings, ValuesBeyondReasonAreNotComputedWith) {
+  for (const double size : {1e308, 1e7, 1e-16}) {
+    CouplingRequest request;
+    request.inputs = {stated(primary_open, size, 0.01)};
+    EXPECT_FALSE(measure_coupling(request).has_value()) << size;
+  }
+  CouplingRequest request;
+  request.inputs = {stated(ratio_forward, 1e10, 0.01)};
+  EXPECT_FALSE(measure_coupling(request).has_value());
+}
+
 TEST(CouplingFindings, CancellationIsToldOnBothEnds) {
   const Measurement loose = measured({stated(primary_open, 100e-6, 0.004), stated(primary_short, 99e-6, 0.004)});
   ASSERT_NE(finding(loose, "k_cancellation"), nullptr) << "k 0.1 by open and short";
@@ -95,6 +166,8 @@ TEST(CouplingFindings, ExchangedInputsAreNamed) {
                                        stated(ratio_reverse, 1.2, 0.002)});
   ASSERT_NE(finding(ratios, "swapped_inputs"), nullptr);
   EXPECT_NE(finding(ratios, "swapped_inputs")->message.find("ratio"), std::string::npos);
+  EXPECT_EQ(finding(ratios, "swapped_inputs")->severity, Severity::refusal);
+  for (const char* symbol : {"k", "M", "L_1", "L_leak_1"}) EXPECT_EQ(ratios.find(symbol), nullptr) << symbol;
   const Measurement series = measured({stated(primary_open, 100e-6, 0.01), stated(secondary_open, 400e-6, 0.01), stated(aiding, 260e-6, 0.01),
                                        stated(opposing, 740e-6, 0.01)});
   ASSERT_NE(finding(series, "swapped_inputs"), nullptr);
@@ -142,7 +215,14 @@ TEST(CouplingFindings, WindingCapacitanceIsToldAndTakenOut) {
 
 TEST(CouplingFindings, MixedFrequenciesAreTold) {
   const Measurement m = measured({stated(primary_open, 100e-6, 0.01, 1e3), stated(primary_short, 19e-6, 0.01, 1e5)});
-  EXPECT_NE(finding(m, "mixed_frequencies"), nullptr);
+  ASSERT_NE(finding(m, "mixed_frequencies"), nullptr);
+  EXPECT_EQ(finding(m, "mixed_frequencies")->severity, Severity::refusal);
+  EXPECT_EQ(m.find("k"), nullptr);
+  EXPECT_NE(m.find("L_1"), nullptr) << "was read at one frequency";
+  const Measurement near = measured({stated(primary_open, 100e-6, 0.01, 1e5), stated(primary_short, 19e-6, 0.01, 1.2e5)});
+  ASSERT_NE(finding(near, "mixed_frequencies"), nullptr);
+  EXPECT_EQ(finding(near, "mixed_frequencies")->severity, Severity::caution);
+  EXPECT_NE(near.find("k"), nullptr);
   EXPECT_EQ(finding(measured({stated(primary_open, 100e-6, 0.01, 1e5), stated(primary_short, 19e-6, 0.01, 1e5)}), "mixed_frequencies"), nullptr);
 }
 

@@ -81,7 +81,7 @@ TEST(Coupling, SineCapturesAreInputs) {
     return folder / name;
   };
   const json result = measured_json({"coupling", "--primary-open", capture("open.csv", "100uH"), "--primary-short", capture("short.csv", "36uH"),
-                                     "--secondary-open", capture("second.csv", "100uH"), "--current", "CH2"});
+                                     "--secondary-open", capture("second.csv", "101uH"), "--current", "CH2"});
   // The windings' resistance goes along with each capture; 36 uH = (1 - k^2) 100 uH to what 0.5 ohm changes at wL = 63 ohm.
   EXPECT_NEAR(result.at("quantities").at("k").at("value").get<double>(), 0.8, 0.002);
   // Gains are those of one bench: they make L uncertain, and k hardly.
@@ -107,6 +107,22 @@ TEST(Coupling, WithoutKTheExitIsThree) {
   EXPECT_GT(bound.at("bounds").at("k").at("at_most").get<double>(), 0.1);
 }
 
+TEST(Coupling, BothSidesOfAMatrixMustAgree) {
+  const TemporaryFolder folder;
+  for (const char* fine : {"100uH,50uH\n50uH,100uH\n", "100uH,50uH\n,100uH\n", "100uH,50uH\n50.3uH,100uH\n"}) {
+    const json result = measured_json({"coupling", "--matrix", folder.file("fine.txt", fine)});
+    EXPECT_NEAR(result.at("quantities").at("k").at("value").get<double>(), 0.5, 1e-9) << fine;
+    EXPECT_NEAR(result.at("quantities").at("k").at("U").get<double>(), 0.0067, 0.0001) << "a cell written twice is known no better";
+  }
+  const json pair = measured_json({"coupling", "--matrix", folder.file("pair.txt", "100uH,50uH\n5uH,100uH\n")}, 3);
+  EXPECT_THAT(codes(pair), Contains("not_reciprocal"));
+  EXPECT_FALSE(pair.at("quantities").contains("k"));
+  const json three = measured_json({"coupling", "--matrix", folder.file("three.txt", "100uH,50uH,20uH\n50uH,100uH,20uH\n20uH,2uH,100uH\n")});
+  EXPECT_THAT(codes(three), Contains("not_reciprocal"));
+  EXPECT_TRUE(three.at("quantities").contains("k")) << "another pair than the one asked for";
+  EXPECT_FALSE(three.contains("matrices"));
+}
+
 TEST(Coupling, WhatCannotBeUsedEndsWithTwoAndARemedy) {
   const TemporaryFolder folder;
   const std::string file = folder / "pair.s2p";
@@ -119,6 +135,8 @@ TEST(Coupling, WhatCannotBeUsedEndsWithTwoAndARemedy) {
                                              {"coupling", file, "--pair", "1,3"},
                                              {"coupling", file, "--at", "10MHz"},
                                              {"coupling", "--primary-open", "100nF"},
+                                             {"coupling", "--primary-open", "1e308H"},
+                                             {"coupling", "--primary-open", table, "--secondary-open", table},
                                              {"coupling", "--primary-open", "100uH@0Hz"},
                                              {"coupling", "--primary-open", "no-such-file.csv"},
                                              {"coupling", "--primary-open", "100uH", "--winding-resistance", "0.1ohm"},
