@@ -99,6 +99,8 @@ Complex impedance_of(const Sweep& sweep, std::size_t i) {
   return is_magnitude_only(sweep) ? Complex(z.real(), 0) : z;
 }
 
+constexpr double kBeyond_ohm = 1e15;   // no coil, no fixture and no empty port: a slip of the export
+
 class Choosing {
  public:
   Choosing(const Sweep& sweep, SweepData& data) : sweep_(sweep), data_(data) {}
@@ -112,9 +114,11 @@ class Choosing {
       if (!std::isfinite(f) || f <= 0) {
         leave_out(i, std::isfinite(f) ? hertz(f) + ": a frequency must be above zero" : "a point without a frequency");
       } else if (i < sweep_.bad.size() && sweep_.bad[i]) {
-        leave_out(i, hertz(f) + ": marked as bad, or without an impedance");
+        leave_out(i, hertz(f) + ": marked as bad, or its impedance is missing or out of range");
       } else if (!std::isfinite(z.real()) || !std::isfinite(z.imag()) || z == 0.0) {
         leave_out(i, hertz(f) + ": no impedance");
+      } else if (std::abs(z) > kBeyond_ohm) {
+        leave_out(i, hertz(f) + ": an impedance out of range");
       } else {
         order.push_back(i);
       }

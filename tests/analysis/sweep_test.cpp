@@ -9,6 +9,7 @@
 #include <numbers>
 
 #include "analysis/sweep_circuit.h"
+#include "analysis/sweep_data.h"
 #include "analysis/sweep_of_sines.h"
 #include "tests/support/sine_bench.h"
 #include "tests/support/sweep_bench.h"
@@ -195,6 +196,17 @@ TEST(Sweep, AShortAtEveryPointIsCalledAShortAndAnOpenAnOpen) {
   const auto of_open = measure_sweep(open, exact());
   ASSERT_FALSE(of_open);
   EXPECT_THAT(of_open.error().finding, HasSubstr("ideal open at every point"));
+}
+
+TEST(Sweep, AnImpedanceOutOfRangeIsLeftOutAndNamed) {
+  Sweep sweep = simulated(kCoil);
+  sweep.z_ohm[7][0] = {1e30, 4};
+  const Measurement m = measured(sweep, exact());
+  EXPECT_TRUE(covers(m.find("L"), 100e-6));
+  const auto data = sweep_data(sweep, exact());
+  ASSERT_TRUE(data);
+  ASSERT_EQ(data->left_out.size(), 1U);
+  EXPECT_THAT(data->left_out[0], HasSubstr("an impedance out of range"));
 }
 
 TEST(Sweep, PointsComeFromTheModelAndFromTheNearestData) {
