@@ -5,6 +5,7 @@
 #include <cmath>
 #include <numbers>
 
+#include "analysis/coupling_accuracy.h"
 #include "analysis/coupling_contradiction.h"
 #include "analysis/symbols.h"
 
@@ -435,6 +436,13 @@ CouplingVerdict coupling_verdict(const CouplingSolution& s, bool sign_known) {
 
 CouplingVerdict add_coupling(Measurement& result, const CouplingSolution& s, const CouplingRequest& request) {
   CouplingVerdict v = coupling_verdict(s, s.readings.sign_shown);
+  const std::optional<CouplingSolution> stated = s.k_determined && v.shown ? as_stated(s) : std::nullopt;
+  CouplingSolution wide = s;
+  if (stated) {
+    const double factor = std::sqrt(stated->fit.covariance(kCoupling, kCoupling) / s.fit.covariance(kCoupling, kCoupling)) / s.widened;
+    if (factor > 1) wide.widened *= factor;
+    v = coupling_verdict(wide, s.readings.sign_shown);
+  }
   v.short_over_open = short_above_open(s);
   if (v.short_over_open > 0) {
     v.beyond = true;
@@ -447,6 +455,10 @@ CouplingVerdict add_coupling(Measurement& result, const CouplingSolution& s, con
   for (std::size_t i = 0; i < omegas.size(); ++i) {
     Measurement at;
     add_at(at, s, request, omegas[i]);
+    for (std::size_t o = 0; stated && o < kOutputs; ++o) {
+      const Eigen::VectorXd gradient = gradient_of(*stated, o, std::nan(""));
+      if (gradient.allFinite()) widen(at, kSymbolsOut[o], std::sqrt(std::fmax(gradient.dot(stated->fit.covariance * gradient), 0)));
+    }
     if (s.k_determined) {
       if (!v.shown) to_bounds(at, v);
       else if (!capacitive || !std::isfinite(omegas[i])) apply_interval(at, v);
@@ -473,7 +485,7 @@ CouplingVerdict add_coupling(Measurement& result, const CouplingSolution& s, con
   }
   add_inputs(result, s);
   add_model(result, s, request);
-  if (v.shown && result.find("L_1") != nullptr && result.find("L_2") != nullptr && result.find("M") != nullptr) add_equivalents(result, s, request);
+  if (v.shown && result.find("L_1") != nullptr && result.find("L_2") != nullptr && result.find("M") != nullptr) add_equivalents(result, wide, request);
   if (v.short_over_open > 0) withhold_coupling(result);
   return v;
 }

@@ -210,7 +210,7 @@ OptionGroup circumstances() {
                       {.name = "--accuracy",
                        .kind = ValueKind::plain,
                        .value_name = "RATIO",
-                       .help = "of the impedances in each file, in size and angle, 0.5 % unless given; with --advise of each inductance, 1 %",
+                       .help = "of the impedances in each file by itself, in size and angle, 0.5 % unless given; with --advise of each inductance, 1 %",
                        .example = "0.1%",
                        .range = Range::positive,
                        .below = 1},

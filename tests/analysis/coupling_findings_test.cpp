@@ -112,6 +112,29 @@ TEST(CouplingFindings, FilesWithoutNoiseStillReachEveryQuantity) {
   EXPECT_GT(both.find("L_1")->half_width(), 0.003 * 100e-6) << "the accuracy of a file moves all of its inductances";
 }
 
+TEST(CouplingFindings, AccuracyOfFilesActsOnKAsOfStatedValues) {
+  // Resistances at the low end would tell the gains of both files apart, were they the same over the whole sweep.
+  synthetic::CoupledWindings w;
+  w.windings = {{100e-6, 0.5, 0, 0}, {100e-6, 0.7, 0, 0}};
+  w.coupling = {0.9};
+  w.noise_ratio = 1e-3;
+  CouplingRequest request = swept(w, {synthetic::Connection::primary_open, synthetic::Connection::primary_short});
+  request.bench.impedance.ratio = StatedValue::unstated(0.05, Unit::one);
+  const Measurement files = measure_coupling(request).value();
+  const Measurement values = measured({stated(primary_open, 100e-6, 0.05), stated(primary_short, 19e-6, 0.05)});
+  ASSERT_NE(files.find("k"), nullptr);
+  for (const char* symbol : {"k", "L_1", "L_leak_1"}) {
+    const double ratio = files.find(symbol)->half_width() / values.find(symbol)->half_width();
+    EXPECT_GT(ratio, 0.95) << symbol;
+    EXPECT_LT(ratio, 1.2) << symbol;
+  }
+  // What all share is no error of each: k stays sharp.
+  request.bench.impedance.ratio = StatedValue::unstated(0.0001, Unit::one);
+  request.common_accuracy = 0.05;
+  const Measurement common = measure_coupling(request).value();
+  EXPECT_LT(common.find("k")->half_width(), files.find("k")->half_width() / 5);
+}
+
 TEST(CouplingFindings, OneFileIsNotTwoMeasurements) {
   using enum synthetic::Connection;
   synthetic::CoupledWindings w = lossy_pair();
