@@ -13,6 +13,9 @@ namespace {
 using Complex = std::complex<double>;
 constexpr double kPi = std::numbers::pi;
 constexpr double kDegree = kPi / 180;
+constexpr double kTelling = 0.5;           // radian: from where an angle and its tangent differ by more than 2 %
+constexpr double kNearShort = 2.8;         // radian: beyond, noise and resistance rule the tangent
+constexpr double kDrift = 0.03;            // of ln L: more than the noise of a usable sweep
 constexpr double kMostlyNotCausal = 0.2;   // of the points
 constexpr double kRounding = 1e-6;         // of |Z|: what the digits of a file leave, and no analyser sees
 constexpr double kNear = 0.1;              // f/f_r from which the capacitance shows: 1 % of L
@@ -54,6 +57,28 @@ std::vector<Complex> angles_as_radians(const SweepData& data) {
   return turned;
 }
 
+/// Spread of what a coil without losses has constant, ln(f tan(arg S/2)), with the angles as they were read and as radians. Where |S|
+/// is near one the angle alone tells the reactance, and only the largest angles tell the unit.
+bool reactance_says_radians(const SweepData& data) {
+  const double r = data.points.reference_ohm;
+  double sums[2] = {}, squares[2] = {}, count = 0;
+  for (std::size_t i = 0; i < data.points.size(); ++i) {
+    const Complex z = data.points.z[i];
+    const double angle = std::arg((z - r) / (z + r)), radian = angle / kDegree;
+    if (radian < kTelling || radian > kNearShort) continue;
+    const double of[2] = {std::log(data.points.frequency_hz[i] * std::tan(angle / 2)),
+                          std::log(data.points.frequency_hz[i] * std::tan(radian / 2))};
+    for (int k = 0; k < 2; ++k) {
+      sums[k] += of[k];
+      squares[k] += of[k] * of[k];
+    }
+    count += 1;
+  }
+  if (count < 5) return false;
+  const auto spread = [&](int k) { return std::sqrt(std::fmax(squares[k] / count - std::pow(sums[k] / count, 2), 0)); };
+  return spread(0) > kDrift && spread(1) < spread(0) / 3;
+}
+
 bool angles_look_like_radians(const SweepData& data, double& largest) {
   largest = 0;
   const double r = data.points.reference_ohm;
@@ -61,6 +86,7 @@ bool angles_look_like_radians(const SweepData& data, double& largest) {
     largest = std::fmax(largest, std::fabs(std::arg(data.scattering ? (z - r) / (z + r) : z)));
   }
   if (largest > 1.05 * kPi * kDegree) return false;   // no radian exceeds pi
+  if (data.scattering && reactance_says_radians(data)) return true;
   const double as_read = bode_misfit(data.points.frequency_hz, data.points.z);
   const double otherwise = bode_misfit(data.points.frequency_hz, angles_as_radians(data));
   return as_read > 0.4 && otherwise < as_read / 3;

@@ -1,6 +1,7 @@
 #include "analysis/sweep_joint.h"
 
 #include <Eigen/Cholesky>
+#include <Eigen/QR>
 #include <algorithm>
 #include <array>
 #include <cmath>
@@ -15,6 +16,7 @@ constexpr int kMostRounds = 60;
 constexpr double kSettled = 1e-8;    // of a step, in squared standard uncertainties
 constexpr double kLongest = 1.0;     // of a step in a logarithm
 constexpr double kSmallest = 1e-9;   // of an element over where it began: as good as not there
+constexpr double kAbsorbed = 0.05;   // of what an error does to the points, left over by the elements that follow it
 
 /// Everything at one circuit: rows of both parts of each point.
 class Equations {
@@ -41,6 +43,10 @@ class Equations {
   Eigen::Index size() const { return shared_.rows(); }
   const Eigen::MatrixXd& shared() const { return shared_; }
   const std::vector<std::size_t>& rows() const { return rows_; }
+  /// Errors that are not fitted.
+  void leave_out(const std::vector<Eigen::Index>& errors) {
+    for (const Eigen::Index k : errors) shared_.col(k).setZero();
+  }
 
   /// Model less measured, over the noise; derivatives to the natural parameters when asked for.
   Eigen::VectorXd residual(const Circuit& circuit, Eigen::MatrixXd* slopes) const {
@@ -98,28 +104,68 @@ Eigen::MatrixXd normal_of(const Eigen::MatrixXd& slopes, const Equations& equati
   return n;
 }
 
-/// Inverse with the parameters brought to equal size first: they differ by many orders of magnitude.
-Eigen::MatrixXd inverse_of(Eigen::MatrixXd n) {
-  const Eigen::VectorXd unit = n.diagonal().cwiseMax(std::numeric_limits<double>::min()).cwiseSqrt().cwiseInverse();
-  n = unit.asDiagonal() * n * unit.asDiagonal();
-  const Eigen::MatrixXd inverse = n.ldlt().solve(Eigen::MatrixXd::Identity(n.rows(), n.cols()));
-  return unit.asDiagonal() * inverse * unit.asDiagonal();
+/// Columns brought to equal size: the parameters differ by many orders of magnitude.
+Eigen::VectorXd units_of(const Eigen::MatrixXd& columns) {
+  return columns.colwise().norm().transpose().cwiseMax(std::numeric_limits<double>::min()).cwiseInverse();
+}
+
+/// Least squares of each column of `shared` by those of `slopes`: how the elements follow the errors.
+Eigen::MatrixXd follow(const Eigen::MatrixXd& slopes, const Eigen::MatrixXd& shared) {
+  const Eigen::VectorXd unit = units_of(slopes);
+  const Eigen::MatrixXd scaled = slopes * unit.asDiagonal();
+  return unit.asDiagonal() * scaled.colPivHouseholderQr().solve(shared);
+}
+
+/// Errors the elements can follow entirely, as those of a scale of |Z| or of frequency: no sweep tells anything about them, and
+/// what is left over by rounding and by having been taken to first order must not look as if it did.
+std::vector<Eigen::Index> absorbed_by(const Eigen::MatrixXd& slopes, const Eigen::MatrixXd& shared) {
+  const Eigen::MatrixXd left = shared - slopes * follow(slopes, shared);
+  std::vector<Eigen::Index> absorbed;
+  for (Eigen::Index k = 0; k < shared.cols(); ++k) {
+    if (left.col(k).norm() < kAbsorbed * shared.col(k).norm()) absorbed.push_back(k);
+  }
+  return absorbed;
+}
+
+/// Uncertainty at the end. By orthogonal factors, as squares of the rows would lose what noise is small beside the errors.
+void conclude(JointFit& fit, const Eigen::MatrixXd& slopes, const Eigen::MatrixXd& shared, const std::vector<Eigen::Index>& absorbed) {
+  const Eigen::Index p = slopes.cols(), e = shared.cols(), n = slopes.rows();
+  Eigen::MatrixXd rows = Eigen::MatrixXd::Zero(n + e, p + e);
+  rows.topLeftCorner(n, p) = slopes;
+  rows.topRightCorner(n, e) = shared;
+  rows.bottomRightCorner(e, e).setIdentity();
+  for (const Eigen::Index k : absorbed) rows.col(p + k).head(n).setZero();
+  const Eigen::VectorXd unit = units_of(rows);
+  rows = rows * unit.asDiagonal();
+  const Eigen::MatrixXd triangle = Eigen::HouseholderQR<Eigen::MatrixXd>(rows).matrixQR().topRows(p + e);
+  const Eigen::MatrixXd root = triangle.triangularView<Eigen::Upper>().solve(Eigen::MatrixXd::Identity(p + e, p + e));
+  const Eigen::MatrixXd of_data = rows.topRows(n) * root;
+  const Eigen::MatrixXd of_parameters = unit.head(p).asDiagonal() * root.topRows(p);
+  // An error not known takes the data with it: the parameters follow by -B, the errors that are fitted by the rest.
+  fit.shifts = -(of_parameters * root.bottomRows(e).transpose() * unit.tail(e).asDiagonal());
+  fit.covariance = of_parameters * (of_data.transpose() * of_data) * of_parameters.transpose();
+  const Eigen::MatrixXd following = follow(slopes, shared);
+  for (const Eigen::Index k : absorbed) fit.shifts.col(k) = following.col(k);
 }
 
 }  // namespace
 
 JointFit fit_jointly(const JointProblem& problem, const Circuit& start) {
-  const Equations equations(problem);
+  Equations equations(problem);
+  const Eigen::MatrixXd shared = equations.shared();
   JointFit fit;
   fit.circuit = start;
   fit.order = parameters_of(start.family);
   const auto p = static_cast<Eigen::Index>(fit.order.size());
   const Eigen::Index e = equations.shared().cols();
   fit.errors = Eigen::VectorXd::Zero(e);
-  Eigen::MatrixXd shared_square = equations.shared().transpose() * equations.shared();
-  shared_square.diagonal().array() += 1;
 
   Eigen::MatrixXd slopes(equations.size(), p), logs(equations.size(), p);
+  equations.residual(start, &slopes);
+  const std::vector<Eigen::Index> absorbed = absorbed_by(slopes, equations.shared());
+  equations.leave_out(absorbed);
+  Eigen::MatrixXd shared_square = equations.shared().transpose() * equations.shared();
+  shared_square.diagonal().array() += 1;
   const auto cost = [&](const Circuit& circuit, const Eigen::VectorXd& errors) {
     return (equations.residual(circuit, nullptr) + equations.shared() * errors).squaredNorm() + errors.squaredNorm();
   };
@@ -161,11 +207,8 @@ JointFit fit_jointly(const JointProblem& problem, const Circuit& start) {
   fit.dof = static_cast<double>(equations.size()) - static_cast<double>(p);
 
   const Eigen::VectorXd r = equations.residual(fit.circuit, &slopes) + equations.shared() * fit.errors;
-  const Eigen::MatrixXd inverse = inverse_of(normal_of(slopes, equations, shared_square));
-  // An error not known takes the data with it: the parameters follow by -B, the errors that are fitted by the rest.
-  fit.shifts = -inverse.topRightCorner(p, e);
-  fit.covariance = inverse.topLeftCorner(p, p) - fit.shifts * fit.shifts.transpose();
-  fit.settled = fit.settled && fit.covariance.allFinite() && (inverse.topLeftCorner(p, p).diagonal().array() > 0).all();
+  conclude(fit, slopes, shared, absorbed);
+  fit.settled = fit.settled && fit.covariance.allFinite() && fit.shifts.allFinite() && (fit.covariance.diagonal().array() > 0).all();
   fit.residual.assign(problem.points.size(), {std::nan(""), std::nan("")});
   for (std::size_t row = 0; row < equations.rows().size(); ++row) {
     const auto k = static_cast<Eigen::Index>(2 * row);

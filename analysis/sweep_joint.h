@@ -33,6 +33,9 @@ struct JointFit {
 /// With J the derivatives of the residuals to the parameters and T those to the errors, both over the noise, and
 /// N = [J'J, J'T; T'J, T'T + 1]: N^-1's blocks give the covariance by noise A - B B' and the shifts by the errors -B, where A is the
 /// block of the parameters and B that between parameters and errors (docs/formulas.md#errors-shared-by-all-points).
+///
+/// An error that the elements follow entirely, as that of a scale of |Z| or of frequency, is not fitted: nothing can be learnt about
+/// it. The parameters follow it by the least squares of its column of T by J.
 JointFit fit_jointly(const JointProblem& problem, const Circuit& start);
 
 /// The points with the most likely errors taken out.

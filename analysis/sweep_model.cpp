@@ -20,6 +20,7 @@ constexpr double kNormalQuantile = 1.96;
 constexpr double kFactorsBelow = 5;       // times the standard uncertainty by the errors of the bench
 constexpr double kRefused = 10;           // of the criterion: a probability below 1 in 150
 constexpr double kClearlyBetter = 10;     // log likelihood: e^10 to one
+constexpr double kDigits = 1e-6;          // of a point: what its digits, and an analyser's, are good for at best
 
 /// Log likelihood of errors alike in S less that of errors alike in ln Z, the fits being equally good descriptions.
 double for_reflection(const CircuitFit& s, const CircuitFit& z, const CircuitData& data) {
@@ -100,7 +101,10 @@ void judge_residuals(SweepModel& model) {
   model.noise = noise_profile(model.fit).all;
   if (!(model.noise > 0)) model.noise = 1;
   // What the analyser may err by its own data sheet is no fault of the circuit, however it is spread over frequency.
-  if (model.misfit && model.residual_rms < stated_accuracy(model)) model.misfit = false;
+  if (model.misfit && model.residual_rms < std::fmax(stated_accuracy(model), kDigits)) {
+    model.misfit = false;
+    if (model.residual_rms < kDigits) model.inflation = 1;
+  }
   scale_by_chi_square(model);
 }
 
@@ -281,6 +285,9 @@ CircuitData with_noise(const SweepModel& model, const SweepData& data) {
     for (double& u : points.u_phase) u *= noise;
     points.scale_known = true;
   }
+  // However smooth a sweep looks: its digits end somewhere.
+  for (double& u : points.u) u = std::hypot(u, kDigits);
+  for (double& u : points.u_phase) u = std::hypot(u, kDigits);
   if (!(data.scatter_ratio > 0) && !(data.scatter_s > 0)) return points;
   if (points.u.size() == 1) points.u.assign(points.size(), points.u.front());
   if (points.u_phase.size() == 1) points.u_phase.assign(points.size(), points.u_phase.front());

@@ -132,6 +132,40 @@ TEST(SweepFindings, RadiansReadAsDegreesAreRefused) {
   EXPECT_EQ(finding(m, "angle_unit")->severity, Severity::refusal);
 }
 
+/// As a file of size and angle of S has it whose radians stand where degrees are read.
+Sweep with_radians_for_degrees(Sweep sweep) {
+  for (auto& z : sweep.z_ohm) {
+    const std::complex<double> s = (z[0] - 50.0) / (z[0] + 50.0);
+    const std::complex<double> read = std::polar(std::abs(s), std::arg(s) * std::numbers::pi / 180);
+    z[0] = 50.0 * (1.0 + read) / (1.0 - read);
+  }
+  sweep.as_read = "S11";
+  sweep.reference_ohm = {50};
+  return sweep;
+}
+
+TEST(SweepFindings, RadiansOfAReflectionReadAsDegreesAreRefused) {
+  for (const double inductance : {100e-6, 1e-3}) {
+    const CoilSweepBench bench{.inductance_h = inductance, .start_hz = 10e3, .stop_hz = 10e6, .noise_ratio = 1e-3};
+    const Measurement m = measured(with_radians_for_degrees(simulate_coil_sweep(bench)->sweep), {});
+    EXPECT_EQ(m.find("L"), nullptr) << inductance;
+    EXPECT_NE(finding(m, "angle_unit"), nullptr) << inductance;
+  }
+}
+
+// 40 mH from 10 kHz on: 2.5 kilohm and more, so that no angle of S exceeds 2.3 degrees, and they are degrees.
+TEST(SweepFindings, SmallAnglesOfALargeCoilAreNotTakenForRadians) {
+  for (const double noise : {0.0, 1e-3}) {
+    Sweep sweep = synthetic::simulate_coil_sweep({.inductance_h = 40e-3, .resistance_ohm = 20, .start_hz = 10e3, .stop_hz = 1e6, .noise_ratio = noise})->sweep;
+    sweep.as_read = "S11";
+    sweep.reference_ohm = {50};
+    const Measurement m = measured(sweep, {});
+    EXPECT_EQ(finding(m, "angle_unit"), nullptr);
+    ASSERT_NE(m.find("L"), nullptr);
+    EXPECT_NEAR(m.find("L")->quantity.value / 40e-3, 1, 0.02);
+  }
+}
+
 TEST(SweepFindings, AnglesOfTheWrongSignAreRefused) {
   Sweep sweep = simulate_coil_sweep(kCoil)->sweep;
   for (auto& z : sweep.z_ohm) z[0] = std::conj(z[0]);

@@ -78,6 +78,51 @@ TEST(Sweep, FindsTheElementsOfANoiselessSweep) {
   EXPECT_EQ(m.model->name, "R L C, skin, parallel loss");
 }
 
+// The circuit follows an error of scale entirely: however smooth the sweep, nothing can be learnt about it.
+TEST(Sweep, AnErrorOfScaleStaysWhateverTheNoise) {
+  for (const double noise : {0.0, 1e-9, 1e-4}) {
+    for (const int points : {51, 401}) {
+      const Measurement m = measured(simulated({.points = static_cast<std::size_t>(points), .noise_ratio = noise}), {});
+      for (const char* symbol : {"L", "C_par"}) {
+        ASSERT_NE(m.find(symbol), nullptr);
+        EXPECT_GE(m.find(symbol)->quantity.standard_uncertainty / m.find(symbol)->quantity.value, 0.9999 * 0.005 / std::sqrt(3.0)) << symbol << ' ' << noise;
+      }
+      ASSERT_NE(m.find("f_r"), nullptr);
+      EXPECT_GE(m.find("f_r")->quantity.standard_uncertainty / m.find("f_r")->quantity.value, 0.9999 * 100e-6 / std::sqrt(3.0));
+      EXPECT_FALSE(m.has_finding("model_misfit"));
+    }
+  }
+}
+
+// The same of a bench that has told noise far below its errors, as captures of a burst do.
+TEST(Sweep, AnErrorOfScaleStaysWhenTheNoiseIsToldToBeNone) {
+  const Sweep sweep = simulated({.noise_ratio = 0});
+  SweepRequest request;
+  request.knowledge.complete = true;
+  request.knowledge.u_ratio = {1e-12};
+  ImpedanceErrorTerm gain;
+  gain.source = "gain";
+  gain.law = {ErrorLaw::Kind::rectangular, 1, 0};
+  for (const auto& z : sweep.z_ohm) gain.dz_ohm.push_back(0.02 / std::sqrt(3.0) * z[0]);
+  request.knowledge.errors = {gain};
+  const Measurement m = measured(sweep, request);
+  ASSERT_NE(m.find("L"), nullptr);
+  EXPECT_NEAR(m.find("L")->quantity.standard_uncertainty / 100e-6, 0.02 / std::sqrt(3.0), 1e-4);
+  ASSERT_NE(m.find("f_r"), nullptr);
+  EXPECT_NEAR(m.find("f_r")->quantity.standard_uncertainty / m.find("f_r")->quantity.value, 100e-6 / std::sqrt(3.0), 1e-6);
+}
+
+// An inductance and a resistance without any capacitance, over 40 points: no capacitance is claimed.
+TEST(Sweep, ACapacitanceThatIsNotThereIsALimit) {
+  Sweep sweep = simulated({.start_hz = 1e3, .stop_hz = 100e3, .points = 40, .noise_ratio = 0});
+  for (std::size_t i = 0; i < sweep.z_ohm.size(); ++i) sweep.z_ohm[i][0] = {0.35, kTwoPi * sweep.frequency_hz[i] * 47.1e-6};
+  const Measurement m = measured(sweep, {});
+  EXPECT_EQ(m.find("C_par"), nullptr);
+  EXPECT_NE(bound(m, "C_par"), nullptr);
+  ASSERT_NE(m.find("L"), nullptr);
+  EXPECT_GE(m.find("L")->quantity.standard_uncertainty / 47.1e-6, 0.9999 * 0.005 / std::sqrt(3.0));
+}
+
 TEST(Sweep, NoiseIsFoundFromTheResiduals) {
   const Measurement m = measured(simulated(kCoil), exact());
   EXPECT_TRUE(covers(m.find("L"), 100e-6));
