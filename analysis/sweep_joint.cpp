@@ -16,6 +16,7 @@ constexpr int kMostRounds = 60;
 constexpr double kSettled = 1e-8;    // of a step, in squared standard uncertainties
 constexpr double kLongest = 1.0;     // of a step in a logarithm
 constexpr double kSmallest = 1e-9;   // of an element over where it began: as good as not there
+constexpr double kDetermined = 1e-8; // of a column, what the others leave of it: below it is rounding
 constexpr double kAbsorbed = 0.05;   // of what an error does to the points, left over by the elements that follow it
 
 /// Everything at one circuit: rows of both parts of each point.
@@ -146,6 +147,7 @@ void conclude(JointFit& fit, const Eigen::MatrixXd& slopes, const Eigen::MatrixX
   fit.covariance = of_parameters * (of_data.transpose() * of_data) * of_parameters.transpose();
   const Eigen::MatrixXd following = follow(slopes, shared);
   for (const Eigen::Index k : absorbed) fit.shifts.col(k) = following.col(k);
+  if (!(triangle.diagonal().cwiseAbs().minCoeff() > kDetermined)) fit.covariance.setConstant(std::nan(""));
 }
 
 }  // namespace
