@@ -6,6 +6,8 @@
 
 #include <cerrno>
 #include <cstdio>
+#include <filesystem>
+#include <fstream>
 #include <system_error>
 
 #include "base/outside_text.h"
@@ -13,6 +15,8 @@
 namespace coilassay {
 
 namespace {
+
+constexpr std::string_view kTraceHead = "# coilassay trace";  // as every caller begins it
 
 class LoggedStream final : public ByteStream {
  public:
@@ -41,6 +45,16 @@ class LoggedStream final : public ByteStream {
   std::unique_ptr<ByteStream> inner_;
   std::shared_ptr<ByteLog> log_;
 };
+
+/// A log begins anew only in place of an older one; what is no file (/dev/stderr) has nothing to lose.
+bool may_be_replaced(const std::string& path) {
+  std::error_code unknown;
+  if (!std::filesystem::is_regular_file(path, unknown)) return true;
+  std::ifstream in(path, std::ios::binary);
+  std::string begin(kTraceHead.size(), '\0');
+  in.read(begin.data(), static_cast<std::streamsize>(begin.size()));
+  return in.gcount() == 0 ? std::filesystem::file_size(path, unknown) == 0 : begin == kTraceHead;
+}
 
 int digit_of(char c) {
   if (c >= '0' && c <= '9') return c - '0';
@@ -95,6 +109,10 @@ ByteLog::~ByteLog() {
 }
 
 Result<std::shared_ptr<ByteLog>> ByteLog::begin(const std::string& path, const std::string& head, std::size_t largest) {
+  for (const std::string& file : {path, path + ".1"}) {
+    if (may_be_replaced(file)) continue;
+    return failure(Problem::cannot_write, file, "the file is there already and is no trace, and it would be lost", "give --trace another file name");
+  }
   std::shared_ptr<ByteLog> log(new ByteLog(path, head, largest));
   if (!log->start()) {
     return failure(Problem::cannot_write, path, "the log cannot be made: " + std::generic_category().message(errno),

@@ -184,6 +184,28 @@ std::vector<std::string> Arguments::all_text(std::string_view option) const {
   return result;
 }
 
+bool is_written(const Option& option) {
+  constexpr std::string_view names[] = {"-o", "--bench-out", "--figure", "--ledger", "--netlist", "--report", "--touchstone", "--trace", "--truth"};
+  return option.kind == ValueKind::file && std::find(std::begin(names), std::end(names), option.name) != std::end(names);
+}
+
+Arguments::Files Arguments::files() const {
+  Files files;
+  if (command_->positional.files) {
+    for (const std::string& word : words_) files.read.push_back({"", word});
+  }
+  for (const OptionGroup& group : command_->groups) {
+    for (const Option& option : group.options) {
+      const auto found = values_.find(option.name);
+      if (found == values_.end() || (option.kind != ValueKind::file && option.kind != ValueKind::text)) continue;
+      for (const Value& value : found->second) {
+        (is_written(option) ? files.written : files.read).push_back({std::string(option.name), value.text});
+      }
+    }
+  }
+  return files;
+}
+
 std::vector<std::string_view> Arguments::never_asked() const {
   std::vector<std::string_view> result;
   for (const OptionGroup& group : command_->groups) {

@@ -10,6 +10,7 @@
 #include <vector>
 
 #include "app/commands/option_table.h"
+#include "app/runs/spared_files.h"
 #include "base/quantity.h"
 #include "base/result.h"
 
@@ -44,6 +45,12 @@ class Arguments {
   std::optional<std::string> text(std::string_view option) const;
   std::vector<std::string> all_text(std::string_view option) const;
 
+  /// Every file on the command line; a text counts, as it may name one (--primary-open).
+  struct Files {
+    std::vector<GivenFile> read, written;
+  };
+  Files files() const;
+
   /// Declared options that nobody has asked for yet: an option that does nothing shows up here.
   std::vector<std::string_view> never_asked() const;
 
@@ -55,6 +62,9 @@ class Arguments {
   std::map<std::string_view, std::vector<Value>> values_;
   mutable std::set<std::string_view> asked_;
 };
+
+/// Whether the file of this option is written, or added to.
+bool is_written(const Option& option);
 
 /// Splits and reads what follows the command's name.
 Result<Arguments> read_arguments(const Command& command, const std::vector<std::string>& words);

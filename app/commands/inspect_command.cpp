@@ -70,6 +70,7 @@ Result<ExitCode> run(const Arguments& arguments, Console& console) {
   job.operator_name = arguments.text("--operator").value_or("");
   job.reason = arguments.text("--reason");
   const std::optional<std::string> report = arguments.text("--report");
+  job.report = report;
   job.for_page = report.has_value();
   if (const Result<void> fine = check_outputs({.figure = std::nullopt, .report = report}); !fine) return failure(fine);
   if (job.reason && !job.ledger) {

@@ -39,6 +39,11 @@ Result<ExitCode> start(const Command& command, const std::vector<std::string>& w
     console.out() << help_page(command, console.out_style());
     return ExitCode::done;
   }
+  Arguments::Files files = arguments->files();
+  if (command.find("--bench") != nullptr) {
+    if (const auto bench = arguments->text("--bench"); bench && !files.written.empty()) add_bench_files(files.read, *bench);
+  }
+  if (const Result<void> spared = spare_files(files.written, files.read); !spared) return failure(spared);
   return command.run(*arguments, console);
 }
 

@@ -11,6 +11,7 @@
 #include "acquire/instrument/open_stream.h"
 #include "acquire/instrument/row_file.h"
 #include "analysis/reading.h"
+#include "app/runs/spared_files.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
 #include "report/json_writer.h"
@@ -157,6 +158,8 @@ Result<AcquireSummary> run_acquire(const AcquireJob& job, const RunContext& cont
   const bool records = profile->record && (!profile->reading || (!job.count && !job.every_s));
   std::shared_ptr<ByteLog> log;
   if (job.trace) {
+    // A recorded session that is played is read while the log is written.
+    if (auto spared = spare_files(std::vector<GivenFile>{{"--trace", *job.trace}}, std::vector<GivenFile>{{"", profile->link.port}}); !spared) return failure(spared);
     auto begun = ByteLog::begin(*job.trace, "coilassay trace of " + job.profile + ", begun " + to_text(context.now));
     if (!begun) return failure(begun);
     log = *begun;

@@ -9,6 +9,7 @@
 #include "app/runs/lot_close.h"
 #include "app/runs/lot_folder.h"
 #include "app/runs/lot_past.h"
+#include "app/runs/spared_files.h"
 #include "app/runs/unit_tests.h"
 #include "app/runs/version.h"
 #include "base/outside_text.h"
@@ -36,6 +37,7 @@ class Inspection {
   };
 
   Result<void> read_everything();
+  Result<void> spare_what_is_read() const;
   Result<void> look_back();
   Result<bool> may_begin();
   Result<void> measure_all();
@@ -106,6 +108,7 @@ Result<void> Inspection::read_everything() {
     return failure(Problem::unreadable, job_.folder, "there is no unit of the lot in it, only the check standard",
                    "name the captures SERIAL.TEST.ENDING, as in 0017.ringdown.csv");
   }
+  if (auto spared = spare_what_is_read(); !spared) return spared;
   record_.program = program_name();
   record_.when = context_.now;
   record_.operator_name = job_.operator_name;
@@ -123,6 +126,23 @@ Result<void> Inspection::read_everything() {
   setting_ = {&record_.sheet, record_.lot, job_.operator_name, "", program_name(), context_.now};
   units_.resize(folder_.units.size());
   return {};
+}
+
+/// The sheets and captures are not named on the command line, but in the sheet and by the folder.
+Result<void> Inspection::spare_what_is_read() const {
+  if (!job_.report) return {};
+  std::vector<GivenFile> inputs{{"", job_.sheet}, {"", folder_.path}};
+  for (const PreparedTest& test : tests_) {
+    if (test.plan.bench) add_bench_files(inputs, *test.plan.bench);
+  }
+  const auto add = [&inputs](const LotUnit& unit) {
+    for (const UnitCaptures& captures : unit.tests) {
+      for (const std::string& file : captures.files) inputs.push_back({"", file});
+    }
+  };
+  for (const LotUnit& unit : folder_.units) add(unit);
+  if (check_captures_) add(*check_captures_);
+  return spare_files(std::vector<GivenFile>{{"--report", *job_.report}}, inputs);
 }
 
 Result<void> Inspection::look_back() {

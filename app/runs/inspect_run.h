@@ -19,6 +19,7 @@ struct InspectJob {
   std::optional<std::uint64_t> lot_size;        // else the units present
   std::string operator_name;
   std::optional<std::string> reason;            // of new attempts at units inspected before
+  std::optional<std::string> report;            // where the page will go: checked, not written here
   bool for_page = false;                        // keep figures of every unit that does not pass
 };
 

@@ -1,8 +1,8 @@
 #include "app/runs/outputs.h"
 
-#include <filesystem>
-#include <utility>
+#include <vector>
 
+#include "app/runs/spared_files.h"
 #include "app/runs/version.h"
 #include "report/figure.h"
 #include "report/html_report.h"
@@ -31,16 +31,11 @@ Result<void> write_report(const Measurement& measurement, const std::string& pat
 
 /// A document that would take the place of a file that was measured.
 Result<void> spare_inputs(const Measurement& measurement, const OutputRequest& request) {
-  for (const auto& [option, path] : {std::pair{"--figure", &request.figure}, std::pair{"--report", &request.report}}) {
-    for (const SourceRecord& each : measurement.sources) {
-      std::error_code unknown;
-      if (path->has_value() && std::filesystem::equivalent(**path, each.source.name, unknown)) {
-        return failure(Problem::cannot_write, option, "this is the file that was measured, and it would be lost",
-                       "give another file name");
-      }
-    }
-  }
-  return {};
+  std::vector<GivenFile> outputs, inputs;
+  if (request.figure) outputs.push_back({"--figure", *request.figure});
+  if (request.report) outputs.push_back({"--report", *request.report});
+  for (const SourceRecord& each : measurement.sources) inputs.push_back({"", each.source.name});
+  return spare_files(outputs, inputs);
 }
 
 }  // namespace

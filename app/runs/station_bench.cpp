@@ -5,6 +5,7 @@
 
 #include "acquire/instrument/open_stream.h"
 #include "analysis/reading.h"
+#include "app/runs/spared_files.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
 
@@ -96,6 +97,8 @@ Result<StationBench> StationBench::make(const std::vector<std::string>& profiles
     ++number;
     if (trace) {
       const std::string file = profiles.size() == 1 ? *trace : *trace + "-" + std::to_string(number);
+      // A recorded session that is played is read while the log is written.
+      if (auto spared = spare_files(std::vector<GivenFile>{{"--trace", file}}, std::vector<GivenFile>{{"", profile->link.port}}); !spared) return failure(spared);
       auto begun = ByteLog::begin(file, "coilassay trace of " + path + ", begun " + to_text(now));
       if (!begun) return failure(begun);
       log = *begun;

@@ -45,7 +45,7 @@ TEST(Program, SaysWhatIsWrongWithACommandLine) {
       {{"help", "ringdwn"}, "did you mean coilassay ringdown?"},
       {{"completion", "fish"}, "completion is made for bash only"},
       {{"simulate", "ringdown"}, "-o: it is not said where the capture goes"},
-      {{"simulate", "ringdown", "-o", "x", "--truth", "x"}, "capture and truth would go to the same place"},
+      {{"simulate", "ringdown", "-o", "x", "--truth", "x"}, "--truth: this is the file of -o as well"},
       {{"ringdown", "a.csv", "--trials", "5000"}, "--trials: there are no trials it could apply to"},
       {{"ringdown", "a.csv", "--seed", "5"}, "--seed: there are no trials it could apply to"},
       {{"ringdown", "a.csv", "--figure", "a.png"}, "--figure: a figure is written as SVG"},
