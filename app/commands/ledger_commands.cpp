@@ -32,8 +32,20 @@ struct Found {
   LedgerHead head;
 };
 
+/// A ledger to be shown: a damaged one would show what is left of it as if it were all.
+Result<Ledger> sound_ledger(const Arguments& arguments) {
+  const std::string& file = arguments.words().front();
+  Result<Ledger> ledger = Ledger::open({.path = file});
+  if (!ledger) return ledger;
+  const Result<LedgerCheck> check = ledger->verify(nullptr);
+  if (!check) return failure(check);
+  if (check->holds()) return ledger;
+  return failure(Problem::ledger, file, "the ledger is not what was written: " + check->faults.front().what,
+                 "coilassay ledger verify names all of it; go on from a copy that holds");
+}
+
 Result<Found> find_entries(const Arguments& arguments) {
-  const Result<Ledger> ledger = Ledger::open({.path = arguments.words().front()});
+  const Result<Ledger> ledger = sound_ledger(arguments);
   if (!ledger) return failure(ledger);
   Found found;
   Result<std::vector<Entry>> entries = ledger->find(query_of(arguments));
@@ -73,7 +85,7 @@ Result<ExitCode> run_export(const Arguments& arguments, Console& console) {
 Result<ExitCode> run_show(const Arguments& arguments, Console& console) {
   const Result<std::int64_t> id = entry_number(arguments.words()[1]);
   if (!id) return failure(id);
-  const Result<Ledger> ledger = Ledger::open({.path = arguments.words().front()});
+  const Result<Ledger> ledger = sound_ledger(arguments);
   if (!ledger) return failure(ledger);
   const Result<Entry> entry = ledger->entry(*id);
   if (!entry) return failure(entry);

@@ -1,4 +1,5 @@
 #include <gtest/gtest.h>
+#include <unistd.h>
 
 #include <cstdio>
 #include <filesystem>
@@ -95,7 +96,7 @@ TEST(Reference, InDocsIsCurrent) {
 
 /// What bash offers after these words, the last of which is being typed.
 std::string completed(const std::vector<std::string>& words) {
-  const std::string script = testing::TempDir() + "coilassay_completion.bash";
+  const std::string script = testing::TempDir() + "coilassay_completion_" + std::to_string(::getpid()) + ".bash";
   std::ofstream(script) << bash_completion(commands());
   std::string line =
       "bash --norc -c 'source \"$0\"; COMP_WORDS=(\"$@\"); COMP_CWORD=$(($# - 1)); _coilassay; "

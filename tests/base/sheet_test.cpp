@@ -229,7 +229,9 @@ TEST(Sheet, ManyPointsInNumbersAndTextAreNoEndlessKey) {
 
 class SheetFile : public testing::Test {
  protected:
-  SheetFile() : folder_(std::filesystem::path(testing::TempDir()) / "coilassay_sheet_test") {
+  SheetFile()
+      : folder_(std::filesystem::path(testing::TempDir()) /
+                (std::string("coilassay_") + testing::UnitTest::GetInstance()->current_test_info()->name())) {
     std::filesystem::remove_all(folder_);
     std::filesystem::create_directories(folder_);
   }

@@ -115,6 +115,17 @@ TEST_F(LedgerCommands, VerifyFindsWhatWasDone) {
   EXPECT_THAT(end.out, HasSubstr("the column 'verdict' says 'pass', the record itself 'fail'"));
 }
 
+TEST_F(LedgerCommands, ADamagedLedgerIsNotShownAsIfItWereWhole) {
+  const std::string rules = sqlite_shell(path_, "SELECT sql || ';' FROM sqlite_master WHERE name IN ('entry_stays', 'source_stays')").text;
+  sqlite_shell(path_, "DROP TRIGGER source_stays; DROP TRIGGER entry_stays; DELETE FROM source WHERE entry = 3; DELETE FROM entry WHERE id = 3; " + rules);
+  document({"ledger", "list", path_}, "error", 4);
+  document({"ledger", "show", path_, "2"}, "error", 4);
+  const ProgramEnd end = run_program_process({"ledger", "export", path_, "--csv"});
+  EXPECT_EQ(end.exit_code, 4);
+  EXPECT_EQ(end.out, "");
+  EXPECT_THAT(end.error, HasSubstr("the ledger is not what was written"));
+}
+
 TEST_F(LedgerCommands, ACutTailShowsByTheHeadOfAReport) {
   const std::string head = document({"ledger", "verify", path_}, "verify").at("head");
   // With the rules put back nothing in the file tells.
