@@ -340,14 +340,8 @@ void add_inputs(Measurement& m, const CouplingSolution& s) {
       const Complex z = predicted(trace.item, pair, r.omega);
       check.value = {value, r.u_size * std::abs(value), unit};
       check.predicted = is_ratio(trace.item) ? std::abs(z) : z.imag() / r.omega;
-      if (trace.readings.size() == 1) {
-        check.residual_u = s.fit.residuals[first];
-      } else {
-        // Of many readings: how far their mean is off, by the scatter of a mean.
-        double sum = 0;
-        for (std::size_t i = 0; i < trace.readings.size(); ++i) sum += s.fit.residuals[first + 2 * static_cast<Eigen::Index>(i)];
-        check.residual_u = sum / std::sqrt(static_cast<double>(trace.readings.size()));
-      }
+      // Of the reading that is shown. A mean over all of a trace would be nothing by the fit itself.
+      check.residual_u = (value - check.predicted) / check.value.standard_uncertainty;
     }
     m.inputs.push_back(std::move(check));
   }

@@ -22,6 +22,7 @@ struct RampRequest {
 namespace ramp_defaults {
 inline constexpr double kResistanceRatio = 0.1;      // of --dcr without tolerance: a winding 25 K off
 inline constexpr double kUnknownDropRatio = 0.025;   // resistance not known: drops 2.5 % +- 2.5 % of the voltage at the peak
+inline constexpr double kHopelessMisfit = 30;         // variance of the blocks about the curve over that inside them
 inline constexpr double kUnknownOffsetRatio = 0.01;  // of the largest value, when nothing in the record shows the zero line
 }  // namespace ramp_defaults
 

@@ -55,6 +55,9 @@ Combined combine(const RampStory& story) {
 }
 
 void add_bounds(Measurement& result, const RampStory& story, const Combined& all) {
+  // A curve that does not follow the samples sets no limits: finding model_misfit says so.
+  const RampCurve& shown = story.shown();
+  if (shown.fit.lack_of_fit > ramp_defaults::kHopelessMisfit && shown.late_inductance_ratio < 0.9) return;
   // The highest current seen, by the lower end of what its scale allows.
   const double gain_u = story.inputs.errors[1].law.standard_uncertainty;
   const double noise_u = story.shown().fit.fit.residual_rms;

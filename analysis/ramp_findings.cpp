@@ -108,6 +108,14 @@ class Colleague {
     }
     if (missing < 0) return;
     const double drop = 1 - curve_.late_inductance_ratio;
+    if (drop > 0.1 * (missing + 1) && curve_.fit.lack_of_fit > ramp_defaults::kHopelessMisfit) {
+      say("model_misfit", Severity::caution,
+          "the inductance has dropped by " + to_percent_text(drop) + " at the highest current, but no curve follows how (off by " +
+              text(curve_.fit.fit.residual_rms, Unit::ampere, 2) + " r.m.s.): the saturation currents are withheld; look at the figure, and "
+              "give --from and --to if something else is in the rise",
+          "I_sat_" + std::to_string(10 * (missing + 1)), curve_.fit.lack_of_fit);
+      return;
+    }
     say("knee_not_reached", Severity::note,
         std::to_string(10 * (missing + 1)) + " % drop not reached, highest current seen " + text(curve_.high_a, Unit::ampere) +
             (drop > 0.005 ? ", where the inductance has dropped by " + to_percent_text(drop)

@@ -332,9 +332,11 @@ Result<RollOffFit> fit_roll_off(const RollOffBlocks& blocks, const RollOffKnown&
   if (!start.allFinite()) return failure(Problem::no_signal, "roll-off", "y does not rise with x", "");
   Settled best = descend(problem, start);
   const auto count = static_cast<double>(blocks.x.size());
-  // Without the square term a large misfit is usually the family's own, and another start would only cost time.
-  if (!known.straight && (best.stop != FitStop::converged || (known.bend && best.chi > 3 * count))) {
-    for (double exponent : {2.5, 10.0}) {   // a second opinion when the first start led nowhere
+  // Without the square term a moderate misfit is usually the family's own, and another start would only cost time. A descent
+  // that ran into curves that do not rise everywhere (a floor below zero) stands at their edge, settled or not.
+  const bool at_edge = best.p[kFloor] < 0;
+  if (!known.straight && (best.stop != FitStop::converged || best.chi > (known.bend || at_edge ? 3 : 30) * count)) {
+    for (double exponent : {2.5, 10.0, 20.0}) {   // a second opinion when the first start led nowhere
       Vector other = start;
       other[kExponent] = std::log(exponent);
       Settled next = descend(problem, other);

@@ -179,5 +179,17 @@ TEST(Coupling, SeveralWindingsGiveMatrices) {
   EXPECT_NEAR(impossible.at("quantities").at("k").at("value").get<double>(), 0.8, 1e-6);
 }
 
+TEST(Coupling, EachInputOfAPortFileSaysHowFarItIsOff) {
+  const nlohmann::json result = measured_json({"coupling", "sample-data/charging-pair.s2p"});
+  std::size_t off = 0;
+  for (const auto& input : result.at("inputs")) {
+    const double u = input.at("u").get<double>();
+    const double away = (input.at("value").get<double>() - input.at("predicted").get<double>()) / u;
+    EXPECT_NEAR(input.at("residual_u").get<double>(), away, 1e-6 + 1e-6 * std::fabs(away)) << input;
+    off += std::fabs(away) > 0.01 ? 1 : 0;
+  }
+  EXPECT_GE(off, 2u) << "otherwise nothing was seen";
+}
+
 }  // namespace
 }  // namespace coilassay::test

@@ -35,6 +35,22 @@ TEST(Ramp, GivesTheSaturationWithIntervalsThatHoldTheTruth) {
   }
 }
 
+// A sharp core whose first descent runs into curves that do not rise everywhere: it once ended as "not reached", with limits
+// above the truth.
+TEST(Ramp, ASharpKneeIsFoundAlsoFromAPoorStart) {
+  const TemporaryFolder folder;
+  for (const char* seed : {"2", "17"}) {
+    std::vector<std::string> sharp = kCoarse;
+    sharp.insert(sharp.end(), {"--freewheel", "--core", "ferrite", "--seed", seed});
+    const std::string file = folder / (std::string(seed) + ".csv");
+    const auto truth = simulate_ramp(file, sharp).at("truth");
+    const auto result = measured_json({"ramp", file, "--exact-bench"});
+    EXPECT_LT(result.at("model").at("reduced_chi_square").get<double>(), 3) << seed;
+    EXPECT_NEAR(result.at("quantities").at("I_sat_30").at("value").get<double>(), truth.at("I_sat_30").get<double>(), 0.05) << seed;
+    for (const auto& finding : result.at("findings")) EXPECT_NE(finding.at("code"), "knee_not_reached") << seed;
+  }
+}
+
 TEST(Ramp, PulsesStandOneByOneAndTheResistanceIsFound) {
   const TemporaryFolder folder;
   const std::string file = folder / "pulses.csv";
