@@ -9,6 +9,7 @@
 #include "acquire/instrument/reply_values.h"
 #include "analysis/reading.h"
 #include "app/runs/acquire_run.h"
+#include "app/runs/spared_files.h"
 #include "base/number_text.h"
 #include "base/outside_text.h"
 #include "report/json_writer.h"
@@ -216,6 +217,8 @@ Result<TryReport> run_try_profile(const std::string& path, const std::optional<s
   if (auto fine = check_profile_symbols(*profile, false); !fine) return failure(fine);
   std::shared_ptr<ByteLog> log;
   if (trace) {
+    // A recorded session that is played is read while the log is written.
+    if (auto spared = spare_files(std::vector<GivenFile>{{"--trace", *trace}}, std::vector<GivenFile>{{"", profile->link.port}}); !spared) return failure(spared);
     auto begun = ByteLog::begin(*trace, "coilassay trace of " + path + ", begun " + to_text(context.now));
     if (!begun) return failure(begun);
     log = *begun;

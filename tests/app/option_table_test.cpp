@@ -33,6 +33,16 @@ TEST(OptionTable, NamesEachOptionOfACommandOnce) {
   }
 }
 
+TEST(OptionTable, KnowsOfEachFileWhetherItIsWritten) {
+  const std::set<std::string_view> read = {"--bench", "--fixture", "--folder", "--instrument", "--load", "--matrix", "--open", "--part-sheet", "--remove-port1",
+                                           "--remove-port2", "--saturation", "--sheet", "--short"};
+  for_each_option([&](const Command&, const Option& option) {
+    if (option.kind == ValueKind::file) {
+      EXPECT_NE(is_written(option), read.contains(option.name));
+    }
+  });
+}
+
 TEST(OptionTable, SaysOfEachOptionWhatItIs) {
   for_each_option([](const Command&, const Option& option) {
     EXPECT_TRUE(option.name == "-o" || option.name.starts_with("--"));
