@@ -97,6 +97,7 @@ TEST(SparedFiles, ModelsAndFiguresReplaceNoInput) {
   const std::string bench = folder.file("bench.toml", "[impedance]\naccuracy = \"0.1 %\"\n[fixture]\nset = \"set.toml\"\n");
   expect_spared(coil, {"sweep", coil, "--touchstone", coil}, "--touchstone");
   expect_spared(coil, {"sweep", coil, "--netlist", coil}, "--netlist");
+  expect_spared(coil, {"sweep", coil, "--netlist", folder / "one", "--touchstone", folder / "one"}, "--touchstone");
   expect_spared(set, {"sweep", coil, "--fixture", set, "--netlist", set}, "--netlist");
   expect_spared(bench, {"sweep", coil, "--bench", bench, "--netlist", bench}, "--netlist");
   expect_spared(set, {"sweep", coil, "--bench", bench, "--netlist", set}, "--netlist");
