@@ -82,13 +82,6 @@ void add_hidden(Measurement& result, const SweepModel::Hidden& hidden) {
 /// A value whose interval reaches zero becomes a limit.
 void withhold_unresolved(Measurement& result) {
   for (auto e = result.estimates.begin(); e != result.estimates.end();) {
-    // An interval many times the value: the conductance all but reaches zero, and only a lower limit is known.
-    if (e->symbol == "R_par" && !(e->half_width() < 10 * e->quantity.value)) {
-      result.bounds.push_back({e->symbol, e->quantity.unit, e->low, std::nullopt, 0.95});
-      result.budget.erase(e->symbol);
-      e = result.estimates.erase(e);
-      continue;
-    }
     const bool element = e->symbol == "R_dc" || e->symbol == "R_ac" || e->symbol == "C_par";
     if (!element || e->low > 0) {
       ++e;

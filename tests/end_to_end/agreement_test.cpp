@@ -99,19 +99,6 @@ TEST(Sweep, ABurstThatFoldsBackSaysNothingSharpOfTheResonance) {
   for (const char* symbol : {"R_ac", "R_par"}) EXPECT_FALSE(result.at("bounds").contains(symbol)) << symbol;
 }
 
-// A loss that the sweep hardly shows is a limit, and no value with an interval ten thousand times as wide.
-TEST(Sweep, AParallelLossWithoutAnUpperEndIsALimit) {
-  const TemporaryFolder folder;
-  const std::string file = folder / "sweep.csv";
-  for (const char* seed : {"4", "12"}) {
-    const ProgramEnd made = run_program_process({"simulate", "sweep", "-o", file, "--noise", "0.1%", "--proximity-resistance", "5ohm", "--seed", seed});
-    ASSERT_EQ(made.exit_code, 0) << made.error;
-    const json result = measured_json({"sweep", file, "--exact-bench"});
-    EXPECT_FALSE(result.at("quantities").contains("R_par")) << seed;
-    EXPECT_GT(result.at("bounds").at("R_par").at("at_least").get<double>(), 1e6) << seed;
-  }
-}
-
 TEST(Sweep, DigitsOfANoiselessFileAreNoBreachOfCausality) {
   const TemporaryFolder folder;
   for (const char* name : {"sweep.csv", "sweep.s1p"}) {
